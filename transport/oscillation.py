@@ -1,0 +1,169 @@
+"""Counting zeros of the wave: the Pruefer angle, which knows how many states lie below an energy.
+
+For real energy the solution that starts with psi = 0 turns its phase point (psi, psi'/m) ever further as the energy
+grows (the mass must not fall with energy). The number of zeros behind it is therefore the number of Dirichlet
+eigenvalues below that energy, whatever their spacing: nothing can hide between two samples. Sturm's oscillation
+theorem; Pruefer, Math. Ann. 95, 499 (1926); Eastham, The Spectral Theory of Periodic Differential Equations (1973).
+
+Zeros are counted layer by layer in closed form. Rounding could only move a zero across an interface, and is caught by
+parity: the sign of psi says whether the number is odd or even.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from transport.constants import HBAR2_2M0
+from transport.propagation import element_transfer, mass_at
+from transport.scattering import Chain, Powers
+from transport.structure import Delta, Element
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class PhasePoint:
+    """psi and slope = psi'/m (any common scale) after `zeros` zeros of psi, at each energy."""
+
+    zeros: Any
+    psi: Any
+    slope: Any
+
+    @property
+    def sign(self) -> Any:
+        """Sign of psi just to the right of this point."""
+        return np.where(np.where(self.psi == 0, self.slope, self.psi) < 0, -1, 1)
+
+
+WALL = PhasePoint(0, 0.0, 1.0)
+"""psi = 0: the start of the Dirichlet solution."""
+
+
+def through(elements: Sequence[Element], energy: Floats, start: PhasePoint = WALL) -> PhasePoint:
+    """The phase point behind a list of layers, with the zeros met on the way added.
+
+    `energy` (eV) broadcasts against the fields of `start`.
+    """
+    point = start
+    for element in elements:
+        point = _through_one(element, energy, point)
+    return point
+
+
+def _through_one(element: Element, energy: Floats, start: PhasePoint) -> PhasePoint:
+    if isinstance(element, Delta):
+        slope = start.slope + element.strength / HBAR2_2M0 * start.psi
+        return PhasePoint(start.zeros, start.psi, slope)
+    step = element_transfer(element, energy)
+    psi, slope = step.a * start.psi + step.b * start.slope, step.c * start.psi + step.d * start.slope
+    size = np.hypot(psi, slope)
+    end = PhasePoint(start.zeros, psi / size, slope / size)
+    mass = mass_at(element, energy)
+    wave = np.sqrt(np.maximum((energy - element.band_edge) * mass / HBAR2_2M0, 0.0))
+    sign = start.sign
+    begun = np.arctan2(sign * start.psi * wave, sign * mass * start.slope)
+    turns = np.where(wave > 0, (begun + wave * element.thickness) / np.pi, 0.5)
+    return PhasePoint(start.zeros + _of_parity(turns, sign != end.sign), end.psi, end.slope)
+
+
+def _of_parity(turns: Any, odd: Any) -> Any:
+    """floor(turns), corrected to the parity known from the signs."""
+    return np.maximum(odd + 2 * np.rint((turns - 0.5 - odd) / 2), odd).astype(np.int64)
+
+
+@dataclass(frozen=True, slots=True)
+class Rotation:
+    """How far one cell turns the phase point, at each energy.
+
+    `passing`: inside a band (|D| < 2). `turns`: the Bloch phase over pi, lifted so that it grows with energy: between
+    j - 1 and j in band j, exactly j in the gap above it.
+    """
+
+    passing: NDArray[np.bool_]
+    turns: Floats
+
+
+def rotation(chain: Chain) -> Rotation:
+    """Lifted Bloch phase of the chain's cell (real energies)."""
+    first = through(chain.stack.cell, chain.energy)
+    passing = chain.sine_squared > 0
+    sine = first.sign * np.sqrt(np.where(passing, chain.sine_squared, 0.0))
+    phase = np.arctan2(sine, chain.half_trace) / np.pi
+    lifted = phase + 2 * np.rint((first.zeros + 0.5 - phase) / 2)
+    gap = np.where(first.sign * chain.half_trace > 0, first.zeros, first.zeros + 1)
+    return Rotation(passing, np.where(passing, lifted, gap))
+
+
+def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rotation | None = None) -> Any:
+    """Dirichlet eigenvalues of the whole stack below each energy: an integer array, of periods broadcast with energy.
+
+    The cells are passed in one step: in suitable coordinates a cell turns the phase point by its Bloch phase inside a
+    band, and in a gap moves it towards a fixed direction without passing it, so each half turn is known.
+    """
+    turning = turning or rotation(chain)
+    powers = powers or chain.powers(periods)
+    start = through(chain.stack.entry, chain.energy)
+    return through(chain.stack.exit, chain.energy, _through_cells(chain, periods, powers, turning, start)).zeros
+
+
+def _through_cells(
+    chain: Chain, periods: Any, powers: Powers, turning: Rotation, start: PhasePoint
+) -> PhasePoint:
+    lean, b, c = chain.swing.a, chain.swing.b, chain.swing.c
+    across, along = lean * start.psi + b * start.slope, c * start.psi - lean * start.slope
+    psi = start.psi * powers.first + across * powers.second
+    slope = start.slope * powers.first + along * powers.second
+    size = np.hypot(psi, slope)
+    end = PhasePoint(start.zeros, psi / size, slope / size)
+
+    sign, passing = start.sign, turning.passing
+    sine = np.copysign(np.sqrt(np.where(passing, chain.sine_squared, 1.0)), b)
+    begun = np.arctan2(sign * start.psi, sign * across / sine) / np.pi
+    in_band = _of_parity(begun + periods * turning.turns, sign != end.sign)
+
+    whole = periods * np.rint(turning.turns).astype(np.int64)
+    crossed = (sign != end.sign) ^ (whole % 2 == 1)
+    forward = (start.slope * across - start.psi * along) * chain.half_trace > 0
+    in_gap = whole + np.where(crossed, np.where(forward, 1, -1), 0)
+    return PhasePoint(start.zeros + np.where(passing, in_band, in_gap), end.psi, end.slope)
+
+
+def absolute_phase(chain: Chain, argument: Any, count: Any) -> Any:
+    """arg t, unwrapped without neighbours.
+
+    The transmitted wave followed backwards is psi_R = psi_N - i g_L psi_D, whose imaginary part vanishes exactly at
+    the Dirichlet eigenvalues, and F = g_R psi_R + i slope_R stays within a quarter turn of psi_R because the flux has
+    one sign. So arg t lies in pi count + (-pi/2, 3 pi/2): a range of exactly one turn. `argument` is arg F modulo a
+    turn, `count` the number of Dirichlet eigenvalues below the energy.
+    """
+    raw = -argument
+    return raw + 2 * np.pi * np.rint((count + 0.5 - raw / np.pi) / 2)
+
+
+def first_reaching(
+    function: Callable[[Floats], Any], levels: Any, low: Any, high: Any, sections: int = 16
+) -> Floats:
+    """The energies at which a non-decreasing `function` first reaches each level, to the last bit (or 1e-17 eV).
+
+    `function` maps energies (n,) to values (n,); at `low` it lies below, at `high` it has reached the level. All
+    levels are narrowed together, each bracket cut into `sections` parts per evaluation. Returns the upper end.
+    """
+    levels = np.asarray(levels, dtype=float)
+    low, high = np.broadcast_to(low, levels.shape).astype(float), np.broadcast_to(high, levels.shape).astype(float)
+    parts = np.arange(1, sections) / sections
+    rows = np.arange(levels.size)
+    while np.any((np.nextafter(low, high) < high) & (high - low > 1e-17)):
+        inside = low[:, None] + (high - low)[:, None] * parts
+        reached = np.asarray(function(inside.ravel())).reshape(inside.shape) >= levels[:, None]
+        first = np.where(reached.any(axis=1), reached.argmax(axis=1), sections - 1)
+        edges = np.column_stack([low, inside, high])
+        new_low, new_high = edges[rows, first], edges[rows, first + 1]
+        if np.array_equal(new_low, low) and np.array_equal(new_high, high):
+            break
+        low, high = new_low, new_high
+    return high

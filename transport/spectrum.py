@@ -1,0 +1,175 @@
+"""What a finite stack lets through: transmission, reflection and phase over energy."""
+
+from __future__ import annotations
+
+import math
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from transport.lattice import lossless
+from transport.oscillation import Floats, absolute_phase, zeros
+from transport.sampling import resolve
+from transport.scattering import Amplitude, Chain, Envelope, Powers
+from transport.structure import Stack
+
+MOST_PEAKS = 20_000
+"""Peaks that a chosen-energies spectrum resolves; beyond, it gives the envelope."""
+
+_TOLERANCE = 8e-4  # of T at the thirds of an interval; where T is smooth its thirds then miss by an eighth of it
+_DECADES = 0.05  # the same for log10 T, so that a logarithmic plot is smooth too, down to this share of the range:
+_SMALLEST_SHARE = 1e-5
+
+
+class Spectrum:
+    """Transmission and what belongs to it at each energy, computed when first asked for.
+
+    `energy` (eV, counted from the left lead's edge) has the shape the energies were given in, and so has every
+    result. `envelope` and `note` are set only where there are too many peaks to resolve one by one.
+    """
+
+    def __init__(self, stack: Stack, energy: Floats, envelope: Envelope | None = None, note: str = "") -> None:
+        self.stack, self.energy, self.envelope, self.note = stack, energy, envelope, note
+
+    def __repr__(self) -> str:
+        return f"Spectrum({self.energy.size} energies, {self.stack.periods} periods)"
+
+    @cached_property
+    def _chain(self) -> Chain:
+        return Chain(self.stack, self.energy.ravel())
+
+    @cached_property
+    def _powers(self) -> Powers:
+        return self._chain.powers(self.stack.periods)
+
+    @cached_property
+    def _denominator(self) -> Amplitude:
+        return self._chain.denominator(self._powers)
+
+    def _shaped(self, values: Any) -> Floats:
+        result = np.asarray(values).reshape(self.energy.shape)
+        result.flags.writeable = False
+        return result
+
+    @cached_property
+    def transmission(self) -> Floats:
+        """T, from 0 to 1; 0 where a lead is closed. Below 1e-308 it is 0: read log10_transmission."""
+        return self._shaped(self._chain.transmission(self._denominator))
+
+    @cached_property
+    def reflection(self) -> Floats:
+        """R, from its own amplitude; 1 where a lead is closed (with dephasing, less: what was absorbed is lost)."""
+        return self._shaped(self._chain.reflection(self._powers, self._denominator))
+
+    @cached_property
+    def log10_transmission(self) -> Floats:
+        """log10 T, finite however small T is; -inf where a lead is closed."""
+        return self._shaped(self._chain.log10_transmission(self._denominator))
+
+    @cached_property
+    def phase(self) -> Floats:
+        """arg t between the outer faces (radians), unwrapped in energy; NaN where a lead is closed.
+
+        Absolute for a lossless stack. With dephasing it is unwrapped along ascending energies.
+        """
+        argument, chain = np.angle(self._denominator.value), self._chain
+        if self.stack.dephasing:
+            order = np.argsort(chain.energy)
+            phase = np.empty_like(chain.energy)
+            phase[order] = np.unwrap(-argument[order])
+        else:
+            phase = absolute_phase(chain, argument, zeros(chain, self.stack.periods, self._powers))
+        return self._shaped(np.where(chain.open, phase, np.nan))
+
+
+def spectrum(
+    stack: Stack, energies: ArrayLike | None = None, *, between: tuple[float, float] | None = None
+) -> Spectrum:
+    """Spectrum of a stack at given energies (eV, any shape), or `between` two energies at energies it chooses.
+
+    Chosen energies miss no peak, however narrow, and joining them by straight lines is within 1e-3 of T everywhere.
+    Above 20,000 peaks the envelope's two sides come with them, and `note` says so. Raises ValueError for energies
+    that are not finite, a range that is reversed, and where the one-band model ends.
+    """
+    if (energies is None) == (between is None):
+        raise ValueError("energies, between: give exactly one of the two")
+    if energies is not None:
+        energy = np.asarray(energies, dtype=float)
+        if not np.isfinite(energy).all():
+            raise ValueError("energies: every one must be a finite number of eV")
+        return Spectrum(stack, energy)
+    assert between is not None
+    return _chosen(stack, *between)
+
+
+def transmission_map(stack: Stack, energies: ArrayLike, periods: ArrayLike) -> Floats:
+    """log10 T of the stack with each of several numbers of periods: shape (periods, energies), -inf where closed."""
+    chain = Chain(stack, np.asarray(energies, dtype=float).ravel())
+    counts = np.asarray(periods, dtype=np.int64).reshape(-1, 1)
+    return np.asarray(chain.log10_transmission(chain.denominator(chain.powers(counts))))
+
+
+def _chosen(stack: Stack, low: float, high: float) -> Spectrum:
+    if not (math.isfinite(low) and math.isfinite(high) and low < high):
+        raise ValueError(f"between is ({low!r}, {high!r}): give two finite energies in eV, the lower one first")
+    threshold = max(stack.left.band_edge, stack.right.band_edge)
+    if high <= threshold:
+        return Spectrum(stack, np.array([low, high]))
+    begin, still = max(low, threshold), lossless(stack)
+    ends = np.array([begin, high])
+    chain = Chain(still, ends)
+    peaks = int(np.diff(zeros(chain, stack.periods))[0])
+    if peaks > MOST_PEAKS:
+        return _enveloped(stack, low, begin, high, peaks)
+    samples = resolve(still, np.array([stack.periods]), ends[:1], ends[1:], start=129)
+    energy = _straightened(stack, samples.energy)
+    return Spectrum(stack, energy if begin == low else np.concatenate([[low], energy]))
+
+
+def _straightened(stack: Stack, energy: Floats) -> Floats:
+    """More energies, until T at both thirds of every interval lies on the straight line between its ends.
+
+    Two points, because a curve that bends one way and back crosses its chord at the middle.
+    """
+    value, log = _both(stack, energy)
+    pending, smallest = np.arange(energy.size - 1), _SMALLEST_SHARE * (energy[-1] - energy[0])
+    while pending.size:
+        begin, step = energy[pending], (energy[pending + 1] - energy[pending]) / 3
+        third = np.column_stack([begin + step, begin + 2 * step])
+        t, l = (a.reshape(third.shape) for a in _both(stack, third.ravel()))
+        bent = _off_chord(value, pending, t) > _TOLERANCE
+        bent |= (_off_chord(log, pending, l) > _DECADES) & (step > smallest)
+        bent &= (third[:, 0] > begin) & (third[:, 1] > third[:, 0]) & (third[:, 1] < energy[pending + 1])
+        places = np.repeat(pending + 1, 2)
+        energy, value, log = (
+            np.insert(a, places, b.ravel()) for a, b in ((energy, third), (value, t), (log, l))
+        )
+        first = (pending + 2 * np.arange(pending.size))[bent]
+        pending = np.concatenate([first, first + 1, first + 2])
+        pending.sort()
+    keep = np.concatenate([[True], np.diff(energy) > 0])
+    return energy[keep]
+
+
+def _off_chord(values: Floats, where: NDArray[np.int64], at_thirds: Floats) -> Floats:
+    """Largest distance from the chord at the two thirds of each interval."""
+    left, right = values[where, None], values[where + 1, None]
+    return np.asarray(abs(at_thirds - (left + (right - left) * np.array([1 / 3, 2 / 3]))).max(axis=1))
+
+
+def _both(stack: Stack, energy: Floats) -> tuple[Floats, Floats]:
+    """T and log10 T, the latter never below -300 (where a lead closes it falls without end)."""
+    found = Spectrum(stack, energy)
+    return found.transmission, np.maximum(found.log10_transmission, -300.0)
+
+
+def _enveloped(stack: Stack, low: float, begin: float, high: float, peaks: int) -> Spectrum:
+    """T at evenly spaced energies with the envelope's two sides, for more peaks than can be drawn."""
+    energy = np.concatenate([[low], np.linspace(begin, high, 20_001)])
+    note = (
+        f"{peaks:,} peaks lie in this range, more than the {MOST_PEAKS:,} that are resolved one by one: "
+        "the envelope's two sides are given, between which T swings"
+    )
+    return Spectrum(stack, energy, Chain(lossless(stack), energy).envelope, note)
