@@ -1,0 +1,94 @@
+"""What a beam of finite energy resolution measures: transmission convolved with the beam's Gaussian."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from transport.lattice import lossless
+from transport.numerics import gauss_nodes, row_minima
+from transport.oscillation import Floats
+from transport.sampling import resolve
+from transport.scattering import Chain
+from transport.structure import Stack
+
+FWHM_PER_SIGMA = 2 * math.sqrt(2 * math.log(2))
+_REACH = 9.0  # standard deviations; what lies beyond weighs less than 1e-17
+_STEPS_PER_SIGMA = 2
+
+
+@dataclass(frozen=True, slots=True)
+class Measured:
+    """A curve known by weighted nodes (eV, weights times T), seen through a Gaussian of standard deviation `sigma`."""
+
+    node: Floats
+    weight: Floats
+    sigma: float
+
+    def at(self, energy: Floats) -> Floats:
+        """The measured curve at energies (n,)."""
+        result = np.empty(energy.size)
+        for part in np.array_split(np.arange(energy.size), max(1, energy.size * self.node.size // 2_000_000)):
+            if part.size:
+                near = slice(*np.searchsorted(self.node, [
+                    energy[part].min() - _REACH * self.sigma, energy[part].max() + _REACH * self.sigma]))
+                apart = (energy[part, None] - self.node[near]) / self.sigma
+                result[part] = np.exp(-0.5 * apart * apart) @ self.weight[near]
+        return result / (self.sigma * math.sqrt(2 * math.pi))
+
+    def mean(self, low: float, high: float) -> float:
+        """The plain mean of the measured curve over a window."""
+        from scipy.special import ndtr
+
+        inside = ndtr((high - self.node) / self.sigma) - ndtr((low - self.node) / self.sigma)
+        return float(inside @ self.weight) / (high - low)
+
+    def extremum(self, low: float, high: float, largest: bool) -> tuple[float, float]:
+        """Least (or largest) value of the measured curve in a window, and its energy."""
+        sign = -1.0 if largest else 1.0
+        steps = max(16, math.ceil((high - low) / self.sigma * 4))
+        energy = np.linspace(low, high, steps + 1)
+        row = np.zeros(energy.size, dtype=np.int64)
+        least, place = row_minima(lambda _, e: sign * self.at(e), row, energy, sign * self.at(energy))
+        return sign * float(least[0]), float(place[0])
+
+
+def measured_curves(
+    stack: Stack, counts: NDArray[np.int64], low: float, high: float, resolution: float
+) -> list[Measured]:
+    """The transmission with each number of periods, measurable between two energies (eV) at a resolution (eV FWHM)."""
+    sigma = resolution / FWHM_PER_SIGMA
+    begin = max(low - _REACH * sigma, stack.left.band_edge, stack.right.band_edge)
+    end = high + _REACH * sigma
+    if end <= begin:
+        return [Measured(np.zeros(1), np.zeros(1), sigma)] * counts.size
+    start = math.ceil((end - begin) / sigma * _STEPS_PER_SIGMA) + 2
+    samples = resolve(lossless(stack), counts, np.full(counts.size, begin), np.full(counts.size, end), start)
+    joined = np.flatnonzero(samples.joined)
+    node, weight = gauss_nodes(samples.energy[joined], samples.energy[joined + 1])
+    row = np.repeat(samples.row[joined], node.shape[1])
+    chain = Chain(stack, node.ravel())
+    value = np.minimum(chain.transmission(chain.denominator(chain.powers(counts[row]))), 1.0) * weight.ravel()
+    ends = np.searchsorted(row, np.arange(counts.size + 1))
+    return [Measured(node.ravel()[i:j], value[i:j], sigma) for i, j in zip(ends[:-1], ends[1:], strict=True)]
+
+
+def measured_transmission(stack: Stack, energies: ArrayLike, resolution: float) -> Floats:
+    """T as a beam of Gaussian resolution (eV, full width at half maximum) would measure it, at energies (eV).
+
+    0 gives T itself. Energies below a lead's edge count as T = 0. Raises ValueError for a negative resolution.
+    """
+    energy = np.asarray(energies, dtype=float)
+    if not (math.isfinite(resolution) and resolution >= 0):
+        raise ValueError(f"resolution is {resolution!r}: give a width of 0 eV or more")
+    if not energy.size:
+        return np.zeros(energy.shape)
+    if resolution == 0:
+        chain = Chain(stack, energy.ravel())
+        return np.asarray(chain.transmission(chain.denominator(chain.powers(stack.periods)))).reshape(energy.shape)
+    counts = np.array([stack.periods])
+    (measured,) = measured_curves(stack, counts, float(energy.min()), float(energy.max()), resolution)
+    return measured.at(energy.ravel()).reshape(energy.shape)
