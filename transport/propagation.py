@@ -68,6 +68,24 @@ class Transfer:
 IDENTITY = Transfer(1.0, 0.0, 0.0, 1.0)
 
 
+@dataclass(frozen=True, slots=True)
+class Span:
+    """The box in which a set of energies lies (eV): real parts from `low` to `high`, imaginary parts up to `imaginary`."""
+
+    low: float
+    high: float
+    imaginary: float
+
+    @classmethod
+    def of(cls, energy: Array) -> Span:
+        """The box of an array of energies."""
+        if not energy.size:
+            return cls(0.0, 0.0, 0.0)
+        if energy.dtype.kind == "c":
+            return cls(float(energy.real.min()), float(energy.real.max()), float(abs(energy.imag).max()))
+        return cls(float(energy.min()), float(energy.max()), 0.0)
+
+
 def transfer(elements: Sequence[Element], energy: Array) -> Transfer:
     """Transfer matrix of a list of layers and deltas, left to right, at each energy (eV, shape (n,)).
 
@@ -75,8 +93,9 @@ def transfer(elements: Sequence[Element], energy: Array) -> Transfer:
     """
     if not elements:
         return IDENTITY
-    known = {element: element_transfer(element, energy) for element in dict.fromkeys(elements)}
-    scaled = _growth_bound(elements, energy) > OPAQUE
+    span = Span.of(energy)
+    known = {element: element_transfer(element, energy, span) for element in dict.fromkeys(elements)}
+    scaled = _growth_bound(elements, span) > OPAQUE
     total = known[elements[0]]
     for element in elements[1:]:
         total = known[element] @ total
@@ -85,16 +104,27 @@ def transfer(elements: Sequence[Element], energy: Array) -> Transfer:
     return total
 
 
-def element_transfer(element: Element, energy: Array) -> Transfer:
-    """Transfer matrix of one layer or delta at each energy (eV)."""
+def element_transfer(element: Element, energy: Array, span: Span | None = None) -> Transfer:
+    """Transfer matrix of one layer or delta at each energy (eV); `span`, if known, is the energies' box."""
     if isinstance(element, Delta):
         return Transfer(1.0, 0.0, element.strength / HBAR2_2M0, 1.0)
-    kinetic = energy - element.band_edge
+    span = span or Span.of(energy)
+    kinetic = energy - np.array(element.band_edge)
     mass = mass_at(element, energy)
-    cosine, sine, log_scale = cosine_and_sine(kinetic * (mass * (element.thickness**2 / HBAR2_2M0)))
-    return Transfer(
-        cosine, sine * (mass * element.thickness), kinetic * sine * (-element.thickness / HBAR2_2M0), cosine, log_scale
-    )
+    length = element.thickness / HBAR2_2M0
+    reach = max(abs(span.low - element.band_edge), abs(span.high - element.band_edge)) + span.imaginary
+    largest = reach * float(np.max(abs(mass))) * element.thickness * length
+    if largest > OPAQUE**2 and span.low < element.band_edge:
+        cosine, sine, log_scale = _opaque(kinetic * (mass * element.thickness * length))
+        return Transfer(cosine, sine * (mass * element.thickness), kinetic * sine * -length, cosine, log_scale)
+    near = _COMPLEX_REACH if energy.dtype.kind == "c" else _REAL_REACH
+    doublings = max(0, math.ceil(math.log(largest / near, 4))) if largest > near else 0
+    cosine, sine = _doubled(kinetic * np.array(mass * element.thickness * length * (-4 * 0.25**doublings)), doublings)
+    share = 0.5**doublings * element.thickness
+    lower = kinetic * sine
+    lower *= np.array(-share / HBAR2_2M0)
+    sine *= np.array(mass * share)
+    return Transfer(cosine, sine, lower, cosine)
 
 
 def mass_at(medium: Layer | Lead, energy: Array) -> Any:
@@ -114,68 +144,69 @@ def mass_at(medium: Layer | Lead, energy: Array) -> Any:
     return medium.mass * factor
 
 
-# S(x) on |x| <= 1: its Taylor series with the tail economised away (Chebyshev coefficients beyond degree 7 are below
-# 3e-17). Lanczos, Applied Analysis (1956), chapter VII.
-_SINE = chebyshev.cheb2poly(
-    chebyshev.poly2cheb([(-1) ** n / math.factorial(2 * n + 1) for n in range(14)])[:8]
-).tolist()
+def _economised() -> tuple[NDArray[np.float64], ...]:
+    """S as a polynomial in z = -4x on |x| <= 1, highest power first.
 
+    Its Taylor series with the tail economised away: Chebyshev coefficients beyond degree 7 are below 3e-17 (Lanczos,
+    Applied Analysis (1956), chapter VII). Kept as arrays of no dimension, which NumPy adds faster than floats.
+    """
+    taylor = [(-1) ** n / math.factorial(2 * n + 1) for n in range(14)]
+    powers = chebyshev.cheb2poly(chebyshev.poly2cheb(taylor)[:8])
+    return tuple(np.array(c * (-0.25) ** n) for n, c in reversed(list(enumerate(powers))))
+
+
+_SINE = _economised()
+_ONE_HALF, _TWO, _FOUR = np.array(0.5), np.array(2.0), np.array(4.0)
 _REAL_REACH, _COMPLEX_REACH = 1.0, 0.25  # the dropped Chebyshev terms grow off the real axis, so stay closer to 0
 
 
-def cosine_and_sine(x: Array) -> tuple[Array, Array, Any]:
-    """cos sqrt(x), sin sqrt(x)/sqrt(x) and the logarithm of the scale taken out of both (0 unless opaque)."""
-    if not x.size:
-        return x, x, 0.0
-    reach = _COMPLEX_REACH if np.iscomplexobj(x) else _REAL_REACH
-    largest = float(abs(x).max()) if np.iscomplexobj(x) else max(float(x.max()), -float(x.min()))
-    if largest > OPAQUE**2 and float(x.real.min()) < -(OPAQUE**2):
-        return _opaque(x)
-    doublings = max(0, math.ceil(math.log(largest / reach, 4))) if largest > reach else 0
-    return *_doubled(x * 0.25**doublings, doublings), 0.0
+def _doubled(z: Array, doublings: int) -> tuple[Array, Array]:
+    """cos(2^n t) and sin(2^n t)/t for z = -4 t^2, |z| small, n doublings.
 
-
-def _doubled(x: Array, doublings: int) -> tuple[Array, Array]:
-    """cos and sin/x of 2^doublings sqrt(x), for small x: S(4x) = S(x) cos, cos 2t = 1 - 2 sin^2 t."""
-    sine = x * _SINE[-1]
-    for coefficient in _SINE[-2:0:-1]:
+    With s = sin t / t0 and w = 2 cos t: doubling the angle takes s to s w, and w to 2 + z s^2 (the s before it).
+    """
+    sine = z * _SINE[0]
+    for coefficient in _SINE[1:-1]:
         sine += coefficient
-        sine *= x
-    sine += _SINE[0]
+        sine *= z
+    sine += _SINE[-1]
     square = sine * sine
-    square *= x
-    cosine = np.sqrt(1 - square)
+    square *= z
+    twice = np.sqrt(square + _FOUR)
     for step in range(doublings):
         if step:
             square = sine * sine
-            square *= x
-        sine *= cosine
-        square *= -2 * 4.0**step
-        square += 1
-        cosine = square
-    return cosine, sine
+            square *= z
+        sine *= twice
+        square += _TWO
+        twice = square
+    twice *= _ONE_HALF
+    return twice, sine
 
 
-def _opaque(x: Array) -> tuple[Array, Array, Array]:
-    """As cosine_and_sine, where some layers are so thick that exp(sqrt(-x)) would overflow."""
+def _opaque(x: Array) -> tuple[Array, Array, NDArray[np.float64]]:
+    """cos sqrt(x), sin sqrt(x)/sqrt(x) over exp(log_scale), and log_scale, where exp(sqrt(-x)) may overflow."""
     thick = x.real < -(OPAQUE**2)
-    cosine, sine, _ = cosine_and_sine(np.where(thick, 0, x))
+    thin = np.where(thick, 0, x)
+    doublings = max(0, math.ceil(math.log(max(float(abs(thin).max()), 1e-9) / _COMPLEX_REACH, 4)))
+    cosine, sine = _doubled(thin * (-4 * 0.25**doublings), doublings)
+    sine *= 0.5**doublings
     decay = np.sqrt(-x[thick] + 0j)
     turn = np.exp(1j * decay.imag) / 2
     log_scale = np.zeros(x.shape)
     log_scale[thick] = decay.real
-    cosine[thick], sine[thick] = (part if np.iscomplexobj(x) else part.real for part in (turn, turn / decay))
+    parts = (turn, turn / decay)
+    cosine[thick], sine[thick] = parts if x.dtype.kind == "c" else (part.real for part in parts)
     return cosine, sine, log_scale
 
 
-def _growth_bound(elements: Sequence[Element], energy: Array) -> float:
+def _growth_bound(elements: Sequence[Element], span: Span) -> float:
     """A rough upper bound of log |M|: decay in barriers, and something for every mismatch between neighbours."""
-    lowest = float(energy.real.min()) if energy.size else 0.0
     growth = 0.0
     for element in elements:
         if isinstance(element, Delta):
             growth += math.log1p(abs(element.strength) / HBAR2_2M0)
         else:
-            depth = max(0.0, element.band_edge - lowest) * element.mass / HBAR2_2M0
+            depth = max(0.0, element.band_edge - span.low) * element.mass / HBAR2_2M0
             growth += 1.0 + math.sqrt(depth) * element.thickness
     return growth

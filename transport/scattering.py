@@ -36,40 +36,52 @@ _SURELY_OPAQUE = 30.0
 
 @dataclass(frozen=True, slots=True)
 class Powers:
-    """T_N and U_{N-1} of the half trace, both over exp(log_scale), at each energy."""
+    """T_N and U_{N-1} of the half trace at each energy; at the places `deep` (an index), both over exp(growth)."""
 
     first: Any
     second: Any
-    log_scale: Any
+    deep: tuple[Any, ...] | None = None
+    growth: Any = 0.0
 
 
 @dataclass(frozen=True, slots=True)
 class Amplitude:
-    """(even + i odd) exp(log_scale): real parts for a lossless stack, complex ones with dephasing."""
+    """(even + i odd) exp(log_scale): real parts for a lossless stack, complex ones with dephasing.
+
+    `powers`, once applied, holds the growth that is still to be multiplied in.
+    """
 
     even: Any
     odd: Any
     log_scale: Any = 0.0
+    powers: Powers | None = None
 
     @property
     def value(self) -> NDArray[np.complex128]:
-        """even + i odd, without the scale."""
+        """even + i odd, without the scales."""
         return np.asarray(self.even + 1j * self.odd)
 
     @property
     def squared(self) -> Any:
-        """|even + i odd|^2, without the scale."""
-        if np.iscomplexobj(self.even) or np.iscomplexobj(self.odd):
+        """|even + i odd|^2, without the scales."""
+        if self.even.dtype.kind == "c":
             value = self.value
             return value.real**2 + value.imag**2
         return self.even * self.even + self.odd * self.odd
+
+    @property
+    def logarithm(self) -> tuple[Any, tuple[Any, ...] | None, Any]:
+        """What was taken out: everywhere, and besides at some places."""
+        powers = self.powers
+        return (self.log_scale, None, 0.0) if powers is None else (self.log_scale, powers.deep, powers.growth)
 
     def at(self, powers: Powers, swing: Amplitude) -> Amplitude:
         """This amplitude (of exit.entry) with `swing` (of exit.swing.entry), for N periods."""
         return Amplitude(
             _sum(self.even, powers.first, swing.even, powers.second),
             _sum(self.odd, powers.first, swing.odd, powers.second),
-            self.log_scale + powers.log_scale,
+            self.log_scale,
+            powers,
         )
 
 
@@ -122,9 +134,10 @@ class Chain:
     def outgoing(self) -> tuple[Amplitude, Amplitude]:
         """F for exit.entry and for exit.swing.entry."""
         plain, swing = self.around
-        forward = _outgoing(swing, self.left, self.right)
         if swing is self.swing and self.right is self.left:
-            forward = Amplitude(0.0, forward.odd)  # g_R lean - g_L lean
+            forward = Amplitude(0.0, swing.c - (self.left * self.right) * swing.b)  # g_R lean - g_L lean = 0
+        else:
+            forward = _outgoing(swing, self.left, self.right)
         return _outgoing(plain, self.left, self.right), forward
 
     @cached_property
@@ -147,18 +160,21 @@ class Chain:
     def powers(self, periods: Any) -> Powers:
         """T_N(h) and U_{N-1}(h), without overflow however many periods stand in a gap."""
         deep = self._deep(periods)
-        if not deep.any():
-            return Powers(*chebyshev(self.half_trace, self.sine_squared, periods), 0.0)
+        if deep is None:
+            return Powers(*chebyshev(self.half_trace, self.sine_squared, periods))
         near, far = np.nonzero(~deep), np.nonzero(deep)
-        first, second, log_scale = (np.zeros(deep.shape, self.half_trace.dtype) for _ in range(3))
+        first, second = (np.empty(deep.shape, self.half_trace.dtype) for _ in range(2))
         first[near], second[near] = chebyshev(*self._at(near, periods))
-        first[far], second[far], log_scale[far] = self._asymptotic(far, periods)
-        return Powers(first, second, log_scale.real)
+        first[far], second[far], growth = self._asymptotic(far, periods)
+        return Powers(first, second, far, growth)
 
-    def _deep(self, periods: Any) -> NDArray[np.bool_]:
-        """Where lambda^N would overflow: the growth is then kept as a logarithm."""
+    def _deep(self, periods: Any) -> NDArray[np.bool_] | None:
+        """Where lambda^N would overflow (None: nowhere): the growth is then kept as a logarithm."""
+        size = abs(self.half_trace)
         limit = np.cosh(np.minimum(OPAQUE / np.asarray(periods), 300.0))
-        deep: NDArray[np.bool_] = abs(self.half_trace) > limit
+        if self.log_cell is None and (not size.size or size.max() <= limit.min()):
+            return None
+        deep: NDArray[np.bool_] = size > limit
         return deep if self.log_cell is None else deep | (self.log_cell > 0)
 
     def _at(self, where: tuple[Any, ...], periods: Any) -> tuple[Array, Array, Any]:
@@ -172,7 +188,7 @@ class Chain:
         """T_N, U_{N-1} and their logarithm where 1/lambda^N is nothing beside lambda^N = exp(N mu) (+-1)^N."""
         half, squared, count = self._at(where, periods)
         root = np.sqrt(-squared)
-        if np.iscomplexobj(half):
+        if half.dtype.kind == "c":
             root = np.where((half.conj() * root).real < 0, -root, root)
         else:
             root = np.copysign(root, half)
@@ -181,7 +197,7 @@ class Chain:
             growth = self.log_cell[where[-1]]
             larger, sine = np.where(growth > 0, 2 * half, larger), np.where(growth > 0, half, sine)
         size = abs(larger)
-        turn = np.where(count % 2, larger / size, 1.0) if not np.iscomplexobj(half) else (larger / size) ** count
+        turn = _unit_power(larger, size, count)
         return turn, turn / sine, count * (np.log(size) + growth) - LN2
 
     def denominator(self, powers: Powers) -> Amplitude:
@@ -192,16 +208,22 @@ class Chain:
     def transmission(self, denominator: Amplitude) -> Any:
         """T = 4 g_L g_R / |F|^2; 0 where a lead is closed."""
         result = self.flux / denominator.squared
-        if isinstance(denominator.log_scale, np.ndarray):
-            scaled = np.nonzero(denominator.log_scale)
-            with np.errstate(under="ignore"):
-                result[scaled] *= np.exp(-2 * denominator.log_scale[scaled])
+        everywhere, places, growth = denominator.logarithm
+        with np.errstate(under="ignore"):
+            if isinstance(everywhere, np.ndarray):
+                result = result * np.exp(-2 * everywhere)
+            if places is not None:
+                result[places] *= np.exp2((-2 / LN2) * growth)
         return result
 
     def log10_transmission(self, denominator: Amplitude) -> Any:
         """log10 T, finite however small T is; -inf where a lead is closed."""
+        everywhere, places, growth = denominator.logarithm
         with np.errstate(divide="ignore"):
-            return np.log10(self.flux / denominator.squared) - (2 / math.log(10)) * denominator.log_scale
+            result = np.log(self.flux / denominator.squared) - 2 * everywhere
+        if places is not None:
+            result[places] -= 2 * growth
+        return result * (1 / math.log(10))
 
     def reflection(self, powers: Powers, denominator: Amplitude) -> Any:
         """R = |r|^2, from its own amplitude and not as 1 - T; 1 where the left lead is closed."""
@@ -278,8 +300,7 @@ def _split(cell: Transfer) -> tuple[Array, Transfer, NDArray[np.float64] | None]
         scale = np.exp(np.where(held, 0.0, log_cell))
         cell = Transfer(cell.a * scale, cell.b * scale, cell.c * scale, cell.d * scale)
         log_cell = np.where(held, log_cell, 0.0)
-    half = 0.5 * (cell.a + cell.d)
-    lean = 0.5 * (cell.a - cell.d)
+    half, lean = (cell.a + cell.d) * _ONE_HALF, (cell.a - cell.d) * _ONE_HALF
     return half, Transfer(lean, cell.b, cell.c, -lean), log_cell
 
 
@@ -299,30 +320,53 @@ def sine_squared(half_trace: Array, swing: Transfer) -> Array:
     return result
 
 
+def _unit_power(value: Array, size: Array, count: Any) -> Any:
+    """(value / |value|)^count."""
+    if value.dtype.kind == "c":
+        return (value / size) ** count
+    if np.ndim(count):
+        return np.where(count % 2, np.copysign(1.0, value), 1.0)
+    return np.copysign(1.0, value) if count % 2 else np.ones_like(value)
+
+
 def chebyshev(half_trace: Array, sine_squared: Array, periods: Any) -> tuple[Any, Any]:
     """T_N(h) and U_{N-1}(h) by binary powering of cos phi + i sin phi: both sides of a band edge, real or complex."""
     count = np.asarray(periods)
     bits = int(count.max()).bit_length()
-    twice, second, down = 2 * half_trace, np.ones_like(half_trace), -4 * sine_squared
     if count.ndim:
-        low = (count >> (bits - 1)) & 1 == 0
-        twice, second = np.where(low, 2.0, twice), np.where(low, 0.0, second)
+        return _chebyshev_each(half_trace, sine_squared, count, bits)
+    twice, second, down = half_trace + half_trace, 1.0, sine_squared * _MINUS_FOUR
     for bit in reversed(range(bits - 1)):
-        square = second * second
-        square *= down
-        square += 2
-        second = twice * second
-        twice = square
-        if count.ndim:
-            odd = (count >> bit) & 1 == 1
-            stepped = _one_more(half_trace, sine_squared, twice, second)
-            twice, second = np.where(odd, stepped[0], twice), np.where(odd, stepped[1], second)
-        elif (int(count) >> bit) & 1:
+        twice, second = _twofold(down, twice, second)
+        if (int(count) >> bit) & 1:
             twice, second = _one_more(half_trace, sine_squared, twice, second)
-    twice *= 0.5
-    return twice, second
+    return twice * _ONE_HALF, second
+
+
+def _chebyshev_each(half_trace: Array, sine_squared: Array, count: NDArray[np.int64], bits: int) -> tuple[Any, Any]:
+    """As chebyshev, with a number of periods for each element."""
+    twice, second, down = np.full_like(half_trace, 2.0), np.zeros_like(half_trace), sine_squared * _MINUS_FOUR
+    for bit in reversed(range(bits)):
+        twice, second = _twofold(down, twice, second)
+        odd = (count >> bit) & 1 == 1
+        stepped = _one_more(half_trace, sine_squared, twice, second)
+        twice, second = np.where(odd, stepped[0], twice), np.where(odd, stepped[1], second)
+    return twice * _ONE_HALF, second
+
+
+_ONE_HALF, _TWO, _MINUS_FOUR = np.array(0.5), np.array(2.0), np.array(-4.0)
+
+
+def _twofold(down: Array, twice: Any, second: Any) -> tuple[Any, Any]:
+    """2 T and U of twice as many periods; `down` is -4 sin^2."""
+    if isinstance(second, float):
+        return down + _TWO, twice
+    square = second * second
+    square *= down
+    square += _TWO
+    return square, twice * second
 
 
 def _one_more(half_trace: Array, sine_squared: Array, twice: Any, second: Any) -> tuple[Any, Any]:
     """2 T and U of one more period."""
-    return half_trace * twice - (2 * sine_squared) * second, 0.5 * twice + half_trace * second
+    return half_trace * twice - (sine_squared * _TWO) * second, twice * _ONE_HALF + half_trace * second
