@@ -88,7 +88,7 @@ def _install_debian_pip() -> None:
     with tempfile.TemporaryDirectory() as folder:
         if os.geteuid() == 0:
             run("apt-get", "update", "--quiet=2", remedy=remedy)
-        fetch = ["apt-get", "download", "--quiet=2", "python3-pip-whl"]
+        fetch = ["apt-get", "download", "--quiet=2", "--option", "APT::Sandbox::User=root", "python3-pip-whl"]
         subprocess.run(fetch, cwd=folder, check=False)
         for package in Path(folder).glob("*.deb"):
             run("dpkg-deb", "--extract", package, folder, remedy=remedy)
