@@ -1,0 +1,104 @@
+"""The one table of limits, defaults, units and help of everything a scenario may say.
+
+Validation, widget bounds, command-line help and the README all read it. A name is a key of the
+scenario file, which means the same and has the same limits wherever it stands; `file_...` counts what a file holds.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass
+from types import MappingProxyType
+
+
+@dataclass(frozen=True, slots=True)
+class Parameter:
+    """One quantity; `default` None: required or absent; bounds count unless `low_open`, `high_open`."""
+
+    name: str
+    default: float | None
+    low: float
+    high: float
+    unit: str
+    help: str
+    low_open: bool = False
+    high_open: bool = False
+    whole: bool = False
+
+    @property
+    def requirement(self) -> str:
+        """What a value must be, in words: `must be above 0 and at most 10,000 nm`."""
+        unit = f" {self.unit}" if self.unit else ""
+        number = "a whole number " if self.whole else ""
+        if not (self.low_open or self.high_open):
+            return f"must be {number}from {in_words(self.low)} to {in_words(self.high)}{unit}"
+        lower = "above" if self.low_open else "at least"
+        upper = "below" if self.high_open else "at most"
+        return f"must be {number}{lower} {in_words(self.low)} and {upper} {in_words(self.high)}{unit}"
+
+    def admits(self, value: float) -> bool:
+        """Whether `value` is finite and inside the bounds."""
+        if isinstance(value, float) and not math.isfinite(value):
+            return False
+        above = value > self.low if self.low_open else value >= self.low
+        return above and (value < self.high if self.high_open else value <= self.high)
+
+
+def in_words(number: float) -> str:
+    """A limit as people write it: 10,000 and 1e+22, 0.0001 and never 10000.0."""
+    return f"{number:,.10g}" if abs(number) < 1e15 else f"{number:.3g}"
+
+
+def _table(*parameters: Parameter) -> Mapping[str, Parameter]:
+    return MappingProxyType({parameter.name: parameter for parameter in parameters})
+
+
+_EV = 1000.0  # far beyond any one-band model, near enough to keep every product finite
+_MEV = 1000 * _EV
+
+
+PARAMETERS: Mapping[str, Parameter] = _table(
+    Parameter("temperature_K", 300.0, 0.0, 2000.0, "K", "temperature of gaps and lattice constants", low_open=True),
+    Parameter("dephasing_meV", 0.0, 0.0, _MEV, "meV", "loss: width of the optical potential in every stack layer"),
+    Parameter("resolution_meV", 0.0, 0.0, _MEV, "meV", "full width at half maximum of the measuring beam"),
+    Parameter("band_edge_eV", None, -_EV, _EV, "eV", "conduction-band edge; explicit edges share one scale"),
+    Parameter("mass", None, 1e-4, 1000.0, "m0", "effective mass"),
+    Parameter("nonparabolicity_per_eV", None, 0.0, 1000.0, "1/eV", "a in m(E) = mass (1 + a (E - V))"),
+    Parameter("x", None, 0.0, 1.0, "", "composition: fraction of the alloy's first-named cation"),
+    Parameter("thickness_nm", None, 0.0, 10_000.0, "nm", "thickness of a layer", low_open=True),
+    Parameter("monolayers", None, 0.0, 20_000.0, "monolayers",
+              "thickness of a layer in monolayers, half a lattice constant each", low_open=True),
+    Parameter("delta_eV_nm", None, -1e7, 1e7, "eV nm", "strength of a barrier of zero thickness"),
+    Parameter("repeat", None, 1, 2000, "", "how often a list of layers is written", whole=True),
+    Parameter("donors_cm3", None, 0.0, 1e22, "per cm3", "donor density of a lead", low_open=True),
+    Parameter("fermi_meV", None, -_MEV, _MEV, "meV", "Fermi level above the lead's own band edge"),
+    Parameter("periods", None, 1, 1_000_000, "", "how often the cell is repeated", whole=True),
+    Parameter("bias_V", 0.0, -_EV, _EV, "V", "difference of the leads' Fermi levels; positive lowers the right lead"),
+    Parameter("drop_V", None, -_EV, _EV, "V", "voltage across the stack, in place of bias and built-in drop"),
+    Parameter("gap_eV", None, 0.0, _EV, "eV", "band gap; its inverse is the non-parabolicity where none is given",
+              low_open=True),
+    Parameter("monolayer_nm", None, 0.0, 100.0, "nm", "thickness of one monolayer", low_open=True),
+    Parameter("most_periods", 60, 1, 2000, "", "most periods that may be grown", whole=True),
+    Parameter("from_meV", None, -_MEV, _MEV, "meV", "bottom of a window"),
+    Parameter("to_meV", None, -_MEV, _MEV, "meV", "top of a window"),
+    Parameter("transmission", None, 0.0, 1.0, "", "least transmission of a pass window, most of a block window",
+              low_open=True),
+    Parameter("energy_eV", None, -_EV, _EV, "eV", "energy of motion along growth, from the left lead's edge"),
+    Parameter("points", None, 1, 1_000_000, "", "evenly spaced energies of a spectrum", whole=True),
+    Parameter("file_bytes", None, 1, 1_000_000, "bytes", "size of a scenario file", whole=True),
+    Parameter("file_layers", None, 1, 2000, "layers", "layers in a file, repeat groups written out", whole=True),
+    Parameter("file_windows", None, 0, 100, "windows", "windows of a target", whole=True),
+    Parameter("file_materials", None, 0, 100, "materials", "materials a scenario defines", whole=True),
+    Parameter("title", None, 1, 200, "characters", "length of the title", whole=True),
+    Parameter("note", None, 0, 10_000, "characters", "length of the note", whole=True),
+    Parameter("name", None, 1, 60, "characters", "length of a material's name", whole=True),
+)
+
+
+def default(name: str) -> float:
+    """The stated default of a parameter that has one. Raises ValueError where it is required or simply absent."""
+    value = PARAMETERS[name].default
+    if value is None:
+        raise ValueError(f"name is {name!r}: that parameter has no default")
+    return value

@@ -1,0 +1,159 @@
+"""From a document to the stack the engine computes, the target in eV, and the grower's sheet."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass, replace
+
+from transport.checks import written_out
+from transport.document import Document, LayerRecord, LeadRecord, WindowRecord, default_measure
+from transport.materials import OFFSET_WARNING
+from transport.media import Media, Medium
+from transport.parameters import PARAMETERS
+from transport.refusal import ScenarioError, refuse_unless, shown
+from transport.structure import Delta, Element, Layer, Lead, Stack, Target, Window
+
+
+@dataclass(frozen=True, slots=True)
+class SheetRow:
+    """One line of the grower's sheet, from the left lead's side; the cell stands once.
+
+    `where`: left lead, entry, cell, exit or right lead; `key`: its place in the file. `material` is None for a layer
+    or lead given by its edge, and for a delta. Lengths nm, `band_edge` eV from the left lead's edge, `mass` m0,
+    `nonparabolicity` 1/eV, `strength` (of a delta only) eV nm; None where it does not apply. `monolayers` may be
+    fractional: growth rounds it.
+    """
+
+    where: str
+    key: str
+    material: str | None = None
+    x: float | None = None
+    thickness: float | None = None
+    monolayers: float | None = None
+    band_edge: float | None = None
+    mass: float | None = None
+    nonparabolicity: float | None = None
+    strength: float | None = None
+    warnings: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Resolved:
+    """What a document comes to."""
+
+    stack: Stack
+    target: Target | None
+    sheet: tuple[SheetRow, ...]
+    warnings: tuple[str, ...]
+
+
+def resolve(document: Document) -> Resolved:
+    """The stack, target, sheet and warnings of a checked document. Raises ScenarioError."""
+    _refuse_a_drop(document)
+    media = Media(document)
+    zero = media.medium("leads.left", document.leads.left).band_edge
+    sheet = tuple(_sheet(document, media, zero))
+    stack = Stack(
+        left=_lead(sheet[0]),
+        entry=_elements(sheet, "entry"),
+        cell=_elements(sheet, "cell"),
+        periods=document.stack.periods,
+        exit=_elements(sheet, "exit"),
+        right=_lead(sheet[-1]),
+        dephasing=document.conditions.dephasing_meV / 1000,
+    )
+    return Resolved(stack, _target(document), sheet, _warnings(sheet, media))
+
+
+def _refuse_a_drop(document: Document) -> None:
+    """A drop tilts the cells so that no two are alike; the engine computes equal cells only."""
+    stack, leads = document.stack, document.leads
+    tilted = "the stack would be tilted and no longer periodic, which this version does not compute"
+    if stack.drop_V is not None:
+        refuse_unless(stack.drop_V == 0, "stack.drop_V", f"is {shown(stack.drop_V)}: {tilted}; set it to 0")
+        return
+    refuse_unless(stack.bias_V == 0, "stack.bias_V", f"is {shown(stack.bias_V)}: {tilted}; set it to 0")
+    refuse_unless(not _built_in_drop(leads.left, leads.right), "stack.bias_V",
+                  f"is 0, but the leads' Fermi levels differ and leave a built-in drop: {tilted}; "
+                  "give both leads the same doping, or set stack.drop_V = 0")
+
+
+def _built_in_drop(left: LeadRecord, right: LeadRecord) -> bool:
+    """Whether both leads have a Fermi level and it lies differently above their band edges."""
+    if any(lead.donors_cm3 is None and lead.fermi_meV is None for lead in (left, right)):
+        return False
+    if left.fermi_meV is not None:
+        return left.fermi_meV != right.fermi_meV
+    # The Fermi level of given donors depends on the mass too: only equal leads surely have the same.
+    return left != right
+
+
+def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:
+    yield _row("left lead", "leads.left", media.medium("leads.left", document.leads.left), zero)
+    for part in ("entry", "cell", "exit"):
+        for key, record in written_out(f"stack.{part}", getattr(document.stack, part)):
+            yield _layer_row(part, key, record, media, zero)
+    yield _row("right lead", "leads.right", media.medium("leads.right", document.leads.right), zero)
+
+
+def _row(where: str, key: str, medium: Medium, zero: float) -> SheetRow:
+    return SheetRow(where, key, medium.material, medium.x, band_edge=medium.band_edge - zero, mass=medium.mass,
+                    nonparabolicity=medium.nonparabolicity, warnings=medium.warnings)
+
+
+def _layer_row(part: str, key: str, record: LayerRecord, media: Media, zero: float) -> SheetRow:
+    if record.kind == "delta":
+        return SheetRow(part, key, thickness=0.0, strength=record.delta_eV_nm)
+    medium = media.medium(key, record)
+    thickness, monolayers = _thickness(key, record, medium)
+    return replace(_row(part, key, medium, zero), thickness=thickness, monolayers=monolayers)
+
+
+def _thickness(key: str, record: LayerRecord, medium: Medium) -> tuple[float, float | None]:
+    """Thickness in nm and, where the medium has them, in monolayers."""
+    if record.thickness_nm is not None:
+        return record.thickness_nm, record.thickness_nm / medium.monolayer if medium.monolayer else None
+    assert record.monolayers is not None
+    if medium.monolayer is None:
+        raise ScenarioError(f"{key}.monolayers", f"needs the thickness of one; give [materials.{medium.material}] "
+                            "a monolayer_nm, or the layer a thickness_nm")
+    thickness = record.monolayers * medium.monolayer
+    most = PARAMETERS["thickness_nm"].high
+    refuse_unless(0 < thickness <= most, f"{key}.monolayers",
+                  f"come to {thickness:.6g} nm, but a layer has above 0 and at most {most:,.0f} nm; give fewer")
+    return thickness, record.monolayers
+
+
+def _elements(sheet: tuple[SheetRow, ...], part: str) -> tuple[Element, ...]:
+    return tuple(_element(row) for row in sheet if row.where == part)
+
+
+def _element(row: SheetRow) -> Element:
+    if row.strength is not None:
+        return Delta(row.strength)
+    assert None not in (row.thickness, row.band_edge, row.mass)
+    return Layer(row.thickness or 0.0, row.band_edge or 0.0, row.mass or 0.0, row.nonparabolicity or 0.0)
+
+
+def _lead(row: SheetRow) -> Lead:
+    assert row.band_edge is not None and row.mass is not None
+    return Lead(row.band_edge, row.mass, row.nonparabolicity or 0.0)
+
+
+def _target(document: Document) -> Target | None:
+    if document.target is None:
+        return None
+    return Target(tuple(_window(window) for window in document.target.windows), document.target.most_periods)
+
+
+def _window(window: WindowRecord) -> Window:
+    measure = window.measure or default_measure(window.kind)
+    return Window(window.kind, window.from_meV / 1000, window.to_meV / 1000, window.transmission, measure)
+
+
+def _warnings(sheet: tuple[SheetRow, ...], media: Media) -> tuple[str, ...]:
+    """Every sentence once, in the order of the sheet."""
+    found = dict.fromkeys(sentence for row in sheet for sentence in row.warnings)
+    if len(media.library) > 1:
+        found[OFFSET_WARNING] = None
+    return tuple(found)
