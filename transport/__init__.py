@@ -7,7 +7,7 @@ from transport.spectrum import Spectrum, spectrum, transmission_map
 from transport.structure import Delta, Layer, Lead, Profile, Stack, Target, Window, band_profile
 
 __all__ = [
-    "Band", "Bands", "Bloch", "Certificate", "Delta", "Layer", "Lead", "PeriodCheck", "Profile", "Spectrum", "Stack", "Target",
-    "Verdict", "Window", "band_profile", "bloch", "certify", "default_range", "lattice_bands",
-    "measured_transmission", "period_verdict", "spectrum", "transmission_map",
+    "Band", "Bands", "Bloch", "Certificate", "Delta", "Layer", "Lead", "PeriodCheck", "Profile",
+    "Spectrum", "Stack", "Target", "Verdict", "Window", "band_profile", "bloch", "certify", "default_range",
+    "lattice_bands", "measured_transmission", "period_verdict", "spectrum", "transmission_map",
 ]

@@ -9,16 +9,17 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
+from transport.chain import Chain
 from transport.lattice import Band, lattice_bands
 from transport.measuring import FWHM_PER_SIGMA, Measured
 from transport.numerics import gauss_nodes, row_integrals, row_minima
 from transport.oscillation import Floats
 from transport.sampling import resolve
-from transport.scattering import Chain
 from transport.structure import Stack, Window
 
 _CLOSED = 1e-12  # eV: a gap narrower than this is closed for a window
@@ -48,6 +49,7 @@ class Miniband:
         return f"miniband {self.first}" if self.first == self.last else f"minibands {self.first}-{self.last}"
 
 
+@lru_cache(maxsize=256)
 def minibands(stack: Stack, low: float, high: float) -> tuple[Miniband, ...]:
     """The minibands reaching into a range (eV), those that touch joined."""
     joined: list[Miniband] = []
@@ -88,7 +90,7 @@ def mean_limit(stack: Stack, window: Window) -> float:
     """What the window's mean of T tends to as periods are added: the mean of sqrt(lower upper), 0 in the gaps."""
     total = 0.0
     for low, high in _open_pieces(stack, window.bottom, window.top):
-        row, energy = _envelope_samples(stack, low, high)
+        _, energy = _envelope_samples(stack, low, high)
         integral = row_integrals(
             lambda _, e: _side(stack, e, "middle"), np.zeros(energy.size - 1, np.int64), energy[:-1], energy[1:], 1
         )

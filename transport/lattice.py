@@ -13,11 +13,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from transport.chain import Chain
 from transport.constants import HBAR, HBAR2_2M0
 from transport.oscillation import Floats, first_reaching, rotation
 from transport.propagation import transfer
-from transport.scattering import Chain
 from transport.structure import Layer, Stack
+
+MOST_BANDS = 20_000
+"""Bands listed at most."""
 
 _STEP = 1e-30
 """Imaginary step (eV) for exact derivatives of analytic functions (Squire and Trapp, SIAM Rev. 40, 110 (1998))."""
@@ -89,6 +92,10 @@ def lattice_bands(stack: Stack, between: tuple[float, float] | None = None) -> B
     if not (math.isfinite(low) and math.isfinite(high) and low < high):
         raise ValueError(f"between is ({low!r}, {high!r}): give two finite energies in eV, the lower one first")
     first, last = band_numbers(still, low, high)
+    if last - first >= MOST_BANDS:
+        raise ValueError(
+            f"between holds {last - first + 1:,} bands, more than the {MOST_BANDS:,} that are listed: narrow the range"
+        )
     indices = np.arange(first, last + 1)
     bands: tuple[Band, ...] = ()
     if indices.size:
@@ -152,9 +159,9 @@ def default_range(stack: Stack) -> tuple[float, float]:
     times, at the lead's mass.
     """
     low = min(stack.left.band_edge, stack.right.band_edge)
-    edges = [e.band_edge for e in stack.elements if isinstance(e, Layer)] + [stack.left.band_edge, stack.right.band_edge]
-    top = max(edges)
-    if top - max(stack.left.band_edge, stack.right.band_edge) > 1e-3:
+    open_from = max(stack.left.band_edge, stack.right.band_edge)
+    top = max([open_from, *(e.band_edge for e in stack.elements if isinstance(e, Layer))])
+    if top - open_from > 1e-3:
         return low, top + 0.1 * (top - low)
     return low, top + HBAR2_2M0 / stack.left.mass * (4 * math.pi / stack.period_length) ** 2
 

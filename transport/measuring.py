@@ -4,15 +4,16 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from transport.chain import Chain
 from transport.lattice import lossless
 from transport.numerics import gauss_nodes, row_minima
 from transport.oscillation import Floats
 from transport.sampling import resolve
-from transport.scattering import Chain
 from transport.structure import Stack
 
 FWHM_PER_SIGMA = 2 * math.sqrt(2 * math.log(2))
@@ -30,13 +31,13 @@ class Measured:
 
     def at(self, energy: Floats) -> Floats:
         """The measured curve at energies (n,)."""
-        result = np.empty(energy.size)
-        for part in np.array_split(np.arange(energy.size), max(1, energy.size * self.node.size // 2_000_000)):
-            if part.size:
-                near = slice(*np.searchsorted(self.node, [
-                    energy[part].min() - _REACH * self.sigma, energy[part].max() + _REACH * self.sigma]))
-                apart = (energy[part, None] - self.node[near]) / self.sigma
-                result[part] = np.exp(-0.5 * apart * apart) @ self.weight[near]
+        result, reach = np.empty(energy.size), _REACH * self.sigma
+        parts = min(energy.size, 1 + int(np.ptp(energy) / (2 * self.sigma))) if energy.size else 0
+        for part in np.array_split(np.argsort(energy), parts) if parts else ():
+            here = energy[part]
+            near = slice(*np.searchsorted(self.node, [here[0] - reach, here[-1] + reach]))
+            apart = (here[:, None] - self.node[near]) / self.sigma
+            result[part] = np.exp(-0.5 * apart * apart) @ self.weight[near]
         return result / (self.sigma * math.sqrt(2 * math.pi))
 
     def mean(self, low: float, high: float) -> float:
@@ -73,7 +74,7 @@ def measured_curves(
     chain = Chain(stack, node.ravel())
     value = np.minimum(chain.transmission(chain.denominator(chain.powers(counts[row]))), 1.0) * weight.ravel()
     ends = np.searchsorted(row, np.arange(counts.size + 1))
-    return [Measured(node.ravel()[i:j], value[i:j], sigma) for i, j in zip(ends[:-1], ends[1:], strict=True)]
+    return [Measured(node.ravel()[i:j], value[i:j], sigma) for i, j in pairwise(ends)]
 
 
 def measured_transmission(stack: Stack, energies: ArrayLike, resolution: float) -> Floats:

@@ -101,33 +101,51 @@ def _narrow(x: Floats, f: Floats, active: Rows, new: Floats, value: Floats) -> N
 def row_integrals(
     function: RowFunction, row: Rows, low: Floats, high: Floats, rows: int, tolerance: float = 1e-11
 ) -> Floats:
-    """Integral over all intervals of each row, by 10-point Gauss rules halved until both halves add up to the whole.
+    """Integral over all intervals of each row, by the 7-15-point Gauss-Kronrod pair, halved where the two disagree.
 
     The integrand is not negative; `tolerance` is relative to each row's integral. Ends may carry square-root edges.
+    The error of the 15-point rule is judged as QUADPACK does (Piessens et al. (1983)): (200 difference)^(3/2).
     """
     done = np.zeros(rows)
-    whole = _gauss(function, row, low, high)
-    total = np.bincount(row, whole, rows)
     for _ in range(60):
+        fine, coarse = _kronrod(function, row, low, high)
+        total = done + np.bincount(row, fine, rows)
+        share = abs(fine - coarse) / np.maximum(total[row], 1e-300)
         middle = low + (high - low) / 2
-        two = np.tile(row, 2)
-        halves = _gauss(function, two, np.concatenate([low, middle]), np.concatenate([middle, high]))
-        first, second = halves[: row.size], halves[row.size :]
-        error = abs(first + second - whole)
-        rough = (error > tolerance * total[row] / 8) & (middle > low) & (middle < high)
-        done += np.bincount(row[~rough], (first + second)[~rough], rows)
+        rough = ((200 * share) ** 1.5 > tolerance / 8) & (share > 1e-15) & (middle > low) & (middle < high)
+        done += np.bincount(row[~rough], fine[~rough], rows)
         if not rough.any():
             break
-        row, whole = np.tile(row[rough], 2), np.concatenate([first[rough], second[rough]])
+        row = np.tile(row[rough], 2)
         low, high = np.concatenate([low[rough], middle[rough]]), np.concatenate([middle[rough], high[rough]])
-        total = done + np.bincount(row, whole, rows)
     return done
 
 
-def _gauss(function: RowFunction, row: Rows, low: Floats, high: Floats) -> Floats:
-    energy, weight = gauss_nodes(low, high)
-    value = function(np.repeat(row, _NODES.size), energy.ravel()).reshape(energy.shape)
-    return np.asarray((value * weight).sum(axis=1))
+def _kronrod(function: RowFunction, row: Rows, low: Floats, high: Floats) -> tuple[Floats, Floats]:
+    """The 15-point Kronrod and the 7-point Gauss value of each interval."""
+    half = (high - low) / 2
+    energy = low[:, None] + half[:, None] * (_KRONROD_NODES + 1)
+    value = function(np.repeat(row, _KRONROD_NODES.size), energy.ravel()).reshape(energy.shape)
+    return half * (value @ _KRONROD_WEIGHTS), half * (value[:, 1::2] @ _GAUSS_WEIGHTS)
+
+
+def _mirrored(half: list[float], sign: int) -> Floats:
+    """A symmetric table from its first half and middle."""
+    return np.array(half + [sign * value for value in half[-2::-1]])
+
+
+# QUADPACK's qk15 table, from memory; tests/test_numerics.py proves the degree of exactness.
+_KRONROD_NODES = _mirrored([
+    -0.991455371120812639206854697526329, -0.949107912342758524526189684047851, -0.864864423359769072789712788640926,
+    -0.741531185599394439863864773280788, -0.586087235467691130294144838258730, -0.405845151377397166906606412076961,
+    -0.207784955007898467600689403773245, 0.0], -1)
+_KRONROD_WEIGHTS = _mirrored([
+    0.022935322010529224963732008058970, 0.063092092629978553290700663189204, 0.104790010322250183839876322541518,
+    0.140653259715525918745189590510238, 0.169004726639267902826583426598550, 0.190350578064785409913256402421014,
+    0.204432940075298892414161999234649, 0.209482141084727828012999174891714], 1)
+_GAUSS_WEIGHTS = _mirrored([
+    0.129484966168869693270611432679082, 0.279705391489276667901467771423780, 0.381830050505118944950369775488975,
+    0.417959183673469387755102040816327], 1)
 
 
 def gauss_nodes(low: Floats, high: Floats) -> tuple[Floats, Floats]:

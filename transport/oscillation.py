@@ -18,9 +18,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from transport.chain import Chain, Powers
 from transport.constants import HBAR2_2M0
 from transport.propagation import element_transfer, mass_at
-from transport.scattering import Chain, Powers
 from transport.structure import Delta, Element
 
 Floats = NDArray[np.float64]
@@ -145,16 +145,16 @@ def absolute_phase(chain: Chain, argument: Any, count: Any) -> Any:
     return raw + 2 * np.pi * np.rint((count + 0.5 - raw / np.pi) / 2)
 
 
-def first_reaching(
-    function: Callable[[Floats], Any], levels: Any, low: Any, high: Any, sections: int = 16
-) -> Floats:
+def first_reaching(function: Callable[[Floats], Any], levels: Any, low: Any, high: Any) -> Floats:
     """The energies at which a non-decreasing `function` first reaches each level, to the last bit (or 1e-17 eV).
 
     `function` maps energies (n,) to values (n,); at `low` it lies below, at `high` it has reached the level. All
-    levels are narrowed together, each bracket cut into `sections` parts per evaluation. Returns the upper end.
+    levels are narrowed together, each bracket cut into as many parts per evaluation as cost little more than one.
+    Returns the upper end.
     """
     levels = np.asarray(levels, dtype=float)
     low, high = np.broadcast_to(low, levels.shape).astype(float), np.broadcast_to(high, levels.shape).astype(float)
+    sections = int(np.clip(480 // max(levels.size, 1), 8, 128))
     parts = np.arange(1, sections) / sections
     rows = np.arange(levels.size)
     while np.any((np.nextafter(low, high) < high) & (high - low > 1e-17)):

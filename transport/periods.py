@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from typing import Protocol
 
@@ -11,7 +12,7 @@ from numpy.typing import NDArray
 
 from transport.floor import Floor, mean_limit, measured_limit, ripple_floor
 from transport.lattice import lossless
-from transport.reasons import WindowRecord, counts_in_words, why_not
+from transport.reasons import WindowHistory, counts_in_words, why_not
 from transport.structure import Stack, Target, Window
 from transport.windows import window_values
 
@@ -86,11 +87,18 @@ def window_in_words(window: Window) -> str:
     return f"{window.kind} {window.bottom * 1e3:.6g}\N{EN DASH}{window.top * 1e3:.6g} meV"
 
 
-def period_verdict(scenario: Question, most: int | None = None) -> Verdict:
+def no_progress(share: float) -> None:
+    """Take no notice of how far the work is."""
+
+
+def period_verdict(
+    scenario: Question, most: int | None = None, progress: Callable[[float], None] = no_progress
+) -> Verdict:
     """The verdict of a scenario's target, for every count from 1 to `most` (default: the target's `most_periods`).
 
     With dephasing or a beam resolution, of what would be measured. Margins: 10 log10(T/asked) for pass windows,
-    10 log10(asked/T) for block windows, T the window's minimum, maximum or mean. Raises ValueError without windows.
+    10 log10(asked/T) for block windows, T the window's minimum, maximum or mean. `progress` is told the share done,
+    and stops the work by raising. Raises ValueError without windows.
     """
     target = scenario.target
     if target is None or not target.windows:
@@ -99,7 +107,11 @@ def period_verdict(scenario: Question, most: int | None = None) -> Verdict:
     if most < 1:
         raise ValueError(f"most: {most} periods asked for, give 1 or more")
     stack, counts = scenario.stack, np.arange(1, most + 1)
-    records = tuple(_record(stack, window, counts, scenario.resolution) for window in target.windows)
+    share = 1 / len(target.windows)
+    records = tuple(
+        _record(stack, window, counts, scenario.resolution, lambda done, i=i: progress((i + done) * share))
+        for i, window in enumerate(target.windows)
+    )
     checks = tuple(_check(records, place) for place in range(most))
     meeting = tuple(check.periods for check in checks if check.meets)
     floors = [r.floor for r in records if r.floor and r.window.measure == "minimum"]
@@ -117,12 +129,14 @@ def period_verdict(scenario: Question, most: int | None = None) -> Verdict:
     )
 
 
-def _record(stack: Stack, window: Window, counts: NDArray[np.int64], resolution: float) -> WindowRecord:
-    values = window_values(stack, window, counts, resolution)
+def _record(
+    stack: Stack, window: Window, counts: NDArray[np.int64], resolution: float, progress: Callable[[float], None]
+) -> WindowHistory:
+    values = window_values(stack, window, counts, resolution, progress)
     margin = 10 * (values.log10 - math.log10(window.transmission))
     if window.kind == "block":
         margin = -margin
-    record = WindowRecord(window, values.log10, values.energy, margin, None)
+    record = WindowHistory(window, values.log10, values.energy, margin, None)
     if window.kind == "block" or stack.dephasing:
         return record
     return replace(record, floor=_limit(lossless(stack), window, resolution))
@@ -140,7 +154,7 @@ def _limit(stack: Stack, window: Window, resolution: float) -> Floor | None:
     return ripple_floor(stack, window)
 
 
-def _check(records: tuple[WindowRecord, ...], place: int) -> PeriodCheck:
+def _check(records: tuple[WindowHistory, ...], place: int) -> PeriodCheck:
     values = tuple(10.0 ** float(r.log10[place]) for r in records)
     closed = [i for i, r in enumerate(records) if r.window.kind == "pass" and r.log10[place] == -math.inf]
     if closed:

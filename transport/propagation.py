@@ -70,7 +70,7 @@ IDENTITY = Transfer(1.0, 0.0, 0.0, 1.0)
 
 @dataclass(frozen=True, slots=True)
 class Span:
-    """The box in which a set of energies lies (eV): real parts from `low` to `high`, imaginary parts up to `imaginary`."""
+    """The box in which energies lie (eV): real parts from `low` to `high`, imaginary parts up to `imaginary`."""
 
     low: float
     high: float
@@ -113,8 +113,8 @@ def element_transfer(element: Element, energy: Array, span: Span | None = None) 
     mass = mass_at(element, energy)
     length = element.thickness / HBAR2_2M0
     reach = max(abs(span.low - element.band_edge), abs(span.high - element.band_edge)) + span.imaginary
-    largest = reach * float(np.max(abs(mass))) * element.thickness * length
-    if largest > OPAQUE**2 and span.low < element.band_edge:
+    largest = reach * float(np.max(abs(mass), initial=0.0)) * element.thickness * length
+    if largest > OPAQUE**2 and span.low < element.band_edge and energy.size:
         cosine, sine, log_scale = _opaque(kinetic * (mass * element.thickness * length))
         return Transfer(cosine, sine * (mass * element.thickness), kinetic * sine * -length, cosine, log_scale)
     near = _COMPLEX_REACH if energy.dtype.kind == "c" else _REAL_REACH

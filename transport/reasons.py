@@ -17,8 +17,8 @@ DASH = "\N{EN DASH}"
 
 
 @dataclass(frozen=True, slots=True)
-class WindowRecord:
-    """One window's log10 measure for each count from 1, where its extremum lies (eV), its margin (dB), and its limit."""
+class WindowHistory:
+    """One window's log10 measure for each count from 1, where its extremum lies (eV), margin (dB), and limit."""
 
     window: Window
     log10: Floats
@@ -33,7 +33,7 @@ class WindowRecord:
         return np.asarray(blocked | (self.margin >= 0))
 
 
-def why_not(stack: Stack, records: tuple[WindowRecord, ...], resolution: float) -> str:
+def why_not(stack: Stack, records: tuple[WindowHistory, ...], resolution: float) -> str:
     """The reason, or reasons, why no count meets the target. `records` must have no count that meets all."""
     most = records[0].log10.size
     failing = [record for record in records if not record.met.any()]
@@ -43,7 +43,7 @@ def why_not(stack: Stack, records: tuple[WindowRecord, ...], resolution: float) 
     return f"No number of periods up to {most} meets every window at once: " + _conflict(records) + "."
 
 
-def _cause(stack: Stack, record: WindowRecord, resolution: float) -> str:
+def _cause(stack: Stack, record: WindowHistory, resolution: float) -> str:
     window = record.window
     if window.kind == "block":
         return _block_cause(stack, record)
@@ -97,7 +97,7 @@ def _neighbours(stack: Stack, window: Window) -> str:
     return ("between " if len(words) == 2 else "beside ") + " and ".join(words) if words else "far from any"
 
 
-def _floor_cause(record: WindowRecord, resolution: float) -> str:
+def _floor_cause(record: WindowHistory, resolution: float) -> str:
     window, floor = record.window, record.floor
     assert floor is not None
     seen = "measured " if resolution else ""
@@ -113,7 +113,7 @@ def _floor_cause(record: WindowRecord, resolution: float) -> str:
     )
 
 
-def _block_cause(stack: Stack, record: WindowRecord) -> str:
+def _block_cause(stack: Stack, record: WindowHistory) -> str:
     window = record.window
     for band in minibands(stack, window.bottom, window.top):
         overlap = min(band.top, window.top) - max(band.bottom, window.bottom)
@@ -123,23 +123,19 @@ def _block_cause(stack: Stack, record: WindowRecord) -> str:
                 f"{overlap * 1e3:.3g} meV, which stays open however many periods: move the window or the miniband"
             )
     peak = float(record.energy[-1])
-    if window.measure == "maximum" and window.bottom < peak < window.top:
-        if _is_peak(stack, record, peak):
-            return (
-                f"an end state at {_meV(peak)} lets electrons through {_name(window)}: change the end layers that "
-                f"hold it"
-            )
+    if window.measure == "maximum" and window.bottom < peak < window.top and _is_peak(stack, record, peak):
+        return f"an end state at {_meV(peak)} lets electrons through {_name(window)}: change the end layers that hold it"
     return _short(record) + _how_many(stack, record)
 
 
-def _is_peak(stack: Stack, record: WindowRecord, energy: float) -> bool:
+def _is_peak(stack: Stack, record: WindowHistory, energy: float) -> bool:
     """Whether T at an inner maximum stands above what the decay at its energy leaves of the window's ends."""
     window = record.window
     rates = bloch(lossless(stack), np.array([window.bottom, energy, window.top])).decay
     return bool(rates[1] > min(rates[0], rates[2]))
 
 
-def _how_many(stack: Stack, record: WindowRecord) -> str:
+def _how_many(stack: Stack, record: WindowHistory) -> str:
     """Roughly how many periods a block window would take, from what the last ones gained."""
     margin = record.margin
     if stack.dephasing or margin.size < 4:
@@ -147,15 +143,16 @@ def _how_many(stack: Stack, record: WindowRecord) -> str:
     gain = (margin[-1] - margin[-3]) / 2
     if gain <= 0.01:
         return ""
-    return f"; each further period adds {gain:.2g} dB, so about {margin.size + int(np.ceil(-margin[-1] / gain))} would do"
+    enough = margin.size + int(np.ceil(-margin[-1] / gain))
+    return f"; each further period adds {gain:.2g} dB, so about {enough} would do"
 
 
-def _short(record: WindowRecord) -> str:
+def _short(record: WindowHistory) -> str:
     best = int(np.argmax(np.where(np.isfinite(record.margin), record.margin, -np.inf)))
     return f"{_name(record.window)} is missed by {-record.margin[best]:.2g} dB at best, with {best + 1} periods"
 
 
-def _conflict(records: tuple[WindowRecord, ...]) -> str:
+def _conflict(records: tuple[WindowHistory, ...]) -> str:
     parts = []
     for record in records:
         where = np.flatnonzero(record.met) + 1

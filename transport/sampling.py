@@ -13,8 +13,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from transport.chain import Chain
 from transport.oscillation import Floats, absolute_phase, rotation, zeros
-from transport.scattering import Chain
 from transport.structure import Stack
 
 PHASE_STEP = np.pi / 4

@@ -9,10 +9,10 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from transport.chain import Amplitude, Chain, Envelope, Powers
 from transport.lattice import lossless
 from transport.oscillation import Floats, absolute_phase, zeros
 from transport.sampling import resolve
-from transport.scattering import Amplitude, Chain, Envelope, Powers
 from transport.structure import Stack
 
 MOST_PEAKS = 20_000
@@ -138,13 +138,13 @@ def _straightened(stack: Stack, energy: Floats) -> Floats:
     while pending.size:
         begin, step = energy[pending], (energy[pending + 1] - energy[pending]) / 3
         third = np.column_stack([begin + step, begin + 2 * step])
-        t, l = (a.reshape(third.shape) for a in _both(stack, third.ravel()))
-        bent = _off_chord(value, pending, t) > _TOLERANCE
-        bent |= (_off_chord(log, pending, l) > _DECADES) & (step > smallest)
+        passed, decades = (a.reshape(third.shape) for a in _both(stack, third.ravel()))
+        bent = _off_chord(value, pending, passed) > _TOLERANCE
+        bent |= (_off_chord(log, pending, decades) > _DECADES) & (step > smallest)
         bent &= (third[:, 0] > begin) & (third[:, 1] > third[:, 0]) & (third[:, 1] < energy[pending + 1])
         places = np.repeat(pending + 1, 2)
         energy, value, log = (
-            np.insert(a, places, b.ravel()) for a, b in ((energy, third), (value, t), (log, l))
+            np.insert(a, places, b.ravel()) for a, b in ((energy, third), (value, passed), (log, decades))
         )
         first = (pending + 2 * np.arange(pending.size))[bent]
         pending = np.concatenate([first, first + 1, first + 2])

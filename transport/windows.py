@@ -7,18 +7,18 @@ hides between (`sampling.resolve`). Values are log10, so that deep rejection doe
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
+from transport.chain import Chain
 from transport.lattice import lossless
 from transport.measuring import measured_curves
-from transport.numerics import Rows, row_integrals, row_minima
+from transport.numerics import RowFunction, Rows, row_integrals, row_minima
 from transport.oscillation import Floats
 from transport.sampling import PHASE_STEP, Samples, resolve
-from transport.scattering import Chain
 from transport.structure import Stack, Window
 
 _BATCH = 4_000
@@ -33,12 +33,17 @@ class Values:
     energy: Floats
 
 
-def window_values(stack: Stack, window: Window, counts: NDArray[np.int64], resolution: float) -> Values:
+def window_values(
+    stack: Stack, window: Window, counts: NDArray[np.int64], resolution: float, progress: Callable[[float], None]
+) -> Values:
     """The window's minimum, maximum or mean of T (or of what a beam of `resolution`, eV FWHM, would measure)."""
     if window.top <= threshold(stack):
         nothing = np.full(counts.size, -np.inf)
         return Values(nothing, np.full(counts.size, np.nan))
-    pieces = [_batch_values(stack, window, batch, resolution) for batch in _batches(counts)]
+    pieces = []
+    for batch in _batches(counts):
+        pieces.append(_batch_values(stack, window, batch, resolution))
+        progress(float(batch[-1] / counts[-1]) ** 2)
     return Values(np.concatenate([p.log10 for p in pieces]), np.concatenate([p.energy for p in pieces]))
 
 
@@ -86,7 +91,7 @@ def _with_hidden(samples: Samples, values: Values) -> Values:
     return Values(log10, energy)
 
 
-def _log_means(function, samples: Samples, value: Floats) -> Floats:  # type: ignore[no-untyped-def]
+def _log_means(function: RowFunction, samples: Samples, value: Floats) -> Floats:
     """log10 of the mean of 10^function over each row."""
     rows = int(samples.row[-1]) + 1
     peak = np.full(rows, -np.inf)

@@ -1,0 +1,148 @@
+"""The command line: python -m transport COMMAND SCENARIO [options]."""
+
+from __future__ import annotations
+
+import argparse
+import os
+import sys
+from collections.abc import Callable, Sequence
+
+import numpy as np
+
+from transport import report
+from transport.lattice import default_range, lattice_bands
+from transport.parameters import PARAMETERS
+from transport.periods import period_verdict
+from transport.scenario import Scenario, ScenarioError, load_scenario
+from transport.spectrum import Spectrum, spectrum
+
+Handler = Callable[[Scenario, argparse.Namespace], str]
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one command; returns the exit status: 0 done, 2 bad input, 1 anything else."""
+    options = _parser().parse_args(arguments)
+    handler: Handler = options.handler
+    try:
+        print(handler(load_scenario(options.scenario), options))
+        sys.stdout.flush()
+    except (ScenarioError, ValueError) as error:
+        print(error, file=sys.stderr)
+        return 2
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 1
+    except KeyboardInterrupt:
+        print("stopped", file=sys.stderr)
+        return 1
+    return 0
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="python -m transport", description="Finite periodic barrier stacks: what passes, and how many periods."
+    )
+    commands = parser.add_subparsers(title="commands", required=True, metavar="COMMAND")
+    _command(commands, "check", _check, "say whether a scenario is sound, with its warnings")
+    command = _command(commands, "spectrum", _spectrum, "transmission and reflection over energy")
+    command.add_argument("--energies-meV", type=_numbers, metavar="LIST", help="energies, such as 10,20.5")
+    command.add_argument("--from-meV", type=_number, metavar="A", help="start of the range (default: lowest lead edge)")
+    command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
+    command.add_argument("--points", type=_whole("command.points"), metavar="N",
+                         help="evenly spaced energies (default: as many as no feature is missed with)")
+    command.add_argument("--periods", type=_whole("stack.periods"), metavar="N", help="periods (default: the file's)")
+    command = _command(commands, "bands", _bands, "the infinite lattice's bands, certified")
+    command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
+    command = _command(commands, "periods", _periods, "how many periods the target needs")
+    command.add_argument("--most", type=_whole("target.most_periods"), metavar="N",
+                         help="largest count tried (default: the target's most_periods)")
+    _command(commands, "layers", _layers, "the grower's sheet")
+    return parser
+
+
+def _command(commands: argparse._SubParsersAction, name: str, handler: Handler, words: str) -> argparse.ArgumentParser:  # type: ignore[type-arg]
+    command: argparse.ArgumentParser = commands.add_parser(name, help=words, description=words)
+    command.add_argument("scenario", metavar="SCENARIO", help="scenario file (TOML)")
+    command.add_argument("--json", action="store_true", help="print one JSON object")
+    command.set_defaults(handler=handler)
+    return command
+
+
+def _number(text: str) -> float:
+    try:
+        value = float(text)
+    except ValueError:
+        value = float("nan")
+    bound = PARAMETERS["window.to_meV"].high
+    if not abs(value) <= bound:
+        raise argparse.ArgumentTypeError(f"{text!r} must be a number of meV, at most {bound:g} in size")
+    return value
+
+
+def _numbers(text: str) -> list[float]:
+    return [_number(part) for part in text.split(",")]
+
+
+def _whole(name: str) -> Callable[[str], int]:
+    low, high = int(PARAMETERS[name].low), int(PARAMETERS[name].high)
+
+    def parse(text: str) -> int:
+        try:
+            value = int(text)
+        except ValueError:
+            value = low - 1
+        if not low <= value <= high:
+            raise argparse.ArgumentTypeError(f"{text!r} must be a whole number from {low} to {high:,}")
+        return value
+
+    return parse
+
+
+def _check(scenario: Scenario, options: argparse.Namespace) -> str:
+    lattice_bands(scenario.stack)  # refuses where the one-band model ends
+    return report.to_json(report.check_record(scenario)) if options.json else report.check_text(scenario)
+
+
+def _spectrum(scenario: Scenario, options: argparse.Namespace) -> str:
+    record = report.spectrum_record(scenario, _asked_spectrum(scenario, options))
+    return report.to_json(record) if options.json else report.columns_text(record)
+
+
+def _asked_spectrum(scenario: Scenario, options: argparse.Namespace) -> Spectrum:
+    stack = scenario.stack if options.periods is None else scenario.stack.with_periods(options.periods)
+    if options.energies_meV is not None:
+        if (options.from_meV, options.to_meV, options.points) != (None, None, None):
+            raise ValueError("--energies-meV: give either a list, or a range with --from-meV, --to-meV, --points")
+        return spectrum(stack, np.array(options.energies_meV) / 1e3)
+    low, high = default_range(stack)
+    low = low if options.from_meV is None else options.from_meV / 1e3
+    high = high if options.to_meV is None else options.to_meV / 1e3
+    if not low < high:
+        raise ValueError(f"--from-meV, --to-meV: {low * 1e3:g} to {high * 1e3:g} is no range, give the lower end first")
+    if options.points is not None:
+        return spectrum(stack, np.linspace(low, high, options.points))
+    return spectrum(stack, between=(low, high))
+
+
+def _bands(scenario: Scenario, options: argparse.Namespace) -> str:
+    between = None
+    if options.to_meV is not None:
+        from transport.lattice import lowest_energy
+
+        low = min(lowest_energy(scenario.stack), options.to_meV / 1e3 - 1e-6)
+        between = (low, options.to_meV / 1e3)
+    bands = lattice_bands(scenario.stack, between)
+    return report.to_json(report.bands_record(bands)) if options.json else report.bands_text(bands)
+
+
+def _periods(scenario: Scenario, options: argparse.Namespace) -> str:
+    verdict = period_verdict(scenario, options.most)
+    return report.to_json(report.verdict_record(verdict)) if options.json else report.verdict_text(verdict)
+
+
+def _layers(scenario: Scenario, options: argparse.Namespace) -> str:
+    return report.to_json(report.layers_record(scenario)) if options.json else report.layers_text(scenario)
+
+
+if __name__ == "__main__":
+    sys.exit(main())

@@ -1,0 +1,179 @@
+"""Results as people and programs read them: plain text, and JSON objects whose keys end in their unit."""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Iterable, Sequence
+from typing import Any
+
+import numpy as np
+
+from transport.lattice import Bands
+from transport.measuring import measured_transmission
+from transport.periods import Verdict
+from transport.scenario import Scenario
+from transport.spectrum import Spectrum
+
+Record = dict[str, Any]
+
+
+def to_json(record: Record) -> str:
+    """Strict JSON: numbers that are not finite become null."""
+    return json.dumps(_finite(record), ensure_ascii=False, allow_nan=False, indent=1)
+
+
+def _finite(value: Any) -> Any:
+    if isinstance(value, dict):
+        return {key: _finite(item) for key, item in value.items()}
+    if isinstance(value, np.ndarray):
+        return _finite(value.tolist())
+    if isinstance(value, list | tuple):
+        return [_finite(item) for item in value]
+    if isinstance(value, np.generic):
+        return _finite(value.item())
+    if isinstance(value, float) and not math.isfinite(value):
+        return None
+    return value
+
+
+def spectrum_record(scenario: Scenario, spectrum: Spectrum) -> Record:
+    """Energies with transmission, reflection and log10 of transmission; more where the scenario asks for it."""
+    record: Record = {
+        "energy_meV": spectrum.energy * 1e3,
+        "transmission": spectrum.transmission,
+        "reflection": spectrum.reflection,
+        "log10_transmission": spectrum.log10_transmission,
+    }
+    if scenario.resolution:
+        record["measured_transmission"] = measured_transmission(spectrum.stack, spectrum.energy, scenario.resolution)
+    if spectrum.envelope is not None:
+        record |= {
+            "envelope_lower": np.where(spectrum.envelope.passing, spectrum.envelope.lower, spectrum.transmission),
+            "envelope_upper": np.where(spectrum.envelope.passing, spectrum.envelope.upper, spectrum.transmission),
+            "note": spectrum.note,
+        }
+    return record
+
+
+def bands_record(bands: Bands) -> Record:
+    """Every band with its edges and edge masses, and the certificate."""
+    return {
+        "bands": [
+            {"index": b.index, "bottom_meV": b.bottom * 1e3, "top_meV": b.top * 1e3,
+             "bottom_mass": b.bottom_mass, "top_mass": b.top_mass}
+            for b in bands.bands
+        ],
+        "certificate": {
+            "complete": bands.certificate.complete,
+            "counted": bands.certificate.counted,
+            "found": bands.certificate.found,
+        },
+    }
+
+
+def verdict_record(verdict: Verdict) -> Record:
+    """The verdict with every count's check."""
+    energy = verdict.ripple_floor_energy
+    return {
+        "fewest_periods": verdict.fewest,
+        "meeting_periods": list(verdict.meeting),
+        "reason": verdict.reason,
+        "sentence": verdict.sentence,
+        "ripple_floor": verdict.ripple_floor,
+        "ripple_floor_meV": None if energy is None else energy * 1e3,
+        "mean_limit": verdict.mean_limit,
+        "per_period": [
+            {"periods": c.periods, "meets": c.meets, "margin_dB": c.margin_dB, "limiting_window": c.limiting_window}
+            for c in verdict.per_period
+        ],
+    }
+
+
+def layers_record(scenario: Scenario) -> Record:
+    """The grower's sheet, from the left lead's side."""
+    return {
+        "layers": [
+            {"where": row.where, "material": row.material, "x": row.x, "thickness_nm": row.thickness,
+             "monolayers": row.monolayers, "band_edge_eV": row.band_edge, "mass": row.mass}
+            for row in scenario.sheet
+        ],
+        "warnings": list(scenario.warnings),
+    }
+
+
+def check_record(scenario: Scenario) -> Record:
+    """That a scenario is sound, what it is, and what to beware of."""
+    return {
+        "valid": True,
+        "title": scenario.title,
+        "periods": scenario.stack.periods,
+        "layers_per_cell": len(scenario.stack.cell),
+        "period_nm": scenario.stack.period_length,
+        "windows": len(scenario.target.windows) if scenario.target else 0,
+        "warnings": list(scenario.warnings),
+    }
+
+
+def table(header: Sequence[str], rows: Iterable[Sequence[Any]]) -> str:
+    """Right-aligned columns."""
+    cells = [list(header), *([_cell(value) for value in row] for row in rows)]
+    widths = [max(len(row[column]) for row in cells) for column in range(len(header))]
+    return "\n".join("  ".join(text.rjust(width) for text, width in zip(row, widths, strict=True)) for row in cells)
+
+
+def _cell(value: Any) -> str:
+    if value is None or (isinstance(value, float) and not math.isfinite(value)):
+        return "-"
+    if isinstance(value, bool | np.bool_):
+        return "yes" if value else "no"
+    return f"{value:.6g}" if isinstance(value, float | np.floating) else str(value)
+
+
+def columns_text(record: Record) -> str:
+    """The columns of a record of equally long arrays, and its note."""
+    columns = {key: value for key, value in record.items() if isinstance(value, np.ndarray)}
+    note = f"{record['note']}\n" if "note" in record else ""
+    return note + table(list(columns), zip(*(column.tolist() for column in columns.values()), strict=True))
+
+
+def bands_text(bands: Bands) -> str:
+    """Bands as a table, with the certificate in words."""
+    rows = [(b.index, b.bottom * 1e3, b.top * 1e3, (b.top - b.bottom) * 1e3, b.bottom_mass, b.top_mass)
+            for b in bands.bands]
+    header = ("band", "bottom_meV", "top_meV", "width_meV", "bottom_mass", "top_mass")
+    return table(header, rows) + f"\n{bands.certificate.sentence}"
+
+
+def verdict_text(verdict: Verdict) -> str:
+    """The verdict sentence, its limits, and a table of counts."""
+    lines = [verdict.sentence]
+    if verdict.ripple_floor is not None and verdict.ripple_floor_energy is not None:
+        lines.append(f"Ripple floor {verdict.ripple_floor:.4g} at {verdict.ripple_floor_energy * 1e3:.6g} meV.")
+    if verdict.mean_limit is not None:
+        lines.append(f"Mean limit {verdict.mean_limit:.4g}.")
+    rows = [(c.periods, c.meets, c.margin_dB, c.limiting_window) for c in verdict.per_period]
+    return "\n".join([*lines, table(("periods", "meets", "margin_dB", "limiting_window"), rows)])
+
+
+def layers_text(scenario: Scenario) -> str:
+    """The grower's sheet as a table, with warnings and the usual caution."""
+    rows = [(r.where, r.material or "-", r.x, r.thickness, r.monolayers, r.band_edge, r.mass) for r in scenario.sheet]
+    header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass")
+    return "\n".join([table(header, rows), *_warning_lines(scenario), CAUTION])
+
+
+CAUTION = (
+    "Growth uses toxic and pyrophoric materials: follow the site's own rules and the people licensed for the reactor."
+)
+
+
+def check_text(scenario: Scenario) -> str:
+    """One line that says the scenario is sound, and its warnings."""
+    stack = scenario.stack
+    first = f"{scenario.title}: sound. {stack.periods} periods of {stack.period_length:.4g} nm."
+    return "\n".join([first, *_warning_lines(scenario)])
+
+
+def _warning_lines(scenario: Scenario) -> list[str]:
+    return [f"warning: {warning}" for warning in scenario.warnings]
