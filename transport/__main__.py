@@ -48,13 +48,13 @@ def _parser() -> argparse.ArgumentParser:
     command.add_argument("--energies-meV", type=_numbers, metavar="LIST", help="energies, such as 10,20.5")
     command.add_argument("--from-meV", type=_number, metavar="A", help="start of the range (default: lowest lead edge)")
     command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
-    command.add_argument("--points", type=_whole("command.points"), metavar="N",
+    command.add_argument("--points", type=_whole("points"), metavar="N",
                          help="evenly spaced energies (default: as many as no feature is missed with)")
-    command.add_argument("--periods", type=_whole("stack.periods"), metavar="N", help="periods (default: the file's)")
+    command.add_argument("--periods", type=_whole("periods"), metavar="N", help="periods (default: the file's)")
     command = _command(commands, "bands", _bands, "the infinite lattice's bands, certified")
     command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
     command = _command(commands, "periods", _periods, "how many periods the target needs")
-    command.add_argument("--most", type=_whole("target.most_periods"), metavar="N",
+    command.add_argument("--most", type=_whole("most_periods"), metavar="N",
                          help="largest count tried (default: the target's most_periods)")
     _command(commands, "layers", _layers, "the grower's sheet")
     return parser
@@ -73,7 +73,7 @@ def _number(text: str) -> float:
         value = float(text)
     except ValueError:
         value = float("nan")
-    bound = PARAMETERS["window.to_meV"].high
+    bound = PARAMETERS["energy_eV"].high * 1e3
     if not abs(value) <= bound:
         raise argparse.ArgumentTypeError(f"{text!r} must be a number of meV, at most {bound:g} in size")
     return value
