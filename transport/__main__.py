@@ -6,14 +6,15 @@ import argparse
 import os
 import sys
 from collections.abc import Callable, Sequence
+from typing import NoReturn
 
 import numpy as np
 
 from transport import report
-from transport.lattice import default_range, lattice_bands
+from transport.lattice import default_range, lattice_bands, lowest_energy
 from transport.parameters import PARAMETERS
 from transport.periods import period_verdict
-from transport.scenario import Scenario, ScenarioError, load_scenario
+from transport.scenario import Scenario, load_scenario
 from transport.spectrum import Spectrum, spectrum
 
 Handler = Callable[[Scenario, argparse.Namespace], str]
@@ -26,7 +27,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     try:
         print(handler(load_scenario(options.scenario), options))
         sys.stdout.flush()
-    except (ScenarioError, ValueError) as error:
+    except ValueError as error:
         print(error, file=sys.stderr)
         return 2
     except BrokenPipeError:
@@ -38,8 +39,16 @@ def main(arguments: Sequence[str] | None = None) -> int:
     return 0
 
 
+class _Parser(argparse.ArgumentParser):
+    """A parser that says what is wrong in one sentence."""
+
+    def error(self, message: str) -> NoReturn:
+        """Print the sentence and leave with status 2."""
+        self.exit(2, f"{message[:1].lower()}{message[1:]}; {self.prog} --help lists what there is\n")
+
+
 def _parser() -> argparse.ArgumentParser:
-    parser = argparse.ArgumentParser(
+    parser = _Parser(
         prog="python -m transport", description="Finite periodic barrier stacks: what passes, and how many periods."
     )
     commands = parser.add_subparsers(title="commands", required=True, metavar="COMMAND")
@@ -52,6 +61,7 @@ def _parser() -> argparse.ArgumentParser:
                          help="evenly spaced energies (default: as many as no feature is missed with)")
     command.add_argument("--periods", type=_whole("periods"), metavar="N", help="periods (default: the file's)")
     command = _command(commands, "bands", _bands, "the infinite lattice's bands, certified")
+    command.add_argument("--from-meV", type=_number, metavar="A", help="start of the range (default: the lowest band)")
     command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
     command = _command(commands, "periods", _periods, "how many periods the target needs")
     command.add_argument("--most", type=_whole("most_periods"), metavar="N",
@@ -125,13 +135,11 @@ def _asked_spectrum(scenario: Scenario, options: argparse.Namespace) -> Spectrum
 
 
 def _bands(scenario: Scenario, options: argparse.Namespace) -> str:
-    between = None
-    if options.to_meV is not None:
-        from transport.lattice import lowest_energy
-
-        low = min(lowest_energy(scenario.stack), options.to_meV / 1e3 - 1e-6)
-        between = (low, options.to_meV / 1e3)
-    bands = lattice_bands(scenario.stack, between)
+    high = default_range(scenario.stack)[1] if options.to_meV is None else options.to_meV / 1e3
+    low = min(lowest_energy(scenario.stack), high - 1e-6) if options.from_meV is None else options.from_meV / 1e3
+    if not low < high:
+        raise ValueError(f"--from-meV, --to-meV: {low * 1e3:g} to {high * 1e3:g} is no range, give the lower end first")
+    bands = lattice_bands(scenario.stack, (low, high))
     return report.to_json(report.bands_record(bands)) if options.json else report.bands_text(bands)
 
 

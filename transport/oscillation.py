@@ -166,4 +166,4 @@ def first_reaching(function: Callable[[Floats], Any], levels: Any, low: Any, hig
         if np.array_equal(new_low, low) and np.array_equal(new_high, high):
             break
         low, high = new_low, new_high
-    return high
+    return np.asarray(high)

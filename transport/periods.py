@@ -109,7 +109,7 @@ def period_verdict(
     stack, counts = scenario.stack, np.arange(1, most + 1)
     share = 1 / len(target.windows)
     records = tuple(
-        _record(stack, window, counts, scenario.resolution, lambda done, i=i: progress((i + done) * share))
+        _record(stack, window, counts, scenario.resolution, _part(progress, i * share, share))
         for i, window in enumerate(target.windows)
     )
     checks = tuple(_check(records, place) for place in range(most))
@@ -127,6 +127,11 @@ def period_verdict(
         per_period=checks,
         windows=target.windows,
     )
+
+
+def _part(progress: Callable[[float], None], begin: float, share: float) -> Callable[[float], None]:
+    """Progress of one part of the work, told as progress of the whole."""
+    return lambda done: progress(begin + done * share)
 
 
 def _record(

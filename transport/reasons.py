@@ -124,7 +124,7 @@ def _block_cause(stack: Stack, record: WindowHistory) -> str:
             )
     peak = float(record.energy[-1])
     if window.measure == "maximum" and window.bottom < peak < window.top and _is_peak(stack, record, peak):
-        return f"an end state at {_meV(peak)} lets electrons through {_name(window)}: change the end layers that hold it"
+        return f"an end state at {_meV(peak)} lets electrons through {_name(window)}: change the layers that hold it"
     return _short(record) + _how_many(stack, record)
 
 
@@ -149,7 +149,12 @@ def _how_many(stack: Stack, record: WindowHistory) -> str:
 
 def _short(record: WindowHistory) -> str:
     best = int(np.argmax(np.where(np.isfinite(record.margin), record.margin, -np.inf)))
-    return f"{_name(record.window)} is missed by {-record.margin[best]:.2g} dB at best, with {best + 1} periods"
+    periods = "1 period" if best == 0 else f"{best + 1} periods"
+    return f"{_name(record.window)} is missed by {_decibels(-record.margin[best])} at best, with {periods}"
+
+
+def _decibels(value: float) -> str:
+    return f"{value:.2g} dB" if value < 10 else f"{value:.0f} dB"
 
 
 def _conflict(records: tuple[WindowHistory, ...]) -> str:

@@ -32,7 +32,7 @@ class Samples:
     @property
     def joined(self) -> NDArray[np.bool_]:
         """True where a point and the next belong to the same row: the intervals."""
-        return self.row[1:] == self.row[:-1]
+        return np.asarray(self.row[1:] == self.row[:-1])
 
 
 def transmission_phase(stack: Stack, energy: Floats, periods: Any) -> Floats:

@@ -150,7 +150,7 @@ def _straightened(stack: Stack, energy: Floats) -> Floats:
         pending = np.concatenate([first, first + 1, first + 2])
         pending.sort()
     keep = np.concatenate([[True], np.diff(energy) > 0])
-    return energy[keep]
+    return np.asarray(energy[keep])
 
 
 def _off_chord(values: Floats, where: NDArray[np.int64], at_thirds: Floats) -> Floats:

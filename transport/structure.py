@@ -114,9 +114,11 @@ class Stack:
     def reversed(self) -> Stack:
         """The same stack entered from the other side; energies then count from what was the right lead's edge."""
         shift = self.right.band_edge
-        turn = lambda elements: tuple(_shifted(e, -shift) for e in reversed(elements))  # noqa: E731
-        return Stack(_shifted(self.right, -shift), turn(self.exit), turn(self.cell), self.periods,
-                     turn(self.entry), _shifted(self.left, -shift), self.dephasing)
+        entry, cell, exit_ = (
+            tuple(_shifted(e, -shift) for e in reversed(part)) for part in (self.exit, self.cell, self.entry)
+        )
+        left, right = _shifted(self.right, -shift), _shifted(self.left, -shift)
+        return Stack(left, entry, cell, self.periods, exit_, right, self.dephasing)
 
     @property
     def elements(self) -> tuple[Element, ...]:
