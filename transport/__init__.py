@@ -1,13 +1,31 @@
 """Transmission, resonances and the emerging band structure of finite periodic barrier stacks."""
 
+from transport.document import Document, document_from_data, document_to_data
 from transport.lattice import Band, Bands, Bloch, Certificate, bloch, certify, default_range, lattice_bands
+from transport.materials import Material, material
 from transport.measuring import measured_transmission
 from transport.periods import PeriodCheck, Verdict, period_verdict
+from transport.refusal import ScenarioError
+from transport.scattering import Scattering, scattering_matrix
+from transport.scenario import (
+    Scenario,
+    format_scenario,
+    load_scenario,
+    parse_scenario,
+    save_scenario,
+    scenario_from_document,
+)
 from transport.spectrum import Spectrum, spectrum, transmission_map
 from transport.structure import Delta, Layer, Lead, Profile, Stack, Target, Window, band_profile
 
 __all__ = [
-    "Band", "Bands", "Bloch", "Certificate", "Delta", "Layer", "Lead", "PeriodCheck", "Profile",
-    "Spectrum", "Stack", "Target", "Verdict", "Window", "band_profile", "bloch", "certify", "default_range",
-    "lattice_bands", "measured_transmission", "period_verdict", "spectrum", "transmission_map",
+    # what a stack is
+    "Delta", "Document", "Layer", "Lead", "Material", "Profile", "Scenario", "ScenarioError", "Stack", "Target",
+    "Window", "band_profile", "document_from_data", "document_to_data", "format_scenario", "load_scenario",
+    "material", "parse_scenario", "save_scenario", "scenario_from_document",
+    # how it scatters
+    "Band", "Bands", "Bloch", "Certificate", "Scattering", "Spectrum", "bloch", "certify", "default_range",
+    "lattice_bands", "measured_transmission", "scattering_matrix", "spectrum", "transmission_map",
+    # what users decide
+    "PeriodCheck", "Verdict", "period_verdict",
 ]
