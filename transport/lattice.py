@@ -234,13 +234,14 @@ def bloch(stack: Stack, energies: NDArray[np.float64]) -> Bloch:
     """Bloch phase, decay per period, group velocity and density of states of the stack's cell at given energies."""
     energy = np.atleast_1d(np.asarray(energies, dtype=float)).ravel()
     chain = Chain(lossless(stack), energy)
-    half, squared = chain.half_trace, chain.sine_squared
+    half, squared = chain.cell.half_trace, chain.cell.sine_squared
     passing = squared > 0
     sine = np.sqrt(abs(squared))
     phase = np.where(passing, np.arctan2(sine, half), np.where(half > 0, 0.0, np.pi))
     size = np.where(passing, 1.0, abs(half) + sine)
-    held = 0.0 if chain.log_cell is None else np.where(chain.log_cell > 0, np.log(2 * abs(half)) + chain.log_cell, 0.0)
-    decay = np.where(np.asarray(held) > 0, held, np.log(size))
+    decay = np.log(size)
+    if (held := chain.cell.log_scale) is not None:
+        decay = np.where(held > 0, np.log(2 * abs(half)) + held, decay)
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         slope = np.where(passing, abs(discriminant_slope(chain.stack, energy)) / (2 * sine), np.inf)
     finite = np.isfinite(slope) & (slope > 0)

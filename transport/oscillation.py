@@ -18,7 +18,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from transport.chain import Chain, Powers
+from transport.cell import Powers
+from transport.chain import Chain
 from transport.constants import HBAR2_2M0
 from transport.propagation import element_transfer, mass_at
 from transport.structure import Delta, Element
@@ -91,11 +92,11 @@ class Rotation:
 def rotation(chain: Chain) -> Rotation:
     """Lifted Bloch phase of the chain's cell (real energies)."""
     first = through(chain.stack.cell, chain.energy)
-    passing = chain.sine_squared > 0
-    sine = first.sign * np.sqrt(np.where(passing, chain.sine_squared, 0.0))
-    phase = np.arctan2(sine, chain.half_trace) / np.pi
+    passing = chain.cell.sine_squared > 0
+    sine = first.sign * np.sqrt(np.where(passing, chain.cell.sine_squared, 0.0))
+    phase = np.arctan2(sine, chain.cell.half_trace) / np.pi
     lifted = phase + 2 * np.rint((first.zeros + 0.5 - phase) / 2)
-    gap = np.where(first.sign * chain.half_trace > 0, first.zeros, first.zeros + 1)
+    gap = np.where(first.sign * chain.cell.half_trace > 0, first.zeros, first.zeros + 1)
     return Rotation(passing, np.where(passing, lifted, gap))
 
 
@@ -114,7 +115,7 @@ def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rot
 def _through_cells(
     chain: Chain, periods: Any, powers: Powers, turning: Rotation, start: PhasePoint
 ) -> PhasePoint:
-    lean, b, c = chain.swing.a, chain.swing.b, chain.swing.c
+    lean, b, c = chain.cell.swing.a, chain.cell.swing.b, chain.cell.swing.c
     across, along = lean * start.psi + b * start.slope, c * start.psi - lean * start.slope
     psi = start.psi * powers.first + across * powers.second
     slope = start.slope * powers.first + along * powers.second
@@ -122,13 +123,13 @@ def _through_cells(
     end = PhasePoint(start.zeros, psi / size, slope / size)
 
     sign, passing = start.sign, turning.passing
-    sine = np.copysign(np.sqrt(np.where(passing, chain.sine_squared, 1.0)), b)
+    sine = np.copysign(np.sqrt(np.where(passing, chain.cell.sine_squared, 1.0)), b)
     begun = np.arctan2(sign * start.psi, sign * across / sine) / np.pi
     in_band = _of_parity(begun + periods * turning.turns, sign != end.sign)
 
     whole = periods * np.rint(turning.turns).astype(np.int64)
     crossed = (sign != end.sign) ^ (whole % 2 == 1)
-    forward = (start.slope * across - start.psi * along) * chain.half_trace > 0
+    forward = (start.slope * across - start.psi * along) * chain.cell.half_trace > 0
     in_gap = whole + np.where(crossed, np.where(forward, 1, -1), 0)
     return PhasePoint(start.zeros + np.where(passing, in_band, in_gap), end.psi, end.slope)
 

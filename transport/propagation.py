@@ -31,7 +31,7 @@ from transport.structure import Delta, Element, Layer, Lead
 Array = NDArray[Any]
 """Over energy, shape (n,): float64 for real energies, complex128 with dephasing or on the complex plane."""
 
-OPAQUE = 200.0
+OPAQUE = 100.0
 """Beyond this exponent a matrix is held scaled, exp(log_scale) times its entries, so that nothing overflows."""
 
 # Freed once, a block of 8 MB makes glibc keep freed memory instead of handing it back page by page between two
@@ -109,18 +109,19 @@ def element_transfer(element: Element, energy: Array, span: Span | None = None) 
     if isinstance(element, Delta):
         return Transfer(1.0, 0.0, element.strength / HBAR2_2M0, 1.0)
     span = span or Span.of(energy)
-    kinetic = energy - np.array(element.band_edge)
+    kinetic = energy - np.array(element.band_edge) if element.band_edge else energy
     mass = mass_at(element, energy)
     length = element.thickness / HBAR2_2M0
     reach = max(abs(span.low - element.band_edge), abs(span.high - element.band_edge)) + span.imaginary
-    largest = reach * float(np.max(abs(mass), initial=0.0)) * element.thickness * length
+    heaviest = mass if isinstance(mass, float) else float(np.max(abs(mass), initial=0.0))
+    largest = reach * heaviest * element.thickness * length
     if largest > OPAQUE**2 and span.low < element.band_edge and energy.size:
         cosine, sine, log_scale = _opaque(kinetic * (mass * element.thickness * length))
         return Transfer(cosine, sine * (mass * element.thickness), kinetic * sine * -length, cosine, log_scale)
     near = _COMPLEX_REACH if energy.dtype.kind == "c" else _REAL_REACH
     doublings = max(0, math.ceil(math.log(largest / near, 4))) if largest > near else 0
-    cosine, sine = _doubled(kinetic * np.array(mass * element.thickness * length * (-4 * 0.25**doublings)), doublings)
     share = 0.5**doublings * element.thickness
+    cosine, sine = _doubled(kinetic * np.array(mass * (-4 * share * share / HBAR2_2M0)), doublings)
     lower = kinetic * sine
     lower *= np.array(-share / HBAR2_2M0)
     sine *= np.array(mass * share)

@@ -90,11 +90,9 @@ def scattering_matrix(stack: Stack, energies: ArrayLike) -> Scattering:
 
 def _cells(chain: Chain) -> Transfer:
     """Transfer matrix of all N cells."""
-    powers, swing = chain.powers(chain.stack.periods), chain.swing
+    powers, swing = chain.powers(chain.stack.periods), chain.cell.swing
     growth = np.zeros(chain.energy.shape)
     if powers.deep is not None:
         growth[powers.deep] = powers.growth
-    first, second = powers.first, powers.second
-    return Transfer(
-        first + swing.a * second, swing.b * second, swing.c * second, first - swing.a * second, growth
-    )
+    first, second = powers.first / 2, powers.second / 2
+    return Transfer(first + swing.a * second, swing.b * second, swing.c * second, first - swing.a * second, growth)

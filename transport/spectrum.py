@@ -9,7 +9,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from transport.chain import Amplitude, Chain, Envelope, Powers
+from transport.cell import Powers
+from transport.chain import Amplitude, Chain, Envelope
 from transport.lattice import lossless
 from transport.oscillation import Floats, absolute_phase, zeros
 from transport.sampling import resolve
@@ -56,7 +57,13 @@ class Spectrum:
     @cached_property
     def transmission(self) -> Floats:
         """T, from 0 to 1; 0 where a lead is closed. Below 1e-308 it is 0: read log10_transmission."""
-        return self._shaped(self._chain.transmission(self._denominator))
+        chain, periods = self._chain, self.stack.periods
+        alive = chain.cell.passing(periods)
+        if alive is None:
+            return self._shaped(chain.transmission(self._denominator))
+        part, result = chain.at(alive), np.zeros(chain.energy.shape)
+        result[alive] = part.transmission(part.denominator(part.powers(periods)))
+        return self._shaped(result)
 
     @cached_property
     def reflection(self) -> Floats:
