@@ -26,7 +26,7 @@ from numpy.typing import NDArray
 
 from transport.cell import Cell, Powers
 from transport.constants import HBAR2_2M0
-from transport.propagation import IDENTITY, Array, Transfer, mass_at, transfer
+from transport.propagation import IDENTITY, Array, Transfer, mass_at, require_model, transfer
 from transport.structure import Lead, Stack
 
 _SIXTEEN = np.array(16.0)
@@ -86,10 +86,12 @@ def _sum(x: Any, first: Any, y: Any, second: Any) -> Any:
 class Chain:
     """A stack at given energies (real, eV, shape (n,)), with all that does not depend on its number of periods.
 
-    Methods take `periods` as a whole number, or an integer array that broadcasts against the energies.
+    Methods take `periods` as a whole number, or an integer array that broadcasts against the energies. Raises
+    ValueError where a non-parabolic layer's mass would not be above 0.
     """
 
     def __init__(self, stack: Stack, energy: NDArray[np.float64]) -> None:
+        require_model(stack.elements, energy)
         self.stack, self.energy = stack, energy
         self.inside: Array = energy + 0.5j * stack.dephasing if stack.dephasing else energy
         self.left = flux_factor(stack.left, energy, bool(stack.dephasing))
@@ -155,7 +157,12 @@ class Chain:
     @cached_property
     def open(self) -> NDArray[np.bool_]:
         """True where both leads carry current."""
-        return (self.energy > self.stack.left.band_edge) & (self.energy > self.stack.right.band_edge)
+        return self.energy > max(self.stack.left.band_edge, self.stack.right.band_edge)
+
+    @cached_property
+    def some_closed(self) -> bool:
+        """Whether a lead is closed at any of the energies."""
+        return bool(self.energy.size) and not self.open.all()
 
     @cached_property
     def lead_product(self) -> Any:
@@ -179,7 +186,10 @@ class Chain:
 
     def transmission(self, denominator: Amplitude) -> Any:
         """T = 4 g_L g_R / |F|^2; 0 where a lead is closed. `denominator` is 2 F."""
-        result = self.flux / denominator.squared
+        with np.errstate(divide="ignore", invalid="ignore"):  # F itself may vanish where a lead closes
+            result = self.flux / denominator.squared
+        if self.some_closed:
+            result = np.where(self.open, result, 0.0)
         everywhere, places, growth = denominator.logarithm
         with np.errstate(under="ignore"):
             if isinstance(everywhere, np.ndarray):
@@ -191,8 +201,10 @@ class Chain:
     def log10_transmission(self, denominator: Amplitude) -> Any:
         """log10 T, finite however small T is; -inf where a lead is closed. `denominator` is 2 F."""
         everywhere, places, growth = denominator.logarithm
-        with np.errstate(divide="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore"):
             result = np.log(self.flux / denominator.squared)
+        if self.some_closed:
+            result = np.where(self.open, result, -np.inf)
         if (lost := np.nonzero(np.isneginf(result) & self.open))[0].size:  # |F|^2 overflowed, or the flux underflowed
             result[lost] = np.log(self.flux[lost[-1]]) - 2 * np.log(abs(denominator.value[lost]))
         result -= 2 * everywhere
@@ -201,13 +213,17 @@ class Chain:
         return result * (1 / math.log(10))
 
     def reflection(self, powers: Powers, denominator: Amplitude) -> Any:
-        """R = |r|^2, from its own amplitude and not as 1 - T; 1 where the left lead is closed."""
+        """R = |r|^2, from its own amplitude and not as 1 - T; 1 where the left lead is closed (lossless: either)."""
         plain, swing = self.reflected
         numerator = plain.at(powers, swing)
-        ratio = numerator.squared / denominator.squared
+        with np.errstate(divide="ignore", invalid="ignore"):
+            ratio = numerator.squared / denominator.squared
+        if self.some_closed:
+            seen = self.energy > self.stack.left.band_edge if self.stack.dephasing else self.open
+            ratio = np.where(seen, ratio, 1.0)
         if (lost := np.nonzero(~np.isfinite(ratio)))[0].size:  # both squares overflowed
             ratio[lost] = (abs(numerator.value[lost]) / abs(denominator.value[lost])) ** 2
-        return np.where(self.energy > self.stack.left.band_edge, ratio, 1.0)
+        return ratio
 
     @cached_property
     def envelope(self) -> Envelope:

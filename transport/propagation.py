@@ -87,10 +87,7 @@ class Span:
 
 
 def transfer(elements: Sequence[Element], energy: Array) -> Transfer:
-    """Transfer matrix of a list of layers and deltas, left to right, at each energy (eV, shape (n,)).
-
-    Raises ValueError where a non-parabolic layer's mass would not be above 0.
-    """
+    """Transfer matrix of a list of layers and deltas, left to right, at each energy (eV, shape (n,))."""
     if not elements:
         return IDENTITY
     span = Span.of(energy)
@@ -129,20 +126,21 @@ def element_transfer(element: Element, energy: Array, span: Span | None = None) 
 
 
 def mass_at(medium: Layer | Lead, energy: Array) -> Any:
-    """Effective mass m (1 + alpha (E - V)) at each energy, or the plain number m where alpha is 0.
-
-    Raises ValueError where it would not be above 0: there the one-band model ends and bands found would be false.
-    """
+    """Effective mass m (1 + alpha (E - V)) at each energy, or the plain number m where alpha is 0."""
     if not medium.nonparabolicity:
         return medium.mass
-    factor = 1 + medium.nonparabolicity * (energy - medium.band_edge)
-    if factor.size and factor.real.min() <= 0:
-        end = medium.band_edge - 1 / medium.nonparabolicity
+    return medium.mass * (1 + medium.nonparabolicity * (energy - medium.band_edge))
+
+
+def require_model(elements: Sequence[Element], energy: Array) -> None:
+    """Raise ValueError if some layer's mass would not be above 0: there the model ends, and bands found were false."""
+    ends = {e.band_edge - 1 / e.nonparabolicity: e for e in elements if isinstance(e, Layer) and e.nonparabolicity}
+    if ends and energy.size and energy.real.min() <= max(ends):
+        layer = ends[max(ends)]
         raise ValueError(
-            f"the one-band model ends at {end * 1e3:.6g} meV, where the mass of a layer with band edge "
-            f"{medium.band_edge * 1e3:.6g} meV falls to 0: ask for energies above it"
+            f"the one-band model ends at {max(ends) * 1e3:.6g} meV, where the mass of a layer with band edge "
+            f"{layer.band_edge * 1e3:.6g} meV falls to 0: ask for energies above it"
         )
-    return medium.mass * factor
 
 
 def _economised() -> tuple[NDArray[np.float64], ...]:

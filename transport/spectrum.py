@@ -33,13 +33,10 @@ class Spectrum:
 
     def __init__(self, stack: Stack, energy: Floats, envelope: Envelope | None = None, note: str = "") -> None:
         self.stack, self.energy, self.envelope, self.note = stack, energy, envelope, note
+        self._chain = Chain(stack, energy.ravel())
 
     def __repr__(self) -> str:
         return f"Spectrum({self.energy.size} energies, {self.stack.periods} periods)"
-
-    @cached_property
-    def _chain(self) -> Chain:
-        return Chain(self.stack, self.energy.ravel())
 
     @cached_property
     def _powers(self) -> Powers:
