@@ -25,7 +25,7 @@ def row_minima(function: RowFunction, row: Rows, energy: Floats, value: Floats) 
     `row` ascends from 0 without gaps, `energy` ascends within a row, and the samples are close enough to bracket each
     dip. Rows of a value that never falls below its ends keep the end. Returns (values, energies), one per row.
     """
-    row, energy, value = _with_shoulders(function, row, energy, value)
+    row, energy, value = _with_turning_points(function, row, energy, value)
     inner = (row[:-2] == row[2:]) & (value[1:-1] <= value[:-2]) & (value[1:-1] <= value[2:])
     middle = np.flatnonzero(inner & np.isfinite(value[1:-1])) + 1
     best = np.lexsort((value, row))
@@ -42,21 +42,39 @@ def row_minima(function: RowFunction, row: Rows, energy: Floats, value: Floats) 
     return least, place
 
 
-def _with_shoulders(
+def _with_turning_points(
     function: RowFunction, row: Rows, energy: Floats, value: Floats
 ) -> tuple[Rows, Floats, Floats]:
-    """The samples with one more just inside each row's ends, where a dip could hide beside the end point."""
-    joined = row[1:] == row[:-1]
-    first = np.flatnonzero(joined & np.concatenate([[True], ~joined[:-1]]))
-    last = np.flatnonzero(joined & np.concatenate([~joined[1:], [True]]))
-    step = 1e-6 * (energy[1:] - energy[:-1])
-    places = np.concatenate([first + 1, last + 1])
-    added = np.concatenate([energy[first] + step[first], energy[last + 1] - step[last]])
-    order = np.argsort(places, kind="stable")
+    """The samples, and one more wherever the cubic through four neighbours turns inside an interval.
+
+    So two shallow turns between neighbouring samples, or one beside the end of a row, are not missed. Rows have at
+    least four samples.
+    """
+    interval = np.flatnonzero(row[1:] == row[:-1])
+    first, last = np.searchsorted(row, row[interval]), np.searchsorted(row, row[interval], side="right")
+    stencil = np.clip(interval - 1, first, last - 4) + np.arange(4)[:, None]
+    origin, scale = energy[interval], energy[interval + 1] - energy[interval]
+    turns = _cubic_turns((energy[stencil] - origin) / scale, value[stencil])
+    inside = (turns > 0) & (turns < 1)
+    places = np.broadcast_to(interval + 1, turns.shape)[inside]
+    added = (origin + scale * turns)[inside]
+    order = np.lexsort((added, places))
     places, added = places[order], added[order]
     rows = row[places - 1]
     return (np.insert(row, places, rows), np.insert(energy, places, added),
             np.insert(value, places, function(rows, added)))
+
+
+def _cubic_turns(x: Floats, f: Floats) -> Floats:
+    """Where the derivative of the cubic through (x, f), each (4, n), vanishes: (2, n), NaN if nowhere."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        one = np.diff(f, axis=0) / np.diff(x, axis=0)
+        two = np.diff(one, axis=0) / (x[2:] - x[:-2])
+        three = (two[1] - two[0]) / (x[3] - x[0])
+        a, b = 3 * three, 2 * (two[0] - three * (x[0] + x[1] + x[2]))
+        c = one[0] - two[0] * (x[0] + x[1]) + three * (x[0] * x[1] + x[0] * x[2] + x[1] * x[2])
+        q = -(b + np.copysign(np.sqrt(b * b - 4 * a * c), b)) / 2
+        return np.array([q / a, c / q])
 
 
 def _dips(function: RowFunction, row: Rows, x: Floats, f: Floats) -> tuple[Floats, Floats]:

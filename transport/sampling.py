@@ -44,7 +44,7 @@ def transmission_phase(stack: Stack, energy: Floats, periods: Any) -> Floats:
 
 
 def resolve(
-    stack: Stack, periods: NDArray[np.int64], low: Floats, high: Floats, start: int = 9
+    stack: Stack, periods: NDArray[np.int64], low: Floats, high: Floats, start: int
 ) -> Samples:
     """Sample each row (a number of periods and an open range, eV) until no step hides a resonance.
 

@@ -62,7 +62,8 @@ def _batch_values(stack: Stack, window: Window, counts: NDArray[np.int64], resol
     if resolution:
         return _measured_values(stack, window, counts, resolution)
     begin = max(window.bottom, threshold(stack))
-    samples = resolve(lossless(stack), counts, np.full(counts.size, begin), np.full(counts.size, window.top))
+    low, high = np.full(counts.size, begin), np.full(counts.size, window.top)
+    samples = resolve(lossless(stack), counts, low, high, start=17 if window.measure == "mean" else 65)
 
     def log10_transmission(row: Rows, energy: Floats) -> Floats:
         chain = Chain(stack, energy)
