@@ -1,0 +1,144 @@
+"""The command line as a user meets it: keys, exit statuses, one sentence for each mistake."""
+
+import json
+import subprocess
+import sys
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from transport.__main__ import main
+
+SCENARIO = """
+format = 1
+title = "Quay gate"
+[leads.left]
+band_edge_eV = 0.0
+mass = 0.067
+[leads.right]
+band_edge_eV = 0.01
+mass = 0.07
+[stack]
+periods = 4
+cell = [ { band_edge_eV = 0.3, mass = 0.092, thickness_nm = 3.0 }, { band_edge_eV = 0.0, mass = 0.067, thickness_nm = 5.0 } ]
+exit = [ { band_edge_eV = 0.3, mass = 0.092, thickness_nm = 3.0 } ]
+[target]
+most_periods = 12
+windows = [ { kind = "block", from_meV = 120, to_meV = 220, transmission = 1e-4 } ]
+"""
+
+
+@pytest.fixture
+def scenario(tmp_path: Path) -> str:
+    path = tmp_path / "quay.toml"
+    path.write_text(SCENARIO)
+    return str(path)
+
+
+def answer(capsys: pytest.CaptureFixture[str], *arguments: str) -> dict[str, Any]:
+    assert main([*arguments, "--json"]) == 0
+    def refuse(name: str) -> None:
+        raise AssertionError(f"{name} is not strict JSON")
+    result = json.loads(capsys.readouterr().out, parse_constant=refuse)
+    assert isinstance(result, dict)
+    return result
+
+
+def test_spectrum_answers_at_the_energies_asked_for(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "spectrum", scenario, "--energies-meV=-50,10,82.5")
+    assert found["energy_meV"] == pytest.approx([-50, 10, 82.5])
+    assert found["transmission"][:2] == [0, 0] and found["transmission"][2] > 0
+    assert found["reflection"][:2] == [1, 1]
+    assert found["log10_transmission"][:2] == [None, None]
+
+
+def test_spectrum_without_points_chooses_its_own_energies(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "spectrum", scenario, "--from-meV", "60", "--to-meV", "100", "--periods", "30")
+    assert len(found["energy_meV"]) > 300
+    assert max(found["transmission"]) > 0.9
+
+
+def test_spectrum_with_points_spaces_them_evenly(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "spectrum", scenario, "--from-meV", "60", "--to-meV", "100", "--points", "5")
+    assert found["energy_meV"] == pytest.approx([60, 70, 80, 90, 100])
+
+
+def test_bands_come_with_their_certificate(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "bands", scenario, "--to-meV", "1000")
+    assert [band["index"] for band in found["bands"]] == [1, 2, 3, 4]
+    assert found["bands"][0]["bottom_meV"] == pytest.approx(71.6127237728659, abs=1e-7)
+    assert found["certificate"]["complete"] is True and found["certificate"]["counted"] == 4
+
+
+def test_periods_lists_every_count(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "periods", scenario, "--most", "9")
+    assert {"fewest_periods", "reason", "ripple_floor", "ripple_floor_meV", "mean_limit", "per_period"} <= set(found)
+    assert [row["periods"] for row in found["per_period"]] == list(range(1, 10))
+    assert set(found["per_period"][0]) == {"periods", "meets", "margin_dB", "limiting_window"}
+    assert found["fewest_periods"] == min(row["periods"] for row in found["per_period"] if row["meets"])
+    assert found["reason"] is None
+
+
+def test_layers_run_from_the_left_lead_to_the_right(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "layers", scenario)
+    assert len(found["layers"]) == 5
+    assert {"material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass"} <= set(found["layers"][0])
+    assert found["layers"][-1]["band_edge_eV"] == pytest.approx(0.01)
+
+
+@pytest.mark.parametrize("command", ["check", "spectrum", "bands", "periods", "layers"])
+def test_every_command_speaks_plain_text_too(
+    command: str, scenario: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    assert main([command, scenario]) == 0
+    text = capsys.readouterr().out
+    assert text.strip() and "{" not in text and "nan" not in text
+
+
+def test_plain_bands_end_with_the_certificate_in_words(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    main(["bands", scenario])
+    assert capsys.readouterr().out.endswith("certified: 2 counted, 2 found\n")
+
+
+@pytest.mark.parametrize("arguments, sentence", [
+    (["spectrum", "SCENARIO", "--points", "0"], "'0' must be a whole number from 1 to 1,000,000"),
+    (["spectrum", "SCENARIO", "--from-meV", "9", "--to-meV", "1"], "9 to 1 is no range, give the lower end first"),
+    (["spectrum", "SCENARIO", "--energies-meV", "1,x"], "'x' must be a number of meV"),
+    (["spectrum", "SCENARIO", "--energies-meV", "1", "--points", "3"], "give either a list, or a range"),
+    (["spectrum", "SCENARIO", "--periods", "2000000"], "must be a whole number from 1 to 1,000,000"),
+    (["bands", "SCENARIO", "--to-meV", "nan"], "'nan' must be a number of meV"),
+    (["periods", "SCENARIO", "--most", "3000"], "must be a whole number from 1 to 2,000"),
+    (["periods"], "the following arguments are required: SCENARIO"),
+    (["polish", "SCENARIO"], "invalid choice: 'polish'"),
+    (["check", "absent.toml"], "absent.toml: cannot be read"),
+    ([], "the following arguments are required: COMMAND"),
+])
+def test_a_mistake_is_one_sentence_and_status_2(
+    arguments: list[str], sentence: str, scenario: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    words = [scenario if word == "SCENARIO" else word for word in arguments]
+    try:
+        status = main(words)
+    except SystemExit as left:
+        status = int(str(left.code))
+    captured = capsys.readouterr()
+    assert status == 2
+    assert sentence in captured.err
+    assert captured.err.count("\n") == 1 and captured.out == ""
+
+
+def test_a_scenario_without_target_is_told_what_a_verdict_needs(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    path = tmp_path / "open.toml"
+    path.write_text(SCENARIO.split("[target]")[0])
+    assert main(["periods", str(path)]) == 2
+    assert capsys.readouterr().err.startswith("target.windows: give at least one pass or block window")
+
+
+def test_a_reader_that_stops_early_leaves_no_traceback(scenario: str) -> None:
+    command = f"{sys.executable} -m transport spectrum {scenario} | head -n 1"
+    done = subprocess.run(command, shell=True, capture_output=True, text=True, check=False)
+    assert done.stdout.split()[0] == "energy_meV"
+    assert done.stderr == ""
