@@ -154,10 +154,9 @@ def _check_group(key: str, record: LayerRecord, groups: bool) -> None:
 def _check_thickness(key: str, record: LayerRecord) -> None:
     refuse_unless(record.thickness_nm is None or record.monolayers is None, f"{key}.monolayers",
                   "stands beside thickness_nm; keep one of them")
-    explicit = record.material is None
-    choice = "thickness_nm" if explicit else "thickness_nm or monolayers"
+    remedy = "give it" if record.material is None else "give it, or monolayers"
     refuse_unless(record.thickness_nm is not None or record.monolayers is not None, f"{key}.thickness_nm",
-                  f"is missing; give {choice}")
+                  f"is missing; {remedy}")
 
 
 def _check_target(target: TargetRecord) -> None:

@@ -64,7 +64,7 @@ PARAMETERS: Mapping[str, Parameter] = _table(
     Parameter("resolution_meV", 0.0, 0.0, _MEV, "meV", "full width at half maximum of the measuring beam"),
     Parameter("band_edge_eV", None, -_EV, _EV, "eV", "conduction-band edge; explicit edges share one scale"),
     Parameter("mass", None, 1e-4, 1000.0, "m0", "effective mass"),
-    Parameter("nonparabolicity_per_eV", None, 0.0, 1000.0, "1/eV", "a in m(E) = mass (1 + a (E - V))"),
+    Parameter("nonparabolicity_per_eV", None, 0.0, 1000.0, "per eV", "a in m(E) = mass (1 + a (E - V))"),
     Parameter("x", None, 0.0, 1.0, "", "composition: fraction of the alloy's first-named cation"),
     Parameter("thickness_nm", None, 0.0, 10_000.0, "nm", "thickness of a layer", low_open=True),
     Parameter("monolayers", None, 0.0, 20_000.0, "monolayers",

@@ -17,7 +17,10 @@ class ScenarioError(ValueError):
     def __init__(self, key: str, message: str) -> None:
         self.key = _one_line(key)[:_LONGEST_KEY]
         self.message = _one_line(message)
-        super().__init__(f"{self.key}: {self.message}")
+        super().__init__(self.key, self.message)
+
+    def __str__(self) -> str:
+        return f"{self.key}: {self.message}"
 
 
 def refuse_unless(condition: bool, key: str, message: str) -> None:
@@ -37,9 +40,7 @@ def shown(value: object) -> str:
     """A value as the file would write it, shortened so that the sentence stays a sentence."""
     if isinstance(value, bool):
         return "true" if value else "false"
-    if isinstance(value, float):
-        text = f"{value:.12g}"
-    elif isinstance(value, int) and abs(value) >= 10**_LONGEST_SHOWN:
+    if isinstance(value, int) and abs(value) >= 10**_LONGEST_SHOWN:
         # Not str(): Python refuses to write integers of more than 4,300 digits.
         return "a whole number of more than 40 digits"
     elif isinstance(value, str):

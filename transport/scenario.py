@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import errno
 import os
 import re
 import secrets
@@ -85,13 +86,10 @@ def save_scenario(scenario: Scenario, path: str | os.PathLike[str]) -> None:
     The text goes to a new file in the same folder, which then takes the place (and the mode) of the old one. A
     symbolic link is followed, so that the link stays. Raises ScenarioError with the path as its key.
     """
-    target = Path(os.path.realpath(path))
-    name = os.fspath(path)
-    refuse_unless(target.is_file() or not target.exists(), name, "is not a file; choose another name")
     try:
-        _replace(target, format_scenario(scenario).encode())
+        _replace(Path(os.path.realpath(_plain_file(path))), format_scenario(scenario).encode())
     except OSError as error:
-        raise ScenarioError(name, f"cannot be saved ({error.strerror}); choose another place") from None
+        raise ScenarioError(str(path), f"cannot be saved ({error.strerror}); choose another place") from None
 
 
 def has_comments(text: str) -> bool:
@@ -101,19 +99,24 @@ def has_comments(text: str) -> bool:
 
 def read_text(path: str | os.PathLike[str]) -> str:
     """The text of a scenario file, unread beyond the largest size. Raises ScenarioError with the path as its key."""
-    name = os.fspath(path)
     try:
-        # A device or a pipe would never end.
-        refuse_unless(stat.S_ISREG(os.stat(path).st_mode), name, "is not a file; name a scenario file")
-        with open(path, "rb") as file:
+        with _plain_file(path).open("rb") as file:
             content = file.read(_MOST_BYTES + 1)
     except OSError as error:
-        raise ScenarioError(name, f"cannot be read ({error.strerror}); name a scenario file") from None
-    refuse_unless(len(content) <= _MOST_BYTES, name, _TOO_BIG)
+        raise ScenarioError(str(path), f"cannot be read ({error.strerror}); name a scenario file") from None
+    refuse_unless(len(content) <= _MOST_BYTES, str(path), _TOO_BIG)
     try:
         return content.decode("utf-8-sig")
     except UnicodeDecodeError as error:
-        raise ScenarioError(name, f"is not UTF-8 text (byte {error.start + 1:,}); save it as UTF-8") from None
+        raise ScenarioError(str(path), f"is not UTF-8 text (byte {error.start + 1:,}); save it as UTF-8") from None
+
+
+def _plain_file(path: str | os.PathLike[str]) -> Path:
+    """The path, which may not exist yet; no folder, and no device or pipe, whose reading would never end."""
+    place = Path(path)
+    refuse_unless("\0" not in str(place), str(place), "holds a null character; choose another name")
+    refuse_unless(place.is_file() or not place.exists(), str(place), "is not a file; choose another name")
+    return place
 
 
 def _toml(text: str) -> dict[str, object]:
@@ -122,8 +125,11 @@ def _toml(text: str) -> dict[str, object]:
         return tomllib.loads(text)
     except RecursionError:
         raise ScenarioError("scenario", "is nested too deeply; a list of layers holds plain layers") from None
-    except ValueError as error:  # TOMLDecodeError, or an integer of more digits than Python reads
+    except tomllib.TOMLDecodeError as error:
         raise ScenarioError("scenario", f"is not valid TOML: {error}; mend it there") from None
+    except ValueError:
+        # Python's own limit on reading integers, 4,300 digits.
+        raise ScenarioError("scenario", "holds a whole number of too many digits; write a smaller one") from None
 
 
 def _replace(target: Path, content: bytes) -> None:
@@ -134,6 +140,8 @@ def _replace(target: Path, content: bytes) -> None:
             file.flush()
             os.fsync(file.fileno())
         if target.exists():
+            if not os.access(target, os.W_OK):
+                raise PermissionError(errno.EACCES, os.strerror(errno.EACCES))
             new.chmod(stat.S_IMODE(target.stat().st_mode))
         os.replace(new, target)
     finally:
