@@ -36,9 +36,9 @@ class PhasePoint:
     slope: Any
 
     @property
-    def sign(self) -> Any:
-        """Sign of psi just to the right of this point."""
-        return np.where(np.where(self.psi == 0, self.slope, self.psi) < 0, -1, 1)
+    def upward(self) -> Any:
+        """Whether psi is positive just to the right of this point."""
+        return np.where(np.asarray(self.psi) == 0, self.slope, self.psi) > 0
 
 
 WALL = PhasePoint(0, 0.0, 1.0)
@@ -66,10 +66,11 @@ def _through_one(element: Element, energy: Floats, start: PhasePoint) -> PhasePo
     end = PhasePoint(start.zeros, psi / size, slope / size)
     mass = mass_at(element, energy)
     wave = np.sqrt(np.maximum((energy - element.band_edge) * mass / HBAR2_2M0, 0.0))
-    sign = start.sign
+    upward = start.upward
+    sign = np.where(upward, 1.0, -1.0)
     begun = np.arctan2(sign * start.psi * wave, sign * mass * start.slope)
     turns = np.where(wave > 0, (begun + wave * element.thickness) / np.pi, 0.5)
-    return PhasePoint(start.zeros + _of_parity(turns, sign != end.sign), end.psi, end.slope)
+    return PhasePoint(start.zeros + _of_parity(turns, upward != end.upward), end.psi, end.slope)
 
 
 def _of_parity(turns: Any, odd: Any) -> Any:
@@ -89,15 +90,46 @@ class Rotation:
     turns: Floats
 
 
+def dirichlet_count(elements: Sequence[Element], energy: Floats) -> NDArray[np.int64]:
+    """Dirichlet eigenvalues of a list of layers below each energy.
+
+    The count never falls with energy, so where it is the same at both ends of a run of energies it is known inside:
+    of many energies only a few are followed through the layers.
+    """
+    if energy.size < 4 * _RUN:
+        return np.broadcast_to(np.asarray(through(elements, energy).zeros, dtype=np.int64), energy.shape)
+    order = None if (energy[1:] >= energy[:-1]).all() else np.argsort(energy)
+    ascending = energy if order is None else energy[order]
+    ends = np.append(np.arange(0, energy.size - 1, _RUN), energy.size - 1)
+    known = through(elements, ascending[ends]).zeros
+    counts = np.empty(energy.size, dtype=np.int64)
+    counts[:-1] = np.repeat(known[:-1], np.diff(ends))
+    counts[-1] = known[-1]
+    steps = np.repeat(known[1:] > known[:-1], np.diff(ends))
+    if (unsure := np.flatnonzero(steps)).size:
+        counts[unsure] = through(elements, ascending[unsure]).zeros
+    if order is None:
+        return counts
+    result = np.empty_like(counts)
+    result[order] = counts
+    return result
+
+
+_RUN = 128
+
+
 def rotation(chain: Chain) -> Rotation:
     """Lifted Bloch phase of the chain's cell (real energies)."""
-    first = through(chain.stack.cell, chain.energy)
-    passing = chain.cell.sine_squared > 0
-    sine = first.sign * np.sqrt(np.where(passing, chain.cell.sine_squared, 0.0))
-    phase = np.arctan2(sine, chain.cell.half_trace) / np.pi
-    lifted = phase + 2 * np.rint((first.zeros + 0.5 - phase) / 2)
-    gap = np.where(first.sign * chain.cell.half_trace > 0, first.zeros, first.zeros + 1)
-    return Rotation(passing, np.where(passing, lifted, gap))
+    counted, cell = dirichlet_count(chain.stack.cell, chain.energy), chain.cell
+    passing = cell.sine_squared > 0
+    upward = PhasePoint(0, cell.swing.b, cell.half_trace - cell.swing.a).upward
+    turns = counted + (upward != (cell.half_trace > 0))  # in a gap: its own number
+    turns = turns.astype(float)
+    inside = np.flatnonzero(passing)
+    sine = np.copysign(np.sqrt(cell.sine_squared[inside]), upward[inside] - 0.5)
+    phase = np.arctan2(sine, cell.half_trace[inside]) / np.pi
+    turns[inside] = phase + 2 * np.rint((counted[inside] + 0.5 - phase) / 2)
+    return Rotation(passing, turns)
 
 
 def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rotation | None = None) -> Any:
@@ -108,30 +140,34 @@ def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rot
     """
     turning = turning or rotation(chain)
     powers = powers or chain.powers(periods)
-    start = through(chain.stack.entry, chain.energy)
+    start = WALL
+    if chain.stack.entry:
+        start = PhasePoint(dirichlet_count(chain.stack.entry, chain.energy), chain.entry.b, chain.entry.d)
     return through(chain.stack.exit, chain.energy, _through_cells(chain, periods, powers, turning, start)).zeros
 
 
 def _through_cells(
     chain: Chain, periods: Any, powers: Powers, turning: Rotation, start: PhasePoint
 ) -> PhasePoint:
-    lean, b, c = chain.cell.swing.a, chain.cell.swing.b, chain.cell.swing.c
-    across, along = lean * start.psi + b * start.slope, c * start.psi - lean * start.slope
+    swing, half = chain.cell.swing, chain.cell.half_trace
+    across, along = swing.a * start.psi + swing.b * start.slope, swing.c * start.psi - swing.a * start.slope
     psi = start.psi * powers.first + across * powers.second
     slope = start.slope * powers.first + along * powers.second
-    size = np.hypot(psi, slope)
-    end = PhasePoint(start.zeros, psi / size, slope / size)
+    end = PhasePoint(0, psi, slope)
+    passing, begun_up, ended_up = turning.passing, start.upward, end.upward
 
-    sign, passing = start.sign, turning.passing
-    sine = np.copysign(np.sqrt(np.where(passing, chain.cell.sine_squared, 1.0)), b)
-    begun = np.arctan2(sign * start.psi, sign * across / sine) / np.pi
-    in_band = _of_parity(begun + periods * turning.turns, sign != end.sign)
+    begun = 0.0
+    if chain.stack.entry:
+        sine = np.copysign(np.sqrt(np.where(passing, chain.cell.sine_squared, 1.0)), swing.b)
+        sign = np.where(begun_up, 1.0, -1.0)
+        begun = np.arctan2(sign * start.psi, sign * across / sine) / np.pi
+    in_band = _of_parity(begun + periods * turning.turns, begun_up != ended_up)
 
     whole = periods * np.rint(turning.turns).astype(np.int64)
-    crossed = (sign != end.sign) ^ (whole % 2 == 1)
-    forward = (start.slope * across - start.psi * along) * chain.cell.half_trace > 0
-    in_gap = whole + np.where(crossed, np.where(forward, 1, -1), 0)
-    return PhasePoint(start.zeros + np.where(passing, in_band, in_gap), end.psi, end.slope)
+    crossed = (begun_up != ended_up) ^ (whole % 2 == 1)
+    forward = (start.slope * across - start.psi * along) * half > 0
+    in_gap = whole + np.where(forward, crossed, -crossed.astype(np.int64))
+    return PhasePoint(start.zeros + np.where(passing, in_band, in_gap), psi, slope)
 
 
 def absolute_phase(chain: Chain, argument: Any, count: Any) -> Any:
