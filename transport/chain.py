@@ -50,6 +50,13 @@ class Amplitude:
         return np.asarray(self.even + 1j * self.odd)
 
     @property
+    def argument(self) -> Any:
+        """arg(even + i odd)."""
+        if np.iscomplexobj(self.even) or np.iscomplexobj(self.odd):
+            return np.angle(self.value)
+        return np.arctan2(self.odd, self.even)
+
+    @property
     def squared(self) -> Any:
         """|even + i odd|^2, without the scales."""
         if np.iscomplexobj(self.even) or np.iscomplexobj(self.odd):

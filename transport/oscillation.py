@@ -12,7 +12,7 @@ parity: the sign of psi says whether the number is odd or even.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -90,29 +90,26 @@ class Rotation:
     turns: Floats
 
 
-def dirichlet_count(elements: Sequence[Element], energy: Floats) -> NDArray[np.int64]:
-    """Dirichlet eigenvalues of a list of layers below each energy.
+def dirichlet_count(elements: Sequence[Element], energy: Floats, upward: NDArray[np.bool_]) -> NDArray[np.int64]:
+    """Dirichlet eigenvalues of a list of layers below each energy; `upward` says where psi ends above 0.
 
-    The count never falls with energy, so where it is the same at both ends of a run of energies it is known inside:
-    of many energies only a few are followed through the layers.
+    The count never falls with energy, so where it is the same at both ends of a run of energies it is known inside,
+    and where it grows by one, `upward` (its parity) tells where: few energies need following through the layers.
     """
     if energy.size < 4 * _RUN:
         return np.broadcast_to(np.asarray(through(elements, energy).zeros, dtype=np.int64), energy.shape)
-    order = None if (energy[1:] >= energy[:-1]).all() else np.argsort(energy)
-    ascending = energy if order is None else energy[order]
+    if not (energy[1:] >= energy[:-1]).all():
+        order, result = np.argsort(energy), np.empty(energy.size, dtype=np.int64)
+        result[order] = dirichlet_count(elements, energy[order], upward[order])
+        return result
     ends = np.append(np.arange(0, energy.size - 1, _RUN), energy.size - 1)
-    known = through(elements, ascending[ends]).zeros
-    counts = np.empty(energy.size, dtype=np.int64)
-    counts[:-1] = np.repeat(known[:-1], np.diff(ends))
-    counts[-1] = known[-1]
-    steps = np.repeat(known[1:] > known[:-1], np.diff(ends))
-    if (unsure := np.flatnonzero(steps)).size:
-        counts[unsure] = through(elements, ascending[unsure]).zeros
-    if order is None:
-        return counts
-    result = np.empty_like(counts)
-    result[order] = counts
-    return result
+    known = np.asarray(through(elements, energy[ends]).zeros, dtype=np.int64)
+    counts = np.append(np.repeat(known[:-1], np.diff(ends)), known[-1])
+    counts += (counts % 2 == 1) == upward
+    leaps = np.repeat(np.diff(known) > 1, np.diff(ends))
+    if (unsure := np.flatnonzero(leaps)).size:
+        counts[unsure] = through(elements, energy[unsure]).zeros
+    return counts
 
 
 _RUN = 128
@@ -120,9 +117,10 @@ _RUN = 128
 
 def rotation(chain: Chain) -> Rotation:
     """Lifted Bloch phase of the chain's cell (real energies)."""
-    counted, cell = dirichlet_count(chain.stack.cell, chain.energy), chain.cell
+    cell = chain.cell
     passing = cell.sine_squared > 0
     upward = PhasePoint(0, cell.swing.b, cell.half_trace - cell.swing.a).upward
+    counted = dirichlet_count(chain.stack.cell, chain.energy, upward)
     turns = counted + (upward != (cell.half_trace > 0))  # in a gap: its own number
     turns = turns.astype(float)
     inside = np.flatnonzero(passing)
@@ -142,7 +140,8 @@ def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rot
     powers = powers or chain.powers(periods)
     start = WALL
     if chain.stack.entry:
-        start = PhasePoint(dirichlet_count(chain.stack.entry, chain.energy), chain.entry.b, chain.entry.d)
+        start = PhasePoint(0, *(np.broadcast_to(x, chain.energy.shape) for x in (chain.entry.b, chain.entry.d)))
+        start = replace(start, zeros=dirichlet_count(chain.stack.entry, chain.energy, start.upward))
     return through(chain.stack.exit, chain.energy, _through_cells(chain, periods, powers, turning, start)).zeros
 
 
@@ -150,14 +149,17 @@ def _through_cells(
     chain: Chain, periods: Any, powers: Powers, turning: Rotation, start: PhasePoint
 ) -> PhasePoint:
     swing, half = chain.cell.swing, chain.cell.half_trace
-    across, along = swing.a * start.psi + swing.b * start.slope, swing.c * start.psi - swing.a * start.slope
-    psi = start.psi * powers.first + across * powers.second
-    slope = start.slope * powers.first + along * powers.second
+    if start is WALL:
+        across, along = swing.b, swing.d
+        psi, slope = across * powers.second, powers.first + along * powers.second
+    else:
+        across, along = swing.a * start.psi + swing.b * start.slope, swing.c * start.psi + swing.d * start.slope
+        psi, slope = start.psi * powers.first + across * powers.second, start.slope * powers.first + along * powers.second
     end = PhasePoint(0, psi, slope)
     passing, begun_up, ended_up = turning.passing, start.upward, end.upward
 
     begun = 0.0
-    if chain.stack.entry:
+    if start is not WALL:
         sine = np.copysign(np.sqrt(np.where(passing, chain.cell.sine_squared, 1.0)), swing.b)
         sign = np.where(begun_up, 1.0, -1.0)
         begun = np.arctan2(sign * start.psi, sign * across / sine) / np.pi
@@ -165,7 +167,7 @@ def _through_cells(
 
     whole = periods * np.rint(turning.turns).astype(np.int64)
     crossed = (begun_up != ended_up) ^ (whole % 2 == 1)
-    forward = (start.slope * across - start.psi * along) * half > 0
+    forward = (across if start is WALL else start.slope * across - start.psi * along) * half > 0
     in_gap = whole + np.where(forward, crossed, -crossed.astype(np.int64))
     return PhasePoint(start.zeros + np.where(passing, in_band, in_gap), psi, slope)
 

@@ -39,7 +39,7 @@ def transmission_phase(stack: Stack, energy: Floats, periods: Any) -> Floats:
     """arg t (radians, unwrapped) of the lossless stack at each energy, for each count of periods."""
     chain = Chain(stack, energy)
     powers = chain.powers(periods)
-    argument = np.angle(chain.denominator(powers).value)
+    argument = chain.denominator(powers).argument
     return np.asarray(absolute_phase(chain, argument, zeros(chain, periods, powers, rotation(chain))))
 
 

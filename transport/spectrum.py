@@ -78,7 +78,7 @@ class Spectrum:
 
         Absolute for a lossless stack. With dephasing it is unwrapped along ascending energies.
         """
-        argument, chain = np.angle(self._denominator.value), self._chain
+        argument, chain = self._denominator.argument, self._chain
         if self.stack.dephasing:
             order = np.argsort(chain.energy)
             phase = np.empty_like(chain.energy)
