@@ -145,6 +145,9 @@ def document_from_data(data: object) -> Document:
         return msgspec.convert(plain, Document)
     except msgspec.ValidationError as error:
         raise _translated(str(error), plain) from None
+    except UnicodeEncodeError:
+        # Only JSON can carry one half of a surrogate pair, and msgspec cannot name its place.
+        raise ScenarioError("scenario", "holds half of a surrogate pair, which is no text; take it out") from None
     except RecursionError:
         raise ScenarioError("scenario", "is nested too deeply; a list of layers holds plain layers") from None
 

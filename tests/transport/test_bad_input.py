@@ -3,9 +3,13 @@
 from __future__ import annotations
 
 import pickle
+import tomllib
 from pathlib import Path
+from typing import Any
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from tests.transport.wrong_files import SOUND, WRONG_FILES
 from tests.transport.wrong_layers import WRONG_LAYERS
@@ -28,6 +32,43 @@ def test_the_scenario_they_all_start_from_is_sound() -> None:
 def test_a_wrong_scenario_is_one_sentence(said: str, instead: str, sentence: str) -> None:
     assert SOUND.count(said) == 1
     assert refusal(SOUND.replace(said, instead)) == sentence
+
+
+JUNK: list[Any] = [
+    None, True, -1, 0, 10**400, 1e308, float("nan"), float("inf"), -0.0, "", "GaAs", "\ud800", "\n",
+    [], {}, [[]], [{}], [{"layers": [{"layers": []}]}],
+    {"repeat": 1}, {"material": "GaAs"}, {"name": 1}, {"": {"": ""}},
+]
+
+
+@settings(deadline=None, max_examples=400)
+@given(st.data())
+def test_no_junk_in_any_place_gives_anything_but_a_sentence(data: st.DataObject) -> None:
+    """Plain data, as a link or an editor may send it, with one place overwritten or one key added."""
+    tree = tomllib.loads(SOUND)
+    place: Any = tree
+    while True:
+        key = data.draw(st.sampled_from([*place, "new"] if isinstance(place, dict) else range(len(place))))
+        deeper = place[key] if key != "new" else None
+        if not isinstance(deeper, dict | list) or not deeper or data.draw(st.booleans()):
+            break
+        place = deeper
+    place[key] = data.draw(st.sampled_from(JUNK))
+    try:
+        scenario_from_document(document_from_data(tree))
+    except ScenarioError as error:
+        assert str(error).isprintable()
+        assert len(str(error)) < 600
+
+
+@settings(deadline=None, max_examples=400)
+@given(st.integers(0, len(SOUND)), st.integers(0, 30), st.text(max_size=8) | st.sampled_from(list("[]{}=\"'#,.\n-")))
+def test_no_slip_of_the_keyboard_gives_anything_but_a_sentence(at: int, gone: int, new: str) -> None:
+    try:
+        parse_scenario(SOUND[:at] + new + SOUND[at + gone :])
+    except ScenarioError as error:
+        assert str(error).isprintable()
+        assert len(str(error)) < 600
 
 
 @pytest.mark.parametrize("text", ["", " \n\n", "\t"])
@@ -71,6 +112,15 @@ def test_data_that_is_no_table_is_refused(data: object) -> None:
 def test_materials_that_are_no_tables_are_refused(materials: object) -> None:
     with pytest.raises(ScenarioError, match=r"^materials: must be tables \[materials.NAME\]$"):
         document_from_data({"format": 1, "materials": materials})
+
+
+def test_a_bottomless_document_is_refused() -> None:
+    layer: dict[str, Any] = {"repeat": 1}
+    for _ in range(100_000):
+        layer = {"repeat": 1, "layers": [layer]}
+    data = {"format": 1, "leads": {"left": {}, "right": {}}, "stack": {"periods": 1, "cell": [layer]}}
+    with pytest.raises(ScenarioError, match=r"^scenario: is nested too deeply; a list of layers holds plain layers$"):
+        document_from_data(data)
 
 
 def test_a_lone_surrogate_cannot_hide_in_a_title() -> None:
