@@ -1,0 +1,307 @@
+"""The state of one session: the document being edited, its undo and redo, and the scenario it comes to.
+
+Free of Panel, so that it is tested without a browser. A value that cannot be used stays as a draft beside its field,
+with the engine's sentence, while the last usable document remains in force: nothing typed is lost, nothing wrong is
+computed.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field, replace
+
+from transport import (
+    Document,
+    Scenario,
+    ScenarioError,
+    document_from_data,
+    document_to_data,
+    format_scenario,
+    parse_scenario,
+    scenario_from_document,
+)
+from webapp import edits
+from webapp.edits import Data, Reorder
+from webapp.fields import applied, name_of, record_of, sentence_beside
+from webapp.files import Folder, with_suffix
+
+MOST_STEPS = 300
+"""Steps that undo goes back at most."""
+
+NEW_SCENARIO = """
+format = 1
+title = "New scenario"
+[leads.left]
+material = "GaAs"
+[leads.right]
+material = "GaAs"
+[stack]
+periods = 8
+cell = [ { material = "AlGaAs", x = 0.3, thickness_nm = 2.5 }, { material = "GaAs", thickness_nm = 6.0 } ]
+exit = [ { material = "AlGaAs", x = 0.3, thickness_nm = 2.5 } ]
+"""
+"""What the page of an empty folder begins with."""
+
+
+@dataclass(frozen=True, slots=True)
+class Draft:
+    """Text in a field that cannot be used, and the sentence that says why."""
+
+    text: str
+    message: str = ""
+
+
+Drafts = Mapping[str, Draft]
+"""Drafts by the path of their field."""
+
+
+@dataclass(frozen=True, slots=True)
+class State:
+    """One step of the undo stack: the document in force, the drafts beside it, the file's name, what led here."""
+
+    document: Document
+    drafts: Drafts = field(default_factory=dict)
+    place: str | None = None
+    step: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Notice:
+    """A sentence for the user that belongs to no field; `about` is the path of the list, or the command, it concerns."""
+
+    about: str
+    sentence: str
+    is_fault: bool = True
+
+
+class Bench:
+    """What one session edits. Methods never raise for what a user wrote: they leave a draft or a `notice`."""
+
+    def __init__(self, folder: Folder, wanted: str | None = None) -> None:
+        self.folder = folder
+        self.notice: Notice | None = None
+        self._scenario = parse_scenario(NEW_SCENARIO)
+        self._state = State(self._scenario.document)
+        self._saved: dict[str | None, Document] = {None: self._scenario.document}
+        self._texts: dict[str, str] = {}
+        self._past: list[State] = []
+        self._future: list[State] = []
+        self._sliding = False
+        self._open_first(wanted)
+
+    @property
+    def document(self) -> Document:
+        """The last usable document."""
+        return self._state.document
+
+    @property
+    def scenario(self) -> Scenario:
+        """What the document comes to."""
+        return self._scenario
+
+    @property
+    def drafts(self) -> Drafts:
+        """Unusable text by the path of its field."""
+        return self._state.drafts
+
+    @property
+    def place(self) -> str | None:
+        """The file the document was opened from or saved to."""
+        return self._state.place
+
+    @property
+    def is_changed(self) -> bool:
+        """Whether the file lacks something of what is on screen."""
+        return bool(self.drafts) or self._saved.get(self.place) != self.document
+
+    @property
+    def undo_step(self) -> str | None:
+        """What undo would take back, in words; None where there is nothing."""
+        return self._state.step if self._past else None
+
+    @property
+    def redo_step(self) -> str | None:
+        """What redo would bring back, in words; None where there is nothing."""
+        return self._future[-1].step if self._future else None
+
+    # Edits of values.
+
+    def set(self, path: str, text: str) -> None:
+        """Put `text` into the field at `path`: in force if it can be used, else a draft."""
+        if self._holds(record_of(path)):
+            self._use({**self.drafts, path: Draft(text)}, path, f"change of {name_of(path).replace('_', ' ')}")
+
+    def revert(self, path: str) -> None:
+        """Give up the draft at `path`."""
+        drafts = {other: draft for other, draft in self.drafts.items() if other != path}
+        self._enter(replace(self._state, drafts=drafts, step="draft given up"), self.scenario)
+
+    def slide(self, periods: int) -> None:
+        """Set the number of periods while a slider moves: one undo step from the first call to `settle`."""
+        continues, depth = self._sliding, len(self._past)
+        self.set("stack.periods", str(periods))
+        if continues and len(self._past) > depth:
+            del self._past[-1]
+        self._sliding = True
+
+    def settle(self) -> None:
+        """The slider has come to rest."""
+        self._sliding = False
+
+    # Edits of lists.
+
+    def add_layer(self, path: str, index: int) -> None:
+        """Put a new layer into the list at `path`, before position `index`."""
+        self._rearrange(path, lambda data: edits.inserted(data, path, index, edits.new_layer(data)), "new layer")
+
+    def add_window(self, kind: str) -> None:
+        """Put a new window at the end of the target."""
+        path, windows = "target.windows", self.document.target.windows if self.document.target else ()
+        self._rearrange(path, lambda data: edits.inserted(data, path, len(windows), edits.new_window(data, kind)),
+                        f"new {kind} window")
+
+    def duplicate(self, path: str, index: int) -> None:
+        """Put a copy of an entry behind it."""
+        if self._holds(f"{path}[{index}]"):
+            self._rearrange(path, lambda data: edits.inserted(
+                data, path, index + 1, edits.value_at(data, f"{path}[{index}]")), "copy")
+
+    def delete(self, path: str, index: int) -> None:
+        """Take an entry out of the list at `path`."""
+        if self._holds(f"{path}[{index}]"):
+            self._rearrange(path, lambda data: edits.deleted(data, path, index), "deletion")
+
+    def move(self, path: str, index: int, by: int) -> None:
+        """Move an entry of the list at `path` up (by = -1) or down (by = 1)."""
+        if index + by >= 0 and self._holds(f"{path}[{index}]") and self._holds(f"{path}[{index + by}]"):
+            self._rearrange(path, lambda data: edits.exchanged(data, path, index, index + by), "move")
+
+    def undo(self) -> None:
+        """One step back."""
+        if self._past:
+            self._future.append(self._state)
+            self._go(self._past.pop())
+
+    def redo(self) -> None:
+        """One step forth again."""
+        if self._future:
+            self._past.append(self._state)
+            self._go(self._future.pop())
+
+    # Files.
+
+    def open(self, name: str) -> None:
+        """Open a file of the folder; undo leads back to what was on screen."""
+        try:
+            text = self.folder.text(name)
+            scenario = parse_scenario(text)
+        except ScenarioError as error:
+            self.notice = Notice("open", f"{name} cannot be opened: {error}")
+            return
+        self._texts[name], self._saved[name] = text, scenario.document
+        self._enter(State(scenario.document, {}, name, f"opening of {name}"), scenario)
+
+    def save(self, name: str, agreed: bool) -> tuple[str, ...]:
+        """Save under `name`; unless `agreed`, first return what would be lost, as sentences, and leave the file."""
+        name = with_suffix(name)
+        try:
+            objections = () if agreed else self._objections(name)
+            if objections:
+                return objections
+            self.folder.save(name, self.scenario)
+        except ScenarioError as error:
+            self.notice = Notice("save", str(error))
+            return ()
+        self._texts[name], self._saved[name] = format_scenario(self.scenario), self.document
+        self._state = replace(self._state, place=name)
+        self.notice = Notice("save", f"Saved as {name}.", is_fault=False)
+        return ()
+
+    def _objections(self, name: str) -> tuple[str, ...]:
+        found = self.folder.objections(name, self._texts.get(name) if name == self.place else None)
+        if self.drafts:
+            found += ("The marked fields hold what cannot be used; their last usable values are saved instead.",)
+        return found
+
+    def _open_first(self, wanted: str | None) -> None:
+        """The file asked for, else the first that can be opened; without a way back to the empty page."""
+        try:
+            names = self.folder.names()
+        except ScenarioError as error:
+            self.notice = Notice("open", str(error))
+            return
+        refused = None
+        for name in ([wanted] if wanted else []) + list(names):
+            self.open(name)
+            if self.place is not None:
+                break
+            refused = refused or self.notice
+        self.notice = refused if wanted else None
+        self._past.clear()
+
+    # How an edit is taken.
+
+    def _holds(self, path: str) -> bool:
+        """Whether there is a record at `path`: a message about a row may arrive after the row is gone."""
+        data = document_to_data(self.document)
+        return path in ("", "target") or edits.value_at(data, path) is not None
+
+    def _use(self, drafts: Drafts, path: str, step: str) -> None:
+        """Bring as many drafts into force as go together, those beside the one at `path` before the others."""
+        beside = {other: draft for other, draft in drafts.items() if record_of(other) == record_of(path)}
+        scenario, used = self.scenario, frozenset[str]()
+        for group in (drafts, beside, {path: drafts[path]}, *({o: drafts[o]} for o in drafts if o != path)):
+            if not used & group.keys() and (found := _tried(scenario, group)):
+                scenario, used = found, used | group.keys()
+        left = {other: _refused(scenario, other, draft) for other, draft in drafts.items() if other not in used}
+        self._enter(State(scenario.document, left, self.place, step), scenario)
+
+    def _rearrange(self, path: str, edit: Callable[[Data], tuple[Data, Reorder]], step: str) -> None:
+        """Change a list; drafts move with their entries."""
+        data, reorder = edit(document_to_data(self.document))
+        try:
+            scenario = scenario_from_document(document_from_data(data))
+        except ScenarioError as error:
+            self.notice = Notice(path, sentence_beside(path, error))
+            return
+        places = {old: edits.reordered(old, path, reorder) for old in self.drafts}
+        drafts = {new: self.drafts[old] for old, new in places.items() if new is not None}
+        self._enter(State(scenario.document, drafts, self.place, step), scenario)
+
+    def _enter(self, state: State, scenario: Scenario) -> None:
+        """Make `state` the present, with the old one behind it, unless nothing has changed."""
+        self._sliding, self.notice = False, None
+        if (state.document, state.drafts, state.place) == (self.document, self.drafts, self.place):
+            return
+        self._past = [*self._past, self._state][-MOST_STEPS:]
+        self._future.clear()
+        self._state, self._scenario = state, scenario
+
+    def _go(self, state: State) -> None:
+        self._sliding, self.notice = False, None
+        self._state, self._scenario = state, scenario_from_document(state.document)
+
+
+def _with_drafts(scenario: Scenario, drafts: Drafts) -> Scenario:
+    """The scenario with the text of `drafts` in its fields. Raises ScenarioError."""
+    data = document_to_data(scenario.document)
+    rows = {row.key: row for row in scenario.sheet}
+    for path, draft in drafts.items():
+        data = applied(data, path, draft.text, scenario.document, rows)
+    return scenario_from_document(document_from_data(data))
+
+
+def _tried(scenario: Scenario, drafts: Drafts) -> Scenario | None:
+    try:
+        return _with_drafts(scenario, drafts)
+    except ScenarioError:
+        return None
+
+
+def _refused(scenario: Scenario, path: str, draft: Draft) -> Draft:
+    """A draft with the reason why it cannot be used."""
+    try:
+        _with_drafts(scenario, {path: draft})
+    except ScenarioError as error:
+        return replace(draft, message=sentence_beside(path, error))
+    return draft
