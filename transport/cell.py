@@ -41,14 +41,14 @@ class Powers:
 
 @dataclass(frozen=True)
 class Cell:
-    """The cell at each energy, shape (n,): half trace, swing and sin^2 phi.
+    """The cell at each energy, shape (n,): its matrix, half trace and sin^2 phi.
 
-    `log_scale` (None: nowhere) is the logarithm still taken out of half trace and swing, above 0 only where the cell
+    `log_scale` (None: nowhere) is the logarithm still taken out of matrix and half trace, above 0 only where the cell
     is so opaque that its entries would overflow.
     """
 
+    matrix: Transfer
     half_trace: Array
-    swing: Transfer
     sine_squared: Array
     log_scale: NDArray[np.float64] | None
 
@@ -56,19 +56,24 @@ class Cell:
     def of(cls, matrix: Transfer) -> Cell:
         """The cell of a transfer matrix."""
         matrix, log_scale = _unscaled(matrix)
-        half, lean = (matrix.a + matrix.d) * _ONE_HALF, (matrix.a - matrix.d) * _ONE_HALF
-        swing = Transfer(lean, matrix.b, matrix.c, -lean)
-        squared = sine_squared(half, swing)
+        half = (matrix.a + matrix.d) * _ONE_HALF
+        squared = sine_squared(half, matrix)
         if log_scale is not None:  # deep in a gap, where sin^2 = -sinh^2 = -h^2
             squared = np.where(log_scale > 0, -(half**2), squared)
-        return cls(half, swing, squared, log_scale)
+        return cls(matrix, half, squared, log_scale)
 
     def at(self, index: NDArray[np.int64]) -> Cell:
         """The cell at some of its energies only."""
-        swing = self.swing
-        entries = (part if isinstance(part, float) else part[index] for part in (swing.a, swing.b, swing.c, swing.d))
+        m = self.matrix
+        entries = (part if isinstance(part, float) else part[index] for part in (m.a, m.b, m.c, m.d))
         held = None if self.log_scale is None else self.log_scale[index]
-        return Cell(self.half_trace[index], Transfer(*entries), self.sine_squared[index], held)
+        return Cell(Transfer(*entries), self.half_trace[index], self.sine_squared[index], held)
+
+    @cached_property
+    def swing(self) -> Transfer:
+        """M - h."""
+        lean = (self.matrix.a - self.matrix.d) * _ONE_HALF
+        return Transfer(lean, self.matrix.b, self.matrix.c, -lean)
 
     @cached_property
     def size(self) -> tuple[Array, float]:
@@ -141,8 +146,8 @@ def _unscaled(matrix: Transfer) -> tuple[Transfer, NDArray[np.float64] | None]:
     return Transfer(*entries), np.where(held, log_scale, 0.0)
 
 
-def sine_squared(half_trace: Array, swing: Transfer) -> Array:
-    """sin^2 phi: 1 - h^2, and near |h| = 1 the form -(bc + lean^2) where that one loses fewer digits.
+def sine_squared(half_trace: Array, matrix: Transfer) -> Array:
+    """sin^2 phi: 1 - h^2, and near |h| = 1 the form -(bc + ((a - d)/2)^2) where that one loses fewer digits.
 
     At a closed gap the matrix is +-1 and the second form is exact; in an opaque cell its products are large and the
     first is the better.
@@ -150,8 +155,7 @@ def sine_squared(half_trace: Array, swing: Transfer) -> Array:
     result: Array = _ONE - half_trace * half_trace
     near = np.flatnonzero(abs(result) < 1e-2)
     if near.size:
-        lean, b, c = swing.a[near], np.broadcast_to(swing.b, result.shape)[near], swing.c[near]
-        product = b * c
+        lean, product = (matrix.a[near] - matrix.d[near]) / 2, matrix.b[near] * matrix.c[near]
         exact = np.flatnonzero(abs(product) + abs(lean) ** 2 < 1)
         result[near[exact]] = -(product + lean * lean)[exact]
     return result

@@ -26,7 +26,7 @@ from numpy.typing import NDArray
 
 from transport.cell import Cell, Powers
 from transport.constants import HBAR2_2M0
-from transport.propagation import IDENTITY, Array, Transfer, mass_at, require_model, transfer
+from transport.propagation import IDENTITY, Array, Span, Transfer, mass_at, require_model, transfer
 from transport.structure import Lead, Stack
 
 _SIXTEEN = np.array(16.0)
@@ -98,19 +98,19 @@ class Chain:
     """
 
     def __init__(self, stack: Stack, energy: NDArray[np.float64]) -> None:
-        require_model(stack.elements, energy)
         self.stack, self.energy = stack, energy
         self.inside: Array = energy + 0.5j * stack.dephasing if stack.dephasing else energy
-        self.left = flux_factor(stack.left, energy, bool(stack.dephasing))
-        same = stack.left == stack.right
-        self.right = self.left if same else flux_factor(stack.right, energy, bool(stack.dephasing))
-        self.cell = Cell.of(transfer(stack.cell, self.inside))
+        self.span = Span.of(self.inside)
+        require_model(stack.elements, self.span)
+        self.left = self._flux_factor(stack.left)
+        self.right = self.left if stack.left == stack.right else self._flux_factor(stack.right)
+        self.cell = Cell.of(transfer(stack.cell, self.inside, self.span))
 
     def at(self, index: NDArray[np.int64]) -> Chain:
         """The chain at some of its energies only."""
         part = Chain.__new__(Chain)
         part.stack, part.energy, part.inside = self.stack, self.energy[index], self.inside[index]
-        part.left = self.left[index]
+        part.left, part.span = self.left[index], self.span
         part.right = part.left if self.right is self.left else self.right[index]
         part.cell = self.cell.at(index)
         return part
@@ -118,12 +118,12 @@ class Chain:
     @cached_property
     def entry(self) -> Transfer:
         """Transfer matrix of the entry layers."""
-        return transfer(self.stack.entry, self.inside)
+        return transfer(self.stack.entry, self.inside, self.span)
 
     @cached_property
     def exit(self) -> Transfer:
         """Transfer matrix of the exit layers."""
-        return transfer(self.stack.exit, self.inside)
+        return transfer(self.stack.exit, self.inside, self.span)
 
     @cached_property
     def around(self) -> tuple[Transfer, Transfer]:
@@ -136,18 +136,28 @@ class Chain:
     @cached_property
     def outgoing(self) -> tuple[Amplitude, Amplitude]:
         """F for exit.entry and for exit.swing.entry."""
+        if self.right is self.left and not (self.stack.entry or self.stack.exit):  # g_R lean - g_L lean = 0
+            cell = self.cell.matrix
+            return self._outgoing(IDENTITY), Amplitude(0.0, cell.c - self.lead_product * cell.b)
         plain, swing = self.around
-        if swing is self.cell.swing and self.right is self.left:
-            forward = Amplitude(0.0, swing.c - self.lead_product * swing.b)  # g_R lean - g_L lean = 0
-        else:
-            forward = self._outgoing(swing)
-        return self._outgoing(plain), forward
+        return self._outgoing(plain), self._outgoing(swing)
 
     @cached_property
     def reflected(self) -> tuple[Amplitude, Amplitude]:
         """r F for exit.entry and for exit.swing.entry."""
         plain, swing = self.around
         return self._reflected(plain), self._reflected(swing)
+
+    def _flux_factor(self, lead: Lead) -> Any:
+        """g = k/m (1/nm per m0) of a lead; below its edge 0, or i kappa/m with dephasing, where it matters."""
+        kinetic = self.energy - lead.band_edge if lead.band_edge else self.energy
+        mass: Any = lead.mass
+        if lead.nonparabolicity:  # below the edge, where nothing is carried, the mass at the edge
+            mass = mass_at(lead, np.maximum(self.energy, lead.band_edge))
+        kinetic = kinetic / (HBAR2_2M0 * mass)
+        if self.stack.dephasing:
+            return np.sqrt(kinetic + 0j)
+        return np.sqrt(kinetic if self.span.low >= lead.band_edge else np.maximum(kinetic, 0.0))
 
     def _outgoing(self, m: Transfer) -> Amplitude:
         """F as a function of a matrix."""
@@ -169,7 +179,7 @@ class Chain:
     @cached_property
     def some_closed(self) -> bool:
         """Whether a lead is closed at any of the energies."""
-        return bool(self.energy.size) and not self.open.all()
+        return self.span.low <= max(self.stack.left.band_edge, self.stack.right.band_edge)
 
     @cached_property
     def lead_product(self) -> Any:
@@ -259,19 +269,3 @@ class Envelope:
     passing: NDArray[np.bool_]
     lower: NDArray[np.float64]
     upper: NDArray[np.float64]
-
-
-def flux_factor(lead: Lead, energy: NDArray[np.float64], evanescent: bool = False) -> Any:
-    """g = k/m (1/nm per m0) of a lead; below its edge 0, or i kappa/m where `evanescent` is set."""
-    kinetic = energy - lead.band_edge if lead.band_edge else energy
-    kinetic = kinetic / (HBAR2_2M0 * _lead_mass(lead, energy))
-    if evanescent:
-        return np.sqrt(kinetic + 0j)
-    if kinetic.size and kinetic.min() < 0:
-        kinetic = np.maximum(kinetic, 0.0)
-    return np.sqrt(kinetic)
-
-
-def _lead_mass(lead: Lead, energy: NDArray[np.float64]) -> Any:
-    """The lead's mass; below its edge, where it carries nothing, the mass at the edge."""
-    return mass_at(lead, np.maximum(energy, lead.band_edge)) if lead.nonparabolicity else lead.mass

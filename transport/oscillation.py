@@ -154,7 +154,8 @@ def _through_cells(
         psi, slope = across * powers.second, powers.first + along * powers.second
     else:
         across, along = swing.a * start.psi + swing.b * start.slope, swing.c * start.psi + swing.d * start.slope
-        psi, slope = start.psi * powers.first + across * powers.second, start.slope * powers.first + along * powers.second
+        psi = start.psi * powers.first + across * powers.second
+        slope = start.slope * powers.first + along * powers.second
     end = PhasePoint(0, psi, slope)
     passing, begun_up, ended_up = turning.passing, start.upward, end.upward
 

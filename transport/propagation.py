@@ -51,11 +51,13 @@ class Transfer:
 
     def __matmul__(self, first: Transfer) -> Transfer:
         """This matrix after `first` (the one nearer to the left lead)."""
+        inner = self.a * first.a
+        outer = inner if self.a is self.d and first.a is first.d else self.d * first.d
         return Transfer(
-            self.a * first.a + self.b * first.c,
+            inner + self.b * first.c,
             self.a * first.b + self.b * first.d,
             self.c * first.a + self.d * first.c,
-            self.c * first.b + self.d * first.d,
+            self.c * first.b + outer,
             self.log_scale + first.log_scale,
         )
 
@@ -80,17 +82,20 @@ class Span:
     def of(cls, energy: Array) -> Span:
         """The box of an array of energies."""
         if not energy.size:
-            return cls(0.0, 0.0, 0.0)
+            return cls(math.inf, math.inf, 0.0)
         if energy.dtype.kind == "c":
             return cls(float(energy.real.min()), float(energy.real.max()), float(abs(energy.imag).max()))
         return cls(float(energy.min()), float(energy.max()), 0.0)
 
 
-def transfer(elements: Sequence[Element], energy: Array) -> Transfer:
-    """Transfer matrix of a list of layers and deltas, left to right, at each energy (eV, shape (n,))."""
+def transfer(elements: Sequence[Element], energy: Array, span: Span | None = None) -> Transfer:
+    """Transfer matrix of a list of layers and deltas, left to right, at each energy (eV, shape (n,)).
+
+    `span`, if known, is the energies' box.
+    """
     if not elements:
         return IDENTITY
-    span = Span.of(energy)
+    span = span or Span.of(energy)
     known = {element: element_transfer(element, energy, span) for element in dict.fromkeys(elements)}
     scaled = _growth_bound(elements, span) > OPAQUE
     total = known[elements[0]]
@@ -111,8 +116,8 @@ def element_transfer(element: Element, energy: Array, span: Span | None = None) 
     length = element.thickness / HBAR2_2M0
     reach = max(abs(span.low - element.band_edge), abs(span.high - element.band_edge)) + span.imaginary
     heaviest = mass if isinstance(mass, float) else float(np.max(abs(mass), initial=0.0))
-    largest = reach * heaviest * element.thickness * length
-    if largest > OPAQUE**2 and span.low < element.band_edge and energy.size:
+    largest = reach * heaviest * element.thickness * length if energy.size else 0.0
+    if largest > OPAQUE**2 and span.low < element.band_edge:
         cosine, sine, log_scale = _opaque(kinetic * (mass * element.thickness * length))
         return Transfer(cosine, sine * (mass * element.thickness), kinetic * sine * -length, cosine, log_scale)
     near = _COMPLEX_REACH if energy.dtype.kind == "c" else _REAL_REACH
@@ -132,10 +137,10 @@ def mass_at(medium: Layer | Lead, energy: Array) -> Any:
     return medium.mass * (1 + medium.nonparabolicity * (energy - medium.band_edge))
 
 
-def require_model(elements: Sequence[Element], energy: Array) -> None:
+def require_model(elements: Sequence[Element], span: Span) -> None:
     """Raise ValueError if some layer's mass would not be above 0: there the model ends, and bands found were false."""
     ends = {e.band_edge - 1 / e.nonparabolicity: e for e in elements if isinstance(e, Layer) and e.nonparabolicity}
-    if ends and energy.size and energy.real.min() <= max(ends):
+    if ends and span.low <= max(ends):
         layer = ends[max(ends)]
         raise ValueError(
             f"the one-band model ends at {max(ends) * 1e3:.6g} meV, where the mass of a layer with band edge "

@@ -43,10 +43,7 @@ def shown(value: object) -> str:
     if isinstance(value, int) and abs(value) >= 10**_LONGEST_SHOWN:
         # Not str(): Python refuses to write integers of more than 4,300 digits.
         return "a whole number of more than 40 digits"
-    elif isinstance(value, str):
-        text = f'"{_one_line(value)}"'
-    else:
-        text = str(value)
+    text = f'"{_one_line(value)}"' if isinstance(value, str) else str(value)
     return text if len(text) <= _LONGEST_SHOWN else text[:_LONGEST_SHOWN] + "..."
 
 
