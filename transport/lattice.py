@@ -11,7 +11,7 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from transport.chain import Chain
 from transport.constants import HBAR, HBAR2_2M0
@@ -65,7 +65,7 @@ class Bands:
     bands: tuple[Band, ...]
     certificate: Certificate
 
-    def energies(self, phase: NDArray[np.float64]) -> Floats:
+    def energies(self, phase: ArrayLike) -> Floats:
         """E (eV) at Bloch phases K d from 0 to pi: shape (bands, phases)."""
         share = np.clip(np.asarray(phase, dtype=float) / np.pi, 0.0, 1.0)
         if not self.bands or not share.size:
@@ -230,7 +230,7 @@ class Bloch:
     density_of_states: Floats
 
 
-def bloch(stack: Stack, energies: NDArray[np.float64]) -> Bloch:
+def bloch(stack: Stack, energies: ArrayLike) -> Bloch:
     """Bloch phase, decay per period, group velocity and density of states of the stack's cell at given energies."""
     energy = np.atleast_1d(np.asarray(energies, dtype=float)).ravel()
     chain = Chain(lossless(stack), energy)

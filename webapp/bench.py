@@ -67,7 +67,7 @@ class State:
 
 @dataclass(frozen=True, slots=True)
 class Notice:
-    """A sentence for the user that belongs to no field; `about` is the path of the list, or the command, it concerns."""
+    """A sentence for the user that belongs to no field; `about`: the path of the list or the command it concerns."""
 
     about: str
     sentence: str

@@ -15,7 +15,8 @@ from pathlib import Path
 NAMES = ("chromium", "chromium-browser", "google-chrome", "google-chrome-stable", "chrome")
 FLAGS = ("--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-background-networking",
          "--disable-component-update", "--disable-sync")
-REMEDY = "No browser for the browser tests: install Chromium (as root: apt-get install chromium) and start again."
+NO_DRIVER = "Playwright does not start, for want of a library: as root, apt-get install libatomic1; then start again."
+NO_BROWSER = "No browser for the browser tests: install Chromium (as root, apt-get install chromium); then start again."
 
 
 def found(python: Path) -> Path | None:
@@ -29,16 +30,25 @@ def found(python: Path) -> Path | None:
 
 def obtained(python: Path) -> Path:
     """The browser found, or one fetched now; ends the program with one sentence if there is none to be had."""
+    if not _drives(python):
+        _install("libatomic1")
+        if not _drives(python):
+            sys.exit(NO_DRIVER)
     browser = found(python)
     for fetch in (_fetch_playwrights, _fetch_debians):
         if browser is None:
             fetch(python)
             browser = found(python)
-    return browser or sys.exit(REMEDY)
+    return browser or sys.exit(NO_BROWSER)
+
+
+def _drives(python: Path) -> bool:
+    """Whether Playwright itself runs: its driver needs a library that a bare Debian has not."""
+    return subprocess.run([python, "-m", "playwright", "--version"], capture_output=True, check=False).returncode == 0
 
 
 def _playwrights(python: Path) -> Path:
-    """Where Playwright keeps, or would keep, its own."""
+    """Where Playwright keeps, or would keep, its own browser."""
     ask = "from playwright.sync_api import sync_playwright as s\nwith s() as p: print(p.chromium.executable_path)"
     return Path(subprocess.run([python, "-c", ask], capture_output=True, text=True, check=True).stdout.strip())
 
@@ -55,20 +65,24 @@ def _starts(browser: Path) -> bool:
             return False
 
 
-def _may_install() -> bool:
-    return os.geteuid() == 0 and shutil.which("apt-get") is not None
-
-
 def _fetch_playwrights(python: Path) -> None:
     print("No browser found: fetching Playwright's own.", flush=True)
     libraries = ["--with-deps"] if _may_install() else []
     subprocess.run([python, "-m", "playwright", "install", *libraries, "chromium"], check=False)
 
 
-def _fetch_debians(python: Path) -> None:
+def _fetch_debians(_python: Path) -> None:
+    _install("chromium")
+
+
+def _install(package: str) -> None:
     if not _may_install():
         return
-    print("Installing Debian's Chromium.", flush=True)
-    subprocess.run(["apt-get", "update", "--quiet=2"], check=False)
-    subprocess.run(["apt-get", "install", "--yes", "--quiet=2", "--no-install-recommends", "chromium"],
-                   env=os.environ | {"DEBIAN_FRONTEND": "noninteractive"}, check=False)
+    print(f"Installing Debian's {package}.", flush=True)
+    silent = os.environ | {"DEBIAN_FRONTEND": "noninteractive"}
+    for step in (["update"], ["install", "--yes", "--no-install-recommends", package]):
+        subprocess.run(["apt-get", "--quiet=2", *step], env=silent, check=False)
+
+
+def _may_install() -> bool:
+    return os.geteuid() == 0 and shutil.which("apt-get") is not None

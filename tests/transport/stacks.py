@@ -25,9 +25,8 @@ END_WELLS = Stack(
     LEAD, (barrier(3.0), well(7.0), barrier(3.0)), (well(5.0), barrier(3.0)), 6, (well(7.0), barrier(3.0)), LEAD
 )
 LOSSY = Stack(LEAD, (), (barrier(3.0), well(5.0)), 8, (barrier(3.0),), LEAD, dephasing=0.004)
-KANE = Stack(
-    Lead(0.0, 0.067, 0.65), (), (Layer(3.0, 0.3, 0.092, 0.5), Layer(5.0, 0.0, 0.067, 0.65)), 8, (), Lead(0.0, 0.067, 0.65)
-)
+KANE_LEAD = Lead(0.0, 0.067, 0.65)
+KANE = Stack(KANE_LEAD, (), (Layer(3.0, 0.3, 0.092, 0.5), Layer(5.0, 0.0, 0.067, 0.65)), 8, (), KANE_LEAD)
 
 ALL = {
     "plain": PLAIN, "closed off": CLOSED_OFF, "unequal": UNEQUAL, "opaque": OPAQUE, "free": FREE, "deltas": DELTAS,

@@ -21,7 +21,8 @@ band_edge_eV = 0.01
 mass = 0.07
 [stack]
 periods = 4
-cell = [ { band_edge_eV = 0.3, mass = 0.092, thickness_nm = 3.0 }, { band_edge_eV = 0.0, mass = 0.067, thickness_nm = 5.0 } ]
+cell = [ { band_edge_eV = 0.3, mass = 0.092, thickness_nm = 3.0 },
+         { band_edge_eV = 0.0, mass = 0.067, thickness_nm = 5.0 } ]
 exit = [ { band_edge_eV = 0.3, mass = 0.092, thickness_nm = 3.0 } ]
 [target]
 most_periods = 12

@@ -3,8 +3,8 @@
 import numpy as np
 import pytest
 from scipy.linalg import eigvalsh_tridiagonal
-from tests.transport.stacks import ALL, CLOSED_OFF, LEAD, PLAIN, barrier, well
 
+from tests.transport.stacks import ALL, CLOSED_OFF, LEAD, PLAIN, barrier, well
 from transport import Layer, Stack
 from transport.chain import Chain
 from transport.constants import HBAR2_2M0
@@ -22,7 +22,7 @@ def box_levels(stack: Stack, below: float) -> np.ndarray:
     mass = np.concatenate([np.full(round(x.thickness / step), x.mass) for x in layers if isinstance(x, Layer)])
     hop = HBAR2_2M0 / (mass * step**2)
     diagonal = hop[:-1] + hop[1:] + (edge[:-1] + edge[1:]) / 2
-    return eigvalsh_tridiagonal(diagonal, -hop[1:-1], select="v", select_range=(-10.0, below))
+    return np.asarray(eigvalsh_tridiagonal(diagonal, -hop[1:-1], select="v", select_range=(-10.0, below)))
 
 
 @pytest.mark.parametrize("stack", [PLAIN, CLOSED_OFF, ALL["unequal"]], ids=["plain", "closed off", "unequal"])

@@ -5,8 +5,8 @@ import pytest
 
 from tests.transport.stacks import ALL, LOSSY, PLAIN, UNEQUAL
 from transport import Stack, scattering_matrix, spectrum
-from transport.scattering import of_transfer, step
 from transport.propagation import transfer
+from transport.scattering import of_transfer, step
 
 ENERGIES = np.linspace(0.0311, 1.2, 997)
 
