@@ -1,0 +1,189 @@
+"""What the finite stack passes: transmission over the shared energy axis, with the target's windows drawn on it."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from typing import Any, Literal
+
+import numpy as np
+from bokeh.models import AdaptiveTicker, BasicTicker, ColumnDataSource, CustomJSTickFormatter, NumeralTickFormatter, Range1d
+
+from transport import Target, Window
+from webapp.figures.frame import MEV, EnergyAxis, energy_frame, paint_frame, text_style
+from webapp.results import Emergence, Passage
+from webapp.theme import Palette
+
+Scale = Literal["log", "linear"]
+
+_COLUMN = {"log": "log10", "linear": "transmission"}
+_LABEL = "transmission T (share passed)"
+_RIGHT = {"log": 0.35, "linear": 1.06}
+# Powers of ten in figures of their own: a canvas has no markup.
+_POWERS = CustomJSTickFormatter(code="""
+    const high = "\u2070\u00b9\u00b2\u00b3\u2074\u2075\u2076\u2077\u2078\u2079"
+    if (tick == 0) return "1"
+    if (!Number.isInteger(tick)) return ""
+    return "10" + String(tick).replace("-", "\u207b").replace(/[0-9]/g, (digit) => high[digit])
+""")
+
+
+class PassesFigure:
+    """T over energy, on a logarithmic or linear axis.
+
+    The exact curve and the browser's own preview are two lines, of which one is shown: the browser decides, because
+    only it knows whether the curve it holds is still that of the slider's position.
+    """
+
+    def __init__(self, axis: EnergyAxis, drags: bool) -> None:
+        self._x = Range1d(-8, _RIGHT["log"], name="passes-range")
+        self.figure: Any = energy_frame("passes", axis, _LABEL, self._x, drags)
+        self.scale: Scale = "log"
+        self._floor, self._target = -8.0, None  # type: float, Target | None
+        empty: dict[str, Any] = {"energy": [], "log10": [], "transmission": [], "measured": [], "log10_measured": []}
+        self.curve = ColumnDataSource(empty, name="curve")
+        self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
+        self._preview = ColumnDataSource({"energy": [], "log10": [], "transmission": []}, name="preview")
+        self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
+        self._brackets = ColumnDataSource({"xs": [], "ys": []})
+        self._hatched = ColumnDataSource({"left": [], "right": [], "bottom": [], "top": []})
+        self._names = ColumnDataSource({"x": [], "y": [], "text": [], "align": [], "offset": []})
+        self._draw()
+        self._rescale()
+
+    def _draw(self) -> None:
+        draw = self.figure
+        self._hatching = draw.quad("left", "right", "top", "bottom", source=self._hatched, hatch_pattern="/",
+                                   hatch_scale=9, hatch_weight=1, fill_alpha=0.35, line_width=1.5)
+        self._between = draw.harea(x1="lower", x2="upper", y="energy", source=self._envelope, fill_alpha=0.5)
+        self._line = draw.line("log10", "energy", source=self.curve, line_width=2, name="curve-line")
+        self._measured = draw.line("log10_measured", "energy", source=self.curve, line_width=2, line_dash=[6, 3])
+        self._held = draw.line("log10", "energy", source=self._preview, line_width=2, name="preview-line",
+                               visible=False)
+        self._bracket = draw.multi_line("xs", "ys", source=self._brackets, line_width=2.5)
+        self._name = draw.text("x", "y", "text", source=self._names, text_baseline="middle", text_align="align",
+                               x_offset="offset")
+
+    def show(self, passage: Passage) -> None:
+        """Draw the exact curve."""
+        measured = passage.measured if passage.measured is not None else np.zeros(0)
+        full = measured if measured.size else np.full(passage.energy.size, math.nan)
+        with np.errstate(divide="ignore"):
+            decades = np.maximum(np.log10(full), -330)
+        self.curve.update(tags=[passage.periods], data={
+            "energy": passage.energy * MEV, "log10": passage.log10, "transmission": passage.transmission,
+            "measured": full, "log10_measured": decades,
+        })
+        self._measured.visible = bool(measured.size)
+        self._line.glyph.line_alpha = 0.45 if measured.size else 1.0
+        self._passage = passage
+        self._show_envelope()
+
+    def hold(self, emergence: Emergence | None, version: int) -> None:
+        """Give the browser the rows it may show at once, as those of a stack `version`; None takes them away."""
+        if emergence is None:
+            self._rows.update(tags=[-1], data={"energy": [], "rows": [], "counts": []})
+            return
+        self._rows.update(tags=[version], data={
+            "energy": [(emergence.energy * MEV).astype(np.float32)], "rows": [emergence.rows],
+            "counts": [emergence.counts.astype(np.int32)],
+        })
+
+    def ask(self, target: Target | None) -> None:
+        """Draw the target's windows."""
+        self._target = target
+        blocks = [w.transmission for w in target.windows] if target else []
+        deepest = min((math.log10(asked) for asked in blocks), default=-4.0)
+        self._floor = min(-6.0, math.floor(deepest * 1.5 - 1))
+        self._rescale()
+
+    def switch(self, scale: Scale) -> None:
+        """Show T on a logarithmic or a linear axis."""
+        self.scale = scale
+        self._rescale()
+
+    @property
+    def floor(self) -> float:
+        """The lowest power of ten shown."""
+        return self._floor
+
+    def _rescale(self) -> None:
+        log, column = self.scale == "log", _COLUMN[self.scale]
+        low, high = (self._floor, _RIGHT["log"]) if log else (0.0, _RIGHT["linear"])
+        self._x.update(start=low, end=high, reset_start=low, reset_end=high, tags=[self.scale])
+        self._line.glyph.x = self._held.glyph.x = column
+        self._measured.glyph.x = "log10_measured" if log else "measured"
+        axis = self.figure.xaxis[0]
+        axis.formatter = _powers() if log else NumeralTickFormatter(format="0.0")
+        axis.ticker = AdaptiveTicker(min_interval=1, mantissas=[1, 2, 5], desired_num_ticks=5, num_minor_ticks=0) \
+            if log else BasicTicker(desired_num_ticks=5, num_minor_ticks=0)
+        self._show_windows(low, high)
+        self._show_envelope()
+
+    def _show_envelope(self) -> None:
+        passage = getattr(self, "_passage", None)
+        if passage is None or passage.lower is None or passage.upper is None:
+            self._envelope.data = {"energy": [], "lower": [], "upper": []}
+            return
+        sides = {"lower": passage.lower, "upper": passage.upper}
+        if self.scale == "log":
+            sides = {name: np.log10(np.maximum(side, 1e-300)) for name, side in sides.items()}
+        self._envelope.data = {"energy": passage.energy * MEV, **sides}
+
+    def _show_windows(self, low: float, high: float) -> None:
+        windows = self._target.windows if self._target else ()
+        place = [self._place(window.transmission) for window in windows]
+        serif = 0.05 * (high - low)
+        passing = [(w, x) for w, x in zip(windows, place, strict=True) if w.kind == "pass"]
+        blocking = [(w, x) for w, x in zip(windows, place, strict=True) if w.kind == "block"]
+        self._brackets.data = {
+            "xs": [[x + serif, x, x, x + serif] for _, x in passing],
+            "ys": [[w.bottom * MEV, w.bottom * MEV, w.top * MEV, w.top * MEV] for w, _ in passing],
+        }
+        self._hatched.data = {
+            "left": [x for _, x in blocking], "right": [high for _ in blocking],
+            "bottom": [w.bottom * MEV for w, _ in blocking], "top": [w.top * MEV for w, _ in blocking],
+        }
+        self._names.data = {
+            "x": [x for _, x in (*passing, *blocking)],
+            "y": [(w.bottom + w.top) / 2 * MEV for w, _ in (*passing, *blocking)],
+            "text": [_caption(w) for w, _ in (*passing, *blocking)],
+            "align": ["right"] * len(passing) + ["left"] * len(blocking),
+            "offset": [-8] * len(passing) + [8] * len(blocking),
+        }
+
+    def _place(self, transmission: float) -> float:
+        return math.log10(transmission) if self.scale == "log" else transmission
+
+    def paint(self, palette: Palette) -> None:
+        """Take on the colours of a theme."""
+        paint_frame(self.figure, palette)
+        for renderer in (self._line, self._held):
+            renderer.glyph.line_color = palette.warm
+        self._measured.glyph.line_color = palette.warm_deep
+        self._between.glyph.fill_color = palette.warm
+        self._bracket.glyph.line_color = palette.target
+        self._hatching.glyph.update(line_color=palette.target, hatch_color=palette.target, hatch_alpha=0.4,
+                                    fill_color=palette.target_tint)
+        self._name.glyph.update(**text_style(palette.target), background_fill_color=palette.card,
+                                background_fill_alpha=0.8, padding=2)
+
+
+def _powers() -> CustomJSTickFormatter:
+    return _POWERS.clone()
+
+
+def _caption(window: Window) -> str:
+    sign = "\N{GREATER-THAN OR EQUAL TO}" if window.kind == "pass" else "\N{LESS-THAN OR EQUAL TO}"
+    mean = "mean " if window.measure == "mean" else ""
+    return f"{window.kind}: {mean}{sign} {window.transmission:.3g}"
+
+
+def describe_passes(passage: Passage, windows: Sequence[Window]) -> str:
+    """The figure in words."""
+    best = int(np.argmax(passage.transmission))
+    low, high = passage.energy[0] * MEV, passage.energy[-1] * MEV
+    asked = "; ".join(f"{w.kind} {w.bottom * MEV:.6g} to {w.top * MEV:.6g} meV, {_caption(w)}" for w in windows)
+    return (f"Transmission of {passage.periods:,} periods from {low:.4g} to {high:.4g} meV: largest "
+            f"{passage.transmission[best]:.4g} at {passage.energy[best] * MEV:.5g} meV, smallest "
+            f"1e{passage.log10.min():.1f}. {'Windows: ' + asked + '.' if asked else 'No window is asked.'} {passage.note}")

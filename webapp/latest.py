@@ -1,0 +1,88 @@
+"""Work off the event loop, one piece at a time: of the requests that come meanwhile only the newest counts."""
+
+from __future__ import annotations
+
+import asyncio
+import logging
+import threading
+from collections.abc import Callable
+from typing import Generic, TypeVar
+
+Request = TypeVar("Request")
+Result = TypeVar("Result")
+
+_log = logging.getLogger("webapp")
+
+
+class Stopped(Exception):  # noqa: N818 - not an error: the work was told to stop
+    """Raised within the work once it is told to stop."""
+
+
+class Stop:
+    """Tells work in a thread to stop; `check` is called by the work now and then."""
+
+    def __init__(self) -> None:
+        self._event = threading.Event()
+
+    def set(self) -> None:
+        """Ask the work to stop."""
+        self._event.set()
+
+    def check(self) -> None:
+        """Raise Stopped if the work was asked to stop."""
+        if self._event.is_set():
+            raise Stopped
+
+
+class Latest(Generic[Request, Result]):
+    """Runs `work(request, stop)` in a thread and hands its result to `done(request, result)` on the event loop.
+
+    With `interrupts`, a newer request stops the work in hand; without, that is finished and shown, and the newest
+    request follows, so that a dragged slider sees its curve move. `failed(request, error)` is told of any exception.
+    """
+
+    def __init__(
+        self,
+        work: Callable[[Request, Stop], Result],
+        done: Callable[[Request, Result], None],
+        failed: Callable[[Request, Exception], None],
+        interrupts: bool = False,
+    ) -> None:
+        self._work, self._done, self._failed, self._interrupts = work, done, failed, interrupts
+        self._wanted: Request | None = None
+        self._task: asyncio.Task[None] | None = None
+        self._stop = Stop()
+
+    @property
+    def is_busy(self) -> bool:
+        """Whether work is in hand or waits."""
+        return self._task is not None and not self._task.done()
+
+    def ask(self, request: Request) -> None:
+        """Want `request` done, in place of any that still waits. Call on the event loop."""
+        self._wanted = request
+        if not self.is_busy:
+            self._task = asyncio.get_running_loop().create_task(self._run())
+        elif self._interrupts:
+            self._stop.set()
+
+    def cancel(self) -> None:
+        """Stop the work in hand and forget what waits; nothing more is handed on."""
+        self._wanted = None
+        self._stop.set()
+
+    async def _run(self) -> None:
+        while self._wanted is not None:
+            request, self._wanted = self._wanted, None
+            self._stop = stop = Stop()
+            try:
+                result = await asyncio.to_thread(self._work, request, stop)
+                stop.check()
+            except Stopped:
+                continue
+            except Exception as error:  # the outermost handler of work: what is not foreseen goes to the log
+                if not isinstance(error, ValueError):
+                    _log.exception("work failed")
+                self._failed(request, error)
+            else:
+                self._done(request, result)
