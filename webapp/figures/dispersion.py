@@ -40,6 +40,11 @@ class DispersionFigure:
             "order": [f"{j}/{periods}" for j in order], "size": 4 + 5 * transmission,
         }
 
+    def clear(self) -> None:
+        """Take everything away."""
+        for source in (self._lines, self._points):
+            source.data = {name: [] for name in source.data}
+
     def paint(self, palette: Palette) -> None:
         """Take on the colours of a theme."""
         paint_frame(self.figure, palette)

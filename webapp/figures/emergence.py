@@ -29,11 +29,12 @@ class EmergenceFigure:
                              label_standoff=6, border_line_color=None)
         self.figure.add_layout(self._bar, "right")
 
-    def show(self, emergence: Emergence | None, floor: float) -> None:
+    def clear(self) -> None:
+        """Take the picture away."""
+        self._source.data = {name: [] for name in self._source.data}
+
+    def show(self, emergence: Emergence, floor: float) -> None:
         """Draw the picture; `floor`: the power of ten at which its colours begin."""
-        if emergence is None:
-            self._source.data = {"image": [], "x": [], "y": [], "width": [], "height": []}
-            return
         most, (low, high) = float(emergence.counts[-1]), emergence.span
         self._colours.low = floor
         self._source.data = {"image": [emergence.image], "x": [0.5], "y": [low * MEV], "width": [most],

@@ -1,9 +1,10 @@
-"""What all figures share: the energy axis, frames that line up, tools, the crosshair, and the colours of both themes."""
+"""What all figures share: the energy axis, frames that line up, tools, the crosshair, the colours of both themes."""
 
 from __future__ import annotations
 
 from typing import Any
 
+from bokeh.core.properties import value
 from bokeh.models import (
     BoxZoomTool,
     CrosshairTool,
@@ -30,7 +31,8 @@ class EnergyAxis:
 
     def __init__(self, low: float, high: float) -> None:
         self.range = Range1d(low, high, name="energy-range")
-        self.pointer = Span(dimension="width", line_width=1, line_dash=[4, 3], name="energy-pointer")
+        self.pointer = Span(dimension="width", line_width=1, line_dash=[4, 3], name="energy-pointer",
+                            syncable=False)
 
     def reset_to(self, low: float, high: float) -> None:
         """Show `low` to `high` (meV), and make them what the reset tool goes back to."""
@@ -57,7 +59,7 @@ def _frame(name: str, x_label: str, x_range: Range1d, y_range: Range1d, drags: b
     # Without a key held down the wheel keeps scrolling the page.
     wheel = WheelZoomTool(modifiers="ctrl", description="Wheel zoom (hold Ctrl)")
     frame = figure(
-        name=name, x_range=x_range, y_range=y_range, sizing_mode="stretch_both", toolbar_location="above",
+        name=f"figure-{name}", x_range=x_range, y_range=y_range, sizing_mode="stretch_both", toolbar_location="above",
         tools=[zoom, PanTool(), wheel, ResetTool(), SaveTool(filename=f"colonnade-{name}")],
         active_drag=zoom if drags else None, active_scroll=wheel,
         # Fixed borders: frames of different axes would else differ by some pixels, and equal energies with them.
@@ -83,6 +85,6 @@ def paint_frame(frame: Any, palette: Palette) -> None:
     frame.grid.grid_line_color = palette.grid
 
 
-def text_style(palette_colour: str) -> dict[str, str]:
-    """Properties of a label within a figure."""
-    return {"text_color": palette_colour, "text_font": FONT, "text_font_size": _SMALL}
+def text_style(colour: str) -> dict[str, Any]:
+    """Properties of a text glyph within a figure."""
+    return {"text_color": colour, "text_font": value(FONT), "text_font_size": value(_SMALL)}

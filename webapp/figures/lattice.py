@@ -67,6 +67,8 @@ class LatticeFigure:
         self.figure.add_layout(LinearAxis(x_range_name="decay", axis_label=_DECAY_LABEL), "above")
         minibands.shade(self.figure, names=True)
         self._bloch = ColumnDataSource({"energy": [], "phase": [], "decay": []}, name="bloch")
+        # No glyph draws these, which the readout needs; as a tag they travel with the figure all the same.
+        self.figure.tags = [self._bloch]
         self._lines = ColumnDataSource({"energy": [], "phase": [], "decay": []})
         self._points = ColumnDataSource({"energy": [], "phase": []})
         self._decay = self.figure.line("decay", "energy", source=self._lines, x_range_name="decay", line_width=2,
@@ -86,6 +88,11 @@ class LatticeFigure:
     def show_points(self, points: Points) -> None:
         """Draw the finite stack's own points."""
         self._points.data = {"energy": points.energy * MEV, "phase": points.phase / math.pi}
+
+    def clear(self) -> None:
+        """Take everything away."""
+        for source in (self._bloch, self._lines, self._points):
+            source.data = {name: [] for name in source.data}
 
     def paint(self, palette: Palette) -> None:
         """Take on the colours of a theme."""

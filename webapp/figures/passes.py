@@ -48,6 +48,11 @@ class PassesFigure:
         self._brackets = ColumnDataSource({"xs": [], "ys": []})
         self._hatched = ColumnDataSource({"left": [], "right": [], "bottom": [], "top": []})
         self._names = ColumnDataSource({"x": [], "y": [], "text": [], "align": [], "offset": []})
+        # No glyph draws the rows; as a tag they travel with the figure all the same.
+        self.figure.tags = [self._rows]
+        # What the browser does to these is its own affair and is not sent back.
+        self._preview.syncable = False
+        self._passage: Passage | None = None
         self._draw()
         self._rescale()
 
@@ -60,6 +65,7 @@ class PassesFigure:
         self._measured = draw.line("log10_measured", "energy", source=self.curve, line_width=2, line_dash=[6, 3])
         self._held = draw.line("log10", "energy", source=self._preview, line_width=2, name="preview-line",
                                visible=False)
+        self._line.syncable = self._held.syncable = False
         self._bracket = draw.multi_line("xs", "ys", source=self._brackets, line_width=2.5)
         self._name = draw.text("x", "y", "text", source=self._names, text_baseline="middle", text_align="align",
                                x_offset="offset")
@@ -77,6 +83,13 @@ class PassesFigure:
         self._measured.visible = bool(measured.size)
         self._line.glyph.line_alpha = 0.45 if measured.size else 1.0
         self._passage = passage
+        self._show_envelope()
+
+    def clear(self) -> None:
+        """Take the curve away, and the rows the browser holds."""
+        self._passage = None
+        self.curve.update(tags=[-1], data={name: [] for name in self.curve.data})
+        self.hold(None, -1)
         self._show_envelope()
 
     def hold(self, emergence: Emergence | None, version: int) -> None:
@@ -121,7 +134,7 @@ class PassesFigure:
         self._show_envelope()
 
     def _show_envelope(self) -> None:
-        passage = getattr(self, "_passage", None)
+        passage = self._passage
         if passage is None or passage.lower is None or passage.upper is None:
             self._envelope.data = {"energy": [], "lower": [], "upper": []}
             return

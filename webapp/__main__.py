@@ -1,0 +1,85 @@
+"""Serves the page: python -m webapp [--host HOST] [--port PORT] [--open] [FOLDER]."""
+
+from __future__ import annotations
+
+import argparse
+import signal
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any, NoReturn
+
+HIGHEST_PORT = 65_535
+UNUSED_SESSION_S = 15
+"""How long a session is kept after its browser has gone; a reload within that time finds the server quick."""
+
+
+class _Parser(argparse.ArgumentParser):
+    """A parser that says what is wrong in one sentence."""
+
+    def error(self, message: str) -> NoReturn:
+        """Print the sentence and leave with status 2."""
+        self.exit(2, f"{message[:1].lower()}{message[1:]}; {self.prog} --help lists what there is\n")
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Serve until told to stop; returns the exit status: 0 stopped, 2 bad input."""
+    options = _parser().parse_args(arguments)
+    # Imported here so that --help and a bad option are answered at once.
+    from transport import ScenarioError
+    from webapp.files import Folder
+
+    try:
+        folder = Folder(options.folder)
+        return _serve(folder, options)
+    except ScenarioError as error:
+        print(error, file=sys.stderr)
+    except OSError as error:
+        print(f"--port: {options.port} on {options.host} cannot be served ({error.strerror}); choose another with --port",
+              file=sys.stderr)
+    return 2
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = _Parser(prog="python -m webapp", description="Serve the bench in a browser.")
+    parser.add_argument("folder", nargs="?", default="scenarios", metavar="FOLDER", type=Path,
+                        help="scenarios it lists and saves to (default: scenarios)")
+    parser.add_argument("--host", default="127.0.0.1", help="address to listen on (default: 127.0.0.1, this machine)")
+    parser.add_argument("--port", type=_port, default=5006, help="port to listen on (default: 5006)")
+    parser.add_argument("--open", action="store_true", help="open a browser window")
+    return parser
+
+
+def _port(text: str) -> int:
+    if not text.isdecimal() or not 0 <= int(text) <= HIGHEST_PORT:
+        raise argparse.ArgumentTypeError(f"{text!r} must be a whole number from 0 to {HIGHEST_PORT:,}")
+    return int(text)
+
+
+def _serve(folder: Any, options: argparse.Namespace) -> int:
+    import panel as pn
+
+    from webapp.app import session
+
+    assets = Path(__file__).parent / "assets"
+    server = pn.serve(
+        {"/": lambda: session(folder)}, address=options.host, port=options.port, show=options.open, start=False,
+        title="Colonnade", verbose=False, liveness=True, static_dirs={"assets": str(assets)},
+        unused_session_lifetime_milliseconds=UNUSED_SESSION_S * 1000,
+    )
+    for number in (signal.SIGINT, signal.SIGTERM):
+        signal.signal(number, lambda *_: server.io_loop.add_callback_from_signal(server.io_loop.stop))
+    server.start()
+    print(f"Colonnade serves {folder.path} at http://{_shown(options.host)}:{server.port}  (Ctrl-C stops it)",
+          flush=True)
+    server.io_loop.start()
+    server.stop(wait=False)
+    return 0
+
+
+def _shown(host: str) -> str:
+    return f"[{host}]" if ":" in host else host
+
+
+if __name__ == "__main__":
+    sys.exit(main())

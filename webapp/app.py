@@ -1,0 +1,283 @@
+"""One session of the page: what the browser says goes to the bench, what the engine finds goes to the figures."""
+
+from __future__ import annotations
+
+import asyncio
+import logging
+from collections.abc import Callable
+from functools import partial
+from pathlib import Path
+from typing import Any
+
+import panel as pn
+from bokeh.document import Document
+from panel.io.document import hold
+
+from transport import Verdict
+from webapp import messages as say
+from webapp.bench import Bench
+from webapp.editor import Rail
+from webapp.figures.board import Board
+from webapp.files import Entry, Folder
+from webapp.latest import Latest, Stop
+from webapp.pages.periods import verdict_view
+from webapp.results import Question, Span, most_periods, natural_span, question
+from webapp.theme import LIGHT, PALETTES, css_variables
+from webapp.wire import Wire
+from webapp.work import Pictures, Wanted, pictures, verdict
+
+_PAGE = Path(__file__).parent / "page.html"
+_POLL = 0.2
+_SLOW = 0.3
+
+_log = logging.getLogger("webapp")
+
+
+class Session:
+    """Owns the bench of one visitor, its figures and the work behind them."""
+
+    def __init__(self, document: Document, bench: Bench, drags: bool) -> None:
+        self._document, self._bench = document, bench
+        self._palette = LIGHT
+        self._seq, self._version, self._share = 0, 0, 0.0
+        self._question: Question | None = None
+        self._verdict: Verdict | None = None
+        self._verdict_state = "none"
+        self._held: tuple[object, ...] = ()
+        self._span = natural_span(question(bench.scenario))
+        self.board = Board(self._span, drags)
+        self.board.paint(LIGHT)
+        self.board.axis.range.on_change("start", self._viewed)
+        self.board.axis.range.on_change("end", self._viewed)
+        self.wire = Wire(self.hear)
+        self._pictures = Latest(pictures, self._later(self._show_pictures), self._later(self._fail_pictures))
+        self._verdicts = Latest(self._work_out, self._later(self._show_verdict), self._later(self._fail_verdict),
+                                interrupts=True)
+        self._listing: Latest[None, tuple[Entry, ...]] = Latest(
+            lambda _, stop: bench.folder.entries(), self._later(self._show_files), self._later(self._fail_files))
+
+    def close(self) -> None:
+        """The visitor has gone."""
+        for worker in (self._pictures, self._verdicts, self._listing):
+            worker.cancel()
+
+    # From the browser.
+
+    def hear(self, data: object) -> None:
+        """Act on one message of the browser."""
+        message = say.read(data)
+        self._seq = message.seq
+        with hold(self._document):
+            self._act(message)
+
+    def _act(self, message: say.Any) -> None:
+        match message:
+            case say.Hello(theme=theme):
+                self._paint(theme)
+                self._follow(reset=True)
+            case say.Theme(theme=theme):
+                self._paint(theme)
+                self._tell_verdict()
+            case say.Scale(scale=scale):
+                self.board.passes.switch(scale)
+            case say.Browse():
+                self._listing.ask(None)
+            case say.Cancel():
+                self._verdicts.cancel()
+                self._verdict_state = "stopped"
+                self._tell_verdict()
+            case say.Again():
+                self._ask_verdict(question(self._bench.scenario))
+            case say.Save(name=name, agreed=agreed):
+                objections = self._bench.save(name, agreed)
+                if objections:
+                    self.wire.tell(objections={"name": name, "sentences": objections})
+                self._tell_rail()
+            case say.Slide(periods=periods):
+                self._bench.slide(periods)
+                self._follow(rail=False)
+            case _:
+                self._edit(message)
+
+    def _edit(self, message: say.Any) -> None:
+        bench, place = self._bench, self._bench.place
+        match message:
+            case say.Set(path=path, text=text):
+                bench.set(path, text)
+            case say.Revert(path=path):
+                bench.revert(path)
+            case say.Settle():
+                bench.settle()
+            case say.Layer(path=path, index=index):
+                bench.add_layer(path, index)
+            case say.Window(kind=kind):
+                bench.add_window(kind)
+            case say.Duplicate(path=path, index=index):
+                bench.duplicate(path, index)
+            case say.Delete(path=path, index=index):
+                bench.delete(path, index)
+            case say.Move(path=path, index=index, by=by):
+                bench.move(path, index, by)
+            case say.Undo():
+                bench.undo()
+            case say.Redo():
+                bench.redo()
+            case say.Open(name=name):
+                bench.open(name)
+        self._follow(reset=bench.place != place)
+
+    # To the browser.
+
+    def _follow(self, reset: bool = False, rail: bool = True) -> None:
+        """Bring everything up to the bench's scenario. `reset`: another document, shown whole."""
+        asked = question(self._bench.scenario)
+        self._show_span(natural_span(asked), reset)
+        key = (asked.stack, most_periods(asked.target), self._span)
+        if key != self._held:
+            self._held, self._version = key, self._version + 1
+        self.board.passes.ask(asked.target)
+        self.board.periods.mark(self._bench.scenario.stack.periods)
+        if rail:
+            self._tell_rail()
+        else:
+            self.wire.tell(status=self._status())
+        self._ask_pictures()
+        if asked != self._question:
+            self._ask_verdict(asked)
+        else:
+            self._tell_verdict()
+
+    def _show_span(self, natural: Span, reset: bool) -> None:
+        """Follow the stack with the energy axis, unless the user has chosen another part of it."""
+        if natural == self._span and not reset:
+            return
+        shows_all = self._view() == self._span
+        self._span = natural
+        if reset or shows_all:
+            self.board.axis.reset_to(natural[0] * 1e3, natural[1] * 1e3)
+
+    def _status(self) -> dict[str, Any]:
+        bench = self._bench
+        notice = bench.notice
+        return {
+            "seq": self._seq, "version": self._version, "periods": bench.scenario.stack.periods,
+            "place": bench.place, "changed": bench.is_changed, "undo": bench.undo_step, "redo": bench.redo_step,
+            "notice": None if notice is None else {"about": notice.about, "sentence": notice.sentence,
+                                                   "fault": notice.is_fault},
+        }
+
+    def _tell_rail(self) -> None:
+        scenario = self._bench.scenario
+        self.wire.tell(status=self._status(), rail=Rail(self._bench).view(), about={
+            "title": scenario.title, "note": scenario.note, "cautions": scenario.warnings})
+
+    def _tell_verdict(self) -> None:
+        view = verdict_view(self._verdict, self._bench.scenario.stack.periods, self._palette)
+        if self._verdict_state != "known":
+            view = {"state": self._verdict_state, "sentence": "", "present": "", "legend": [], "share": self._share}
+        self.wire.tell(verdict=view)
+
+    def _paint(self, theme: str) -> None:
+        self._palette = PALETTES[theme]
+        self.board.paint(self._palette)
+
+    # The work behind the figures.
+
+    def _later(self, show: Callable[..., None]) -> Callable[..., None]:
+        """A result's way to the figures: with the document's lock, as one change."""
+
+        def locked(*arguments: Any) -> None:
+            with hold(self._document):
+                show(*arguments)
+
+        return lambda *arguments: self._document.add_next_tick_callback(partial(locked, *arguments))
+
+    def _view(self) -> Span:
+        return self.board.axis.range.start / 1e3, self.board.axis.range.end / 1e3
+
+    def _viewed(self, attr: str, old: float, new: float) -> None:
+        """The user pans or zooms the energy axis: the curve is worked out for what is seen."""
+        self._ask_pictures()
+
+    def _ask_pictures(self) -> None:
+        low, high = sorted(self._view())
+        room = 0.25 * (high - low)
+        span = (min(self._span[0], low), max(self._span[1], high))
+        view = (max(low - room, span[0]), min(high + room, span[1]))
+        self._pictures.ask(Wanted(self._bench.scenario, span, view, self._version))
+
+    def _show_pictures(self, wanted: Wanted, found: Pictures) -> None:
+        texts = self.board.show(wanted, found)
+        self.wire.tell(pictured={"version": wanted.version, "periods": found.passage.periods, "fault": ""},
+                       texts=texts)
+
+    def _fail_pictures(self, wanted: Wanted, error: Exception) -> None:
+        self.board.clear()
+        self.wire.tell(pictured={"version": wanted.version, "periods": wanted.scenario.stack.periods,
+                                 "fault": _in_words(error)})
+
+    def _ask_verdict(self, asked: Question) -> None:
+        self._question, self._share, self._verdict_state = asked, 0.0, "working"
+        self._tell_verdict()
+        self._verdicts.ask(asked)
+        asyncio.get_running_loop().create_task(self._watch(asked))
+
+    def _work_out(self, asked: Question, stop: Stop) -> Verdict | None:
+        return verdict(asked, stop, self._progress)
+
+    def _progress(self, share: float) -> None:
+        self._share = share
+
+    async def _watch(self, asked: Question) -> None:
+        """While a verdict takes long: say how far it is, and take the old margins off the screen."""
+        await asyncio.sleep(_SLOW)
+        while self._verdict_state == "working" and self._question == asked:
+            self._later(self._show_progress)()
+            await asyncio.sleep(_POLL)
+
+    def _show_progress(self) -> None:
+        if self._verdict_state == "working":
+            self.board.periods.margins.show(None)
+            self._tell_verdict()
+
+    def _show_verdict(self, asked: Question, found: Verdict | None) -> None:
+        if asked != self._question:
+            return
+        self._verdict, self._verdict_state = found, "known"
+        self._tell_verdict()
+        self.wire.tell(texts=self.board.show_verdict(found))
+
+    def _fail_verdict(self, asked: Question, error: Exception) -> None:
+        self._verdict, self._verdict_state = None, "none"
+        self.board.periods.margins.show(None)
+        self.wire.tell(verdict={"state": "fault", "sentence": _in_words(error), "present": "", "legend": []})
+
+    def _show_files(self, _: None, entries: tuple[Entry, ...]) -> None:
+        self.wire.tell(files=[{"name": e.name, "title": e.title, "note": e.note, "problem": e.problem}
+                              for e in entries])
+
+    def _fail_files(self, _: None, error: Exception) -> None:
+        self.wire.tell(files=[], objection=_in_words(error))
+
+
+def _in_words(error: Exception) -> str:
+    """A refusal of the engine is a sentence; anything else is a fault of ours, which the log has in full."""
+    if isinstance(error, ValueError):
+        return str(error)
+    return "Something went wrong within the program; the server's log says what. Undo the last edit to go on."
+
+
+def session(folder: Folder) -> pn.template.Template:
+    """The page of one visitor: called by the server for each."""
+    wanted = pn.state.session_args.get("scenario", [b""])[0].decode(errors="replace")
+    drags = "Mobi" not in pn.state.headers.get("User-Agent", "")
+    document = pn.state.curdoc
+    visit = Session(document, Bench(folder, wanted or None), drags)
+    template = pn.template.Template(_PAGE.read_text(encoding="utf-8"))
+    template.add_variable("variables", css_variables())
+    template.add_panel("wire", visit.wire)
+    for name, figure in visit.board.figures.items():
+        template.add_panel(name, pn.pane.Bokeh(figure, sizing_mode="stretch_both", margin=0))
+    document.on_session_destroyed(lambda context: visit.close())
+    return template
+

@@ -1,0 +1,57 @@
+// Opening and saving: the list of scenarios, the name to save under, and what saving would lose.
+
+import { byId, element } from "./dom.js"
+
+let send = () => {}
+let asked = null
+
+export function startFiles(sender, status) {
+  send = sender
+  byId("open").addEventListener("click", () => {
+    byId("files").replaceChildren(element("li", { class: "quiet" }, "Reading the folder"))
+    byId("open-warning").hidden = !status()?.changed
+    byId("open-dialog").showModal()
+    send("browse")
+  })
+  byId("save").addEventListener("click", () => askToSave(send, status()))
+  byId("save-as").addEventListener("click", () => askForName(status()))
+  byId("save-cancel").addEventListener("click", () => byId("save-dialog").close())
+  byId("save-form").addEventListener("submit", (event) => {
+    event.preventDefault()
+    byId("save-dialog").close()
+    send("save", { name: byId("save-name").value, agreed: false })
+  })
+  byId("objections-dialog").addEventListener("close", () => {
+    if (byId("objections-dialog").returnValue === "save") send("save", { name: asked, agreed: true })
+  })
+}
+
+export function askToSave(sender, status) {
+  if (status?.place) sender("save", { name: status.place, agreed: false })
+  else askForName(status)
+}
+
+function askForName(status) {
+  byId("save-name").value = status?.place ?? ""
+  byId("save-dialog").showModal()
+  byId("save-name").select()
+}
+
+export function drawFiles(files, status) {
+  const entries = files.map(({ name, title, note, problem }) => {
+    const opening = () => { byId("open-dialog").close(); send("open", { name }) }
+    return element("li", {}, element("button", { type: "button", class: "file", disabled: Boolean(problem),
+      "aria-current": name === status?.place ? "true" : null, onclick: opening },
+    element("span", { class: "file-title" }, title), element("span", { class: "file-name" }, name),
+    element("span", { class: problem ? "file-problem" : "file-note" }, problem ?? note)))
+  })
+  const empty = element("li", { class: "quiet" }, "The folder holds no scenario yet; Save as makes one.")
+  byId("files").replaceChildren(...(entries.length ? entries : [empty]))
+}
+
+export function drawObjections({ name, sentences }) {
+  asked = name
+  byId("objections").replaceChildren(...sentences.map((sentence) => element("li", {}, sentence)))
+  byId("objections-dialog").returnValue = ""
+  byId("objections-dialog").showModal()
+}

@@ -1,0 +1,89 @@
+"""All figures of the page on their one energy axis."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from transport import Verdict
+from webapp.figures.dispersion import describe_points
+from webapp.figures.emergence import describe_emergence
+from webapp.figures.frame import MEV, EnergyAxis
+from webapp.figures.lattice import LatticeFigure, Minibands, describe_lattice
+from webapp.figures.margins import describe_margins
+from webapp.figures.passes import PassesFigure, describe_passes
+from webapp.figures.profile import ProfileFigure, describe_profile
+from webapp.pages.periods import PeriodsPage
+from webapp.results import Span
+from webapp.theme import Palette
+from webapp.work import Pictures, Wanted
+
+Texts = dict[str, str]
+"""Figures in words, by name: the text alternative of each canvas."""
+
+
+class Board:
+    """The three figures of the bench and those of the pages."""
+
+    def __init__(self, span: Span, drags: bool) -> None:
+        self.axis = EnergyAxis(span[0] * MEV, span[1] * MEV)
+        self.minibands = Minibands()
+        self.profile = ProfileFigure(self.axis, drags)
+        self.passes = PassesFigure(self.axis, drags)
+        self.lattice = LatticeFigure(self.axis, self.minibands, drags)
+        self.periods = PeriodsPage(self.axis, self.minibands, drags)
+        self.minibands.shade(self.profile.figure)
+        self.minibands.shade(self.passes.figure)
+        self._lattice: object = None
+        self._version = -1
+
+    @property
+    def figures(self) -> dict[str, Any]:
+        """Every figure by its name."""
+        page = self.periods
+        return {
+            "profile": self.profile.figure, "passes": self.passes.figure, "lattice": self.lattice.figure,
+            "margins": page.margins.figure, "emergence": page.emergence.figure, "dispersion": page.dispersion.figure,
+        }
+
+    def paint(self, palette: Palette) -> None:
+        """Take on the colours of a theme."""
+        for part in (self.profile, self.passes, self.lattice, self.minibands, self.periods):
+            part.paint(palette)
+
+    def show(self, wanted: Wanted, found: Pictures) -> Texts:
+        """Draw what was found, and only what has changed; returns the figures in words."""
+        stack, dispersion = wanted.scenario.stack, self.periods.dispersion
+        self.profile.show(found.profile, wanted.span)
+        self.passes.show(found.passage)
+        if found.lattice is not self._lattice:
+            self._lattice = found.lattice
+            self.minibands.show(found.lattice.bands)
+            self.lattice.show(found.lattice)
+            dispersion.show(found.lattice)
+        self.lattice.show_points(found.points)
+        dispersion.show_points(found.points, found.at_points, stack.periods)
+        if wanted.version != self._version:
+            self._version = wanted.version
+            self.passes.hold(found.emergence, wanted.version)
+            self.periods.emergence.show(found.emergence, self.passes.floor)
+        windows = wanted.scenario.target.windows if wanted.scenario.target else ()
+        return {
+            "profile": describe_profile(stack, found.profile),
+            "passes": describe_passes(found.passage, windows),
+            "lattice": describe_lattice(found.lattice),
+            "emergence": describe_emergence(found.emergence),
+            "dispersion": describe_points(found.points, found.at_points, stack.periods),
+            "certificate": found.lattice.bands.certificate.sentence,
+        }
+
+    def show_verdict(self, verdict: Verdict | None) -> Texts:
+        """Draw the margins; returns the figure in words."""
+        self.periods.margins.show(verdict)
+        return {"margins": describe_margins(verdict) if verdict else "No window is asked, so there is no margin."}
+
+    def clear(self) -> None:
+        """Take away what belongs to a stack that cannot be worked out."""
+        self._lattice, self._version = None, -1
+        self.minibands.show(None)
+        for part in (self.passes, self.lattice, self.periods.emergence, self.periods.dispersion):
+            part.clear()
