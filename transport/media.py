@@ -56,15 +56,17 @@ class Media:
         if name is None:
             return None
         known = materials.substrate_names()
-        refuse_unless(name in known, "conditions.substrate",
-                      f"{shown(name)} is not a substrate of the library; {nearest(name, known)}")
+        if name not in known:
+            raise ScenarioError("conditions.substrate",
+                                f"{shown(name)} is not a substrate of the library; {nearest(name, known)}")
         return self._at_temperature(name, None, None)
 
     def _find(self, key: str, name: str, x: float | None) -> Material:
         known = materials.material_names()
-        refuse_unless(name in known, f"{key}.material",
-                      f"{shown(name)} is neither in the library nor in [materials]; "
-                      f"{nearest(name, (*known, *self._users))}")
+        if name not in known:
+            remedy = nearest(name, (*known, *self._users))
+            raise ScenarioError(f"{key}.material",
+                                f"{shown(name)} is neither in the library nor in [materials]; {remedy}")
         if materials.is_alloy(name):
             refuse_unless(x is not None, f"{key}.x", f"is missing; {name} is an alloy, give its share from 0 to 1")
         else:

@@ -22,8 +22,9 @@ from transport.structure import Stack, Target
 
 _MOST_BYTES = int(PARAMETERS["file_bytes"].high)
 _TOO_BIG = f"is larger than {_MOST_BYTES:,} bytes; a scenario file must stay below that"
+# A string that is not closed ends with its line or the text: then no text takes more than linear time.
 _STRING_OR_COMMENT = re.compile(
-    r'''"""(?:\\.|[^\\])*?"{3,5}|'{3}.*?'{3,5}|"(?:\\.|[^"\\\n])*"|'[^'\n]*'|(#)''', re.DOTALL)
+    r'''"""(?:\\.|[^\\])*?(?:"{3,5}|\Z)|'{3}.*?(?:'{3,5}|\Z)|"(?:\\.|[^"\\\n])*"?|'[^'\n]*'?|(#)''', re.DOTALL)
 # tomllib needs time that grows with the square of a dotted key's length; no key here has more than three parts.
 _LONG_KEY = re.compile(r"(?<![^\s.=\[\]{},])(?:[^\s.=\[\]{},]+[ \t]*\.[ \t]*){32}")
 

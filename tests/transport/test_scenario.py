@@ -342,6 +342,8 @@ def test_a_byte_order_mark_and_foreign_line_ends_are_read(tmp_path: Path) -> Non
     (r'title = "a \" # b"', False),
     (r'title = "a \\" # b', True),
     ('note = """a""""" # b', True),
+    ('title = "open # b', False),
+    ("title = 'open\n# b", True),
 ])
 def test_comments_are_told_from_text(text: str, found: bool) -> None:
     assert has_comments(text) == found
