@@ -83,11 +83,13 @@ class Rotation:
     """How far one cell turns the phase point, at each energy.
 
     `passing`: inside a band (|D| < 2). `turns`: the Bloch phase over pi, lifted so that it grows with energy: between
-    j - 1 and j in band j, exactly j in the gap above it.
+    j - 1 and j in band j, exactly j in the gap above it. `offset`: what N cells add to N turns before rounding down
+    when they begin at psi = 0.
     """
 
     passing: NDArray[np.bool_]
     turns: Floats
+    offset: Floats
 
 
 def dirichlet_count(elements: Sequence[Element], energy: Floats, upward: NDArray[np.bool_]) -> NDArray[np.int64]:
@@ -105,7 +107,7 @@ def dirichlet_count(elements: Sequence[Element], energy: Floats, upward: NDArray
     ends = np.append(np.arange(0, energy.size - 1, _RUN), energy.size - 1)
     known = np.asarray(through(elements, energy[ends]).zeros, dtype=np.int64)
     counts = np.append(np.repeat(known[:-1], np.diff(ends)), known[-1])
-    counts += (counts % 2 == 1) == upward
+    counts += (counts & 1 == 1) == upward
     leaps = np.repeat(np.diff(known) > 1, np.diff(ends))
     if (unsure := np.flatnonzero(leaps)).size:
         counts[unsure] = through(elements, energy[unsure]).zeros
@@ -121,13 +123,14 @@ def rotation(chain: Chain) -> Rotation:
     passing = cell.sine_squared > 0
     upward = PhasePoint(0, cell.swing.b, cell.half_trace - cell.swing.a).upward
     counted = dirichlet_count(chain.stack.cell, chain.energy, upward)
-    turns = counted + (upward != (cell.half_trace > 0))  # in a gap: its own number
-    turns = turns.astype(float)
+    behind = upward != (cell.half_trace > 0)  # in a gap: the first cell turns psi = 0 back, and is one zero short
+    turns, offset = (counted + behind).astype(float), 0.5 - behind
     inside = np.flatnonzero(passing)
     sine = np.copysign(np.sqrt(cell.sine_squared[inside]), upward[inside] - 0.5)
     phase = np.arctan2(sine, cell.half_trace[inside]) / np.pi
     turns[inside] = phase + 2 * np.rint((counted[inside] + 0.5 - phase) / 2)
-    return Rotation(passing, turns)
+    offset[inside] = 0.0
+    return Rotation(passing, turns, offset)
 
 
 def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rotation | None = None) -> Any:
@@ -137,6 +140,8 @@ def zeros(chain: Chain, periods: Any, powers: Powers | None = None, turning: Rot
     band, and in a gap moves it towards a fixed direction without passing it, so each half turn is known.
     """
     turning = turning or rotation(chain)
+    if not (chain.stack.entry or chain.stack.exit):
+        return np.floor(periods * turning.turns + turning.offset).astype(np.int64)
     powers = powers or chain.powers(periods)
     start = WALL
     if chain.stack.entry:
@@ -167,7 +172,7 @@ def _through_cells(
     in_band = _of_parity(begun + periods * turning.turns, begun_up != ended_up)
 
     whole = periods * np.rint(turning.turns).astype(np.int64)
-    crossed = (begun_up != ended_up) ^ (whole % 2 == 1)
+    crossed = (begun_up != ended_up) ^ (whole & 1 == 1)
     forward = (across if start is WALL else start.slope * across - start.psi * along) * half > 0
     in_gap = whole + np.where(forward, crossed, -crossed.astype(np.int64))
     return PhasePoint(start.zeros + np.where(passing, in_band, in_gap), psi, slope)
