@@ -267,17 +267,19 @@ def _in_words(error: Exception) -> str:
     return "Something went wrong within the program; the server's log says what. Undo the last edit to go on."
 
 
-def session(folder: Folder) -> pn.template.Template:
-    """The page of one visitor: called by the server for each."""
+def session(folder: Folder) -> None:
+    """Fill the document of one visitor; called by the server for each."""
+    document = pn.state.curdoc
     wanted = pn.state.session_args.get("scenario", [b""])[0].decode(errors="replace")
     drags = "Mobi" not in pn.state.headers.get("User-Agent", "")
-    document = pn.state.curdoc
-    visit = Session(document, Bench(folder, wanted or None), drags)
-    template = pn.template.Template(_PAGE.read_text(encoding="utf-8"))
-    template.add_variable("variables", css_variables())
-    template.add_panel("wire", visit.wire)
-    for name, figure in visit.board.figures.items():
-        template.add_panel(name, pn.pane.Bokeh(figure, sizing_mode="stretch_both", margin=0))
+    document.title = "Colonnade"
+    document.template = _PAGE.read_text(encoding="utf-8")
+    document.template_variables["variables"] = css_variables()
+    # One look at all models instead of one for each root halves the time to the page.
+    with document.models.freeze():
+        visit = Session(document, Bench(folder, wanted or None), drags)
+        for figure in visit.board.figures:
+            document.add_root(figure)
+        document.template_variables["figures"] = [figure.name for figure in visit.board.figures]
+        visit.wire.server_doc(document, location=False)
     document.on_session_destroyed(lambda context: visit.close())
-    return template
-

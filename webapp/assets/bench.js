@@ -11,10 +11,10 @@ export function startBench(given) {
   app = given
   model("curve").properties.data.change.connect(chooseCurve)
   for (const name of ["profile", "passes", "lattice", "emergence", "dispersion"]) {
-    model(`figure-${name}`).on_event("mousemove", ({ y }) => readAt(y, { fromField: false }))
+    model(name).on_event("mousemove", ({ y }) => readAt(y, { fromField: false }))
   }
   for (const name of ["margins", "emergence"]) {
-    model(`figure-${name}`).on_event("tap", ({ x }) => { if (x >= 0.5) app.chosen(Math.round(x)) })
+    model(name).on_event("tap", ({ x }) => { if (x >= 0.5) app.chosen(Math.round(x)) })
   }
   byId("energy").addEventListener("input", () => readAt(byId("energy").valueAsNumber, { fromField: true }))
   byId("energy").addEventListener("keydown", stepEnergy)
@@ -30,6 +30,7 @@ export function showPeriods(periods, { fromServer }) {
   if (fromServer && sliding && Number(byId("period-slider").value) !== periods) return
   wanted = periods
   byId("periods-shown").textContent = periods === 1 ? "1 period" : `${periods.toLocaleString("en")} periods`
+  byId("pass-verb").textContent = periods === 1 ? "passes" : "pass"
   if (!fromServer) preview(periods)
   chooseCurve()
 }

@@ -80,16 +80,17 @@ function drawRow(part, row) {
     onclick: () => { focusNext = focus; send(type, { path: part.list, index: row.index, ...content }) },
   })
   const at = (index, action) => `${part.list}[${index}]#${action}`
+  const [kind, ...others] = row.fields
   const head = element("div", { class: "row-head" },
     element("i", { class: `swatch ${row.swatch ?? "group"}`, "aria-hidden": "true" }),
-    element("h3", {}, row.name),
+    element("h3", { class: "visually-hidden" }, row.name), field(kind),
     element("span", { class: "row-acts" },
       act("move", "Move up", "up", { by: -1 }, at(row.index - 1, "move-1"), row.index === 0),
       act("move", "Move down", "down", { by: 1 }, at(row.index + 1, "move1"), last),
       act("duplicate", "Duplicate", "copy", {}, at(row.index + 1, "duplicate")),
       act("delete", "Delete", "remove", {}, at(last ? row.index - 1 : row.index, "delete"))))
   return element("li", { class: "row", "aria-label": row.name, "data-row": row.path }, head,
-    element("div", { class: "fields" }, ...row.fields.map(field)),
+    element("div", { class: "fields" }, ...others.map(field)),
     element("p", { class: "resolved", "data-resolved": row.path, hidden: true }),
     row.rows ? element("div", { class: "nested" }, ...list(row)) : null)
 }
@@ -106,7 +107,7 @@ function field(view) {
   if (view.help) control.title = view.help
   const label = element("label", { htmlFor: id, class: view.is_unit ? "visually-hidden" : "" }, view.label)
   const unit = view.unit ? element("span", { class: "unit" }, view.unit) : null
-  const classes = `field ${view.kind}${view.is_unit ? " is-unit" : ""} ${view.path.split(".").pop()}`
+  const classes = `field ${view.kind}${view.is_unit ? " is-unit" : ""} of-${view.path.split(".").pop()}`
   return element("div", { class: classes }, label, element("span", { class: "box" }, control, unit), help, message)
 }
 
@@ -181,7 +182,7 @@ function periodsPart(view) {
   })
   for (const end of ["pointerup", "keyup", "blur"]) slider.addEventListener(end, () => send("settle"))
   const box = field({ ...view, label: "periods of the cell", kind: "number" })
-  return element("section", { class: "periods", "aria-label": "Periods" }, box, slider,
+  return element("section", { class: "count", "aria-label": "Periods" }, box, slider,
     element("span", { class: "ends", "aria-hidden": "true" }, element("span", {}, "1"), element("span", { id: "most" })))
 }
 

@@ -37,13 +37,11 @@ class Board:
         self._version = -1
 
     @property
-    def figures(self) -> dict[str, Any]:
-        """Every figure by its name."""
+    def figures(self) -> tuple[Any, ...]:
+        """Every figure; each is known by its name."""
         page = self.periods
-        return {
-            "profile": self.profile.figure, "passes": self.passes.figure, "lattice": self.lattice.figure,
-            "margins": page.margins.figure, "emergence": page.emergence.figure, "dispersion": page.dispersion.figure,
-        }
+        parts = (self.profile, self.passes, self.lattice, page.margins, page.emergence, page.dispersion)
+        return tuple(part.figure for part in parts)
 
     def paint(self, palette: Palette) -> None:
         """Take on the colours of a theme."""

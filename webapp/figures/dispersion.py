@@ -18,13 +18,13 @@ class DispersionFigure:
     """E over K d of the infinite lattice (line) and the finite stack (points, larger the more they pass)."""
 
     def __init__(self, axis: EnergyAxis, minibands: Minibands, drags: bool) -> None:
-        self.figure: Any = energy_frame("dispersion", axis, PHASE_LABEL, Range1d(-0.02, 1.02), drags)
+        self.figure: Any = energy_frame("dispersion", axis, PHASE_LABEL, Range1d(start=-0.02, end=1.02), drags)
         minibands.shade(self.figure)
         self._lines = ColumnDataSource({"energy": [], "phase": [], "decay": []})
         empty: dict[str, Any] = {"energy": [], "phase": [], "order": [], "transmission": [], "size": []}
         self._points = ColumnDataSource(empty)
         self._phase = self.figure.line("phase", "energy", source=self._lines, line_width=2.5)
-        self._dots = self.figure.scatter("phase", "energy", source=self._points, size="size", line_width=1.5)
+        self._dots = self.figure.scatter("phase", "energy", source=self._points, size="size", line_width=0)
         self.figure.add_tools(HoverTool(renderers=[self._dots], tooltips=[
             ("K d", "@order \N{GREEK SMALL LETTER PI}"), ("E", "@energy{0.000} meV"), ("T", "@transmission{0.0000}")]))
 
@@ -37,7 +37,7 @@ class DispersionFigure:
         order = np.rint(points.phase / math.pi * periods).astype(int)
         self._points.data = {
             "energy": points.energy * MEV, "phase": points.phase / math.pi, "transmission": transmission,
-            "order": [f"{j}/{periods}" for j in order], "size": 4 + 5 * transmission,
+            "order": [f"{j}/{periods}" for j in order], "size": 5 + 4 * transmission,
         }
 
     def clear(self) -> None:
@@ -49,7 +49,7 @@ class DispersionFigure:
         """Take on the colours of a theme."""
         paint_frame(self.figure, palette)
         self._phase.glyph.line_color = palette.cool
-        self._dots.glyph.update(fill_color=palette.warm, line_color=palette.card)
+        self._dots.glyph.update(fill_color=palette.warm, line_color=palette.warm)
 
 
 def describe_points(points: Points, transmission: Floats, periods: int) -> str:

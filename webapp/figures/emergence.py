@@ -17,7 +17,7 @@ class EmergenceFigure:
     """log10 T as a picture over (N, energy), with the infinite lattice's band edges drawn over it."""
 
     def __init__(self, axis: EnergyAxis, minibands: Minibands, marker: Span, drags: bool) -> None:
-        self._x = Range1d(0.5, 60.5)
+        self._x = Range1d(start=0.5, end=60.5)
         self.figure: Any = energy_frame("emergence", axis, "number of periods N", self._x, drags)
         self._source = ColumnDataSource({"image": [], "x": [], "y": [], "width": [], "height": []})
         self._colours = LinearColorMapper(low=-8, high=0, palette=["#000000", "#ffffff"])
@@ -25,7 +25,7 @@ class EmergenceFigure:
                                         color_mapper=self._colours)
         minibands.outline(self.figure)
         self.figure.add_layout(marker)
-        self._bar = ColorBar(color_mapper=self._colours, title="log\u2081\u2080 T", width=10, padding=6,
+        self._bar = ColorBar(color_mapper=self._colours, title="log\u2081\u2080 T", title_standoff=8, width=10, padding=6,
                              label_standoff=6, border_line_color=None)
         self.figure.add_layout(self._bar, "right")
 

@@ -59,7 +59,7 @@ def _frame(name: str, x_label: str, x_range: Range1d, y_range: Range1d, drags: b
     # Without a key held down the wheel keeps scrolling the page.
     wheel = WheelZoomTool(modifiers="ctrl", description="Wheel zoom (hold Ctrl)")
     frame = figure(
-        name=f"figure-{name}", x_range=x_range, y_range=y_range, sizing_mode="stretch_both", toolbar_location="above",
+        name=name, x_range=x_range, y_range=y_range, sizing_mode="stretch_both", toolbar_location="above",
         tools=[zoom, PanTool(), wheel, ResetTool(), SaveTool(filename=f"colonnade-{name}")],
         active_drag=zoom if drags else None, active_scroll=wheel,
         # Fixed borders: frames of different axes would else differ by some pixels, and equal energies with them.

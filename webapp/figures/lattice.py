@@ -6,7 +6,7 @@ import math
 from typing import Any
 
 import numpy as np
-from bokeh.models import ColumnDataSource, HStrip, LinearAxis, Range1d
+from bokeh.models import ColumnDataSource, HStrip, Range1d
 
 from transport import Bands
 from webapp.figures.frame import MEV, EnergyAxis, energy_frame, paint_frame, text_style
@@ -14,25 +14,29 @@ from webapp.results import Lattice, Points
 from webapp.theme import Palette
 
 PHASE_LABEL = "Bloch phase K d / \N{GREEK SMALL LETTER PI}"
-_DECAY_LABEL = "decay \N{GREEK SMALL LETTER KAPPA}d per period (dotted)"
+_BOTH_LABEL = "K d / \N{GREEK SMALL LETTER PI};  in gaps decay \N{GREEK SMALL LETTER KAPPA}d / \N{GREEK SMALL LETTER PI} (dotted)"
+_WIDEST = 2.0
+
+
+_BAND_COLUMNS = ("bottom", "top", "name", "corner", "below")
 
 
 class Minibands:
     """The minibands as shaded strips, one source for every figure that shows them."""
 
     def __init__(self) -> None:
-        self._source = ColumnDataSource({"bottom": [], "top": [], "index": [], "name": [], "middle": []}, name="bands")
+        self._source = ColumnDataSource({name: [] for name in _BAND_COLUMNS}, name="bands")
         self._glyphs: list[Any] = []
         self._names: list[Any] = []
 
     def shade(self, frame: Any, names: bool = False) -> None:
-        """Shade the minibands in a figure, beneath everything else; with `names`, number them there."""
+        """Shade the minibands in a figure, beneath everything else; with `names`, number them at x = 0."""
         glyph = HStrip(y0="bottom", y1="top", fill_alpha=0.55, line_width=1, line_alpha=0.7)
         frame.add_glyph(self._source, glyph, level="underlay")
         self._glyphs.append(glyph)
         if names:
-            self._names.append(frame.text(0.5, "middle", "name", source=self._source, text_align="center",
-                                          text_baseline="middle"))
+            self._names.append(frame.text(0, "corner", "name", source=self._source,
+                                          x_offset=2, y_offset="below"))
 
     def outline(self, frame: Any) -> None:
         """Draw the edges only, over everything else."""
@@ -45,8 +49,10 @@ class Minibands:
         found = bands.bands if bands else ()
         self._source.data = {
             "bottom": [b.bottom * MEV for b in found], "top": [b.top * MEV for b in found],
-            "index": [b.index for b in found], "name": [f"miniband {b.index}" for b in found],
-            "middle": [(b.bottom + b.top) / 2 * MEV for b in found],
+            "name": [f"miniband {b.index}" for b in found],
+            # The corner at K = 0 that the dispersion leaves free: the top of odd bands, the bottom of even ones.
+            "corner": [(b.top if b.index % 2 else b.bottom) * MEV for b in found],
+            "below": [13 if b.index % 2 else -5 for b in found],
         }
 
     def paint(self, palette: Palette) -> None:
@@ -58,21 +64,18 @@ class Minibands:
 
 
 class LatticeFigure:
-    """K d over energy in the bands and the decay in the gaps, with the finite stack's own points."""
+    """K d in the bands, the decay in the gaps, both in units of pi, with the finite stack's own points."""
 
     def __init__(self, axis: EnergyAxis, minibands: Minibands, drags: bool) -> None:
-        self.figure: Any = energy_frame("lattice", axis, PHASE_LABEL, Range1d(-0.02, 1.02), drags)
-        self._decay_range = Range1d(0, 1)
-        self.figure.extra_x_ranges = {"decay": self._decay_range}
-        self.figure.add_layout(LinearAxis(x_range_name="decay", axis_label=_DECAY_LABEL), "above")
+        self._x = Range1d(start=-0.03, end=1.03)
+        self.figure: Any = energy_frame("lattice", axis, _BOTH_LABEL, self._x, drags)
         minibands.shade(self.figure, names=True)
         self._bloch = ColumnDataSource({"energy": [], "phase": [], "decay": []}, name="bloch")
         # No glyph draws these, which the readout needs; as a tag they travel with the figure all the same.
         self.figure.tags = [self._bloch]
         self._lines = ColumnDataSource({"energy": [], "phase": [], "decay": []})
         self._points = ColumnDataSource({"energy": [], "phase": []})
-        self._decay = self.figure.line("decay", "energy", source=self._lines, x_range_name="decay", line_width=2,
-                                       line_dash=[2, 3])
+        self._decay = self.figure.line("decay", "energy", source=self._lines, line_width=2, line_dash=[2, 3])
         self._phase = self.figure.line("phase", "energy", source=self._lines, line_width=2.5)
         self._dots = self.figure.scatter("phase", "energy", source=self._points, size=5, line_width=0)
 
@@ -82,8 +85,8 @@ class LatticeFigure:
         whole = {"energy": found.energy * MEV, "phase": found.phase / math.pi, "decay": found.decay}
         self._bloch.data = whole
         self._lines.data = dispersion_lines(lattice)
-        deepest = float(found.decay.max(initial=0.0))
-        self._decay_range.update(start=0.0, end=1.08 * deepest or 1.0)
+        end = min(max(1.03, 1.05 * float(found.decay.max(initial=0.0)) / math.pi), _WIDEST)
+        self._x.update(end=end, reset_start=-0.03, reset_end=end)
 
     def show_points(self, points: Points) -> None:
         """Draw the finite stack's own points."""
@@ -112,7 +115,7 @@ def dispersion_lines(lattice: Lattice) -> dict[str, Any]:
     # An edge belongs to both lines.
     gap = ~inside | np.isin(energy, [edge for band in edges for edge in (band.bottom, band.top)])
     return {"energy": energy * MEV, "phase": np.where(inside, found.phase / math.pi, math.nan),
-            "decay": np.where(gap, found.decay, math.nan)}
+            "decay": np.where(gap, found.decay / math.pi, math.nan)}
 
 
 def describe_lattice(lattice: Lattice) -> str:

@@ -25,7 +25,7 @@ class MarginsFigure:
     """Margin in dB over N: filled marks meet the target, hollow ones miss it; colour and shape name the window."""
 
     def __init__(self, marker: Span, drags: bool) -> None:
-        self._x, self._y = Range1d(0.5, 60.5), Range1d(-10, 10)
+        self._x, self._y = Range1d(start=0.5, end=60.5), Range1d(start=-10, end=10)
         self.figure: Any = plain_frame("margins", "number of periods N", "least margin (dB)", self._x, self._y, drags)
         self._met = BoxAnnotation(bottom=0, fill_alpha=0.5, line_color=None, level="underlay")
         self._zero = Span(location=0, dimension="width", line_width=1.5)

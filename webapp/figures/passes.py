@@ -36,7 +36,7 @@ class PassesFigure:
     """
 
     def __init__(self, axis: EnergyAxis, drags: bool) -> None:
-        self._x = Range1d(-8, _RIGHT["log"], name="passes-range")
+        self._x = Range1d(start=-8, end=_RIGHT["log"], name="passes-range")
         self.figure: Any = energy_frame("passes", axis, _LABEL, self._x, drags)
         self.scale: Scale = "log"
         self._floor, self._target = -8.0, None  # type: float, Target | None

@@ -17,7 +17,7 @@ class ProfileFigure:
     """Band edge over position, deltas as stems with a head that says which way they point."""
 
     def __init__(self, axis: EnergyAxis, drags: bool) -> None:
-        self._x = Range1d(0, 1)
+        self._x = Range1d(start=0, end=1)
         self.figure: Any = energy_frame("profile", axis, "position along growth (nm)", self._x, drags)
         self._edge = ColumnDataSource({"position": [], "potential": [], "ground": []}, name="profile-source")
         self._deltas = ColumnDataSource({"position": [], "foot": [], "head": [], "marker": []})

@@ -59,6 +59,6 @@ def _present(verdict: Verdict, periods: int) -> str:
     check = verdict.per_period[periods - 1]
     outcome = "meet" if check.meets else "miss"
     verb = outcome + ("es" if outcome == "miss" and periods == 1 else "s" if periods == 1 else "")
-    margin = "" if check.margin_dB is None else f", margin {check.margin_dB:+.1f} dB"
+    margin = "" if check.margin_dB is None else f", margin {check.margin_dB:+.1f} dB".replace("-", "\N{MINUS SIGN}")
     limiting = "" if check.limiting_window is None else f" ({window_name(verdict, check.limiting_window)})"
     return f"This stack: {words} {verb} the target{margin}{limiting}."
