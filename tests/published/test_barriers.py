@@ -24,7 +24,7 @@ def one(layer: Layer | Delta, lead: Lead = LEAD, right: Lead | None = None) -> S
 
 @pytest.mark.parametrize("energy", [0.02, 0.1, 0.2999, 0.3, 0.3001, 0.5, 2.0])
 def test_rectangular_barrier_below_at_and_above_its_top(energy: float) -> None:
-    """1/T = 1 + V^2 sinh^2(kappa d) / 4E(V - E), at E = V its limit: textbook formula for one mass (common practice)."""
+    """1/T = 1 + V^2 sinh^2(kappa d) / 4E(V - E), its limit at E = V: textbook formula (common practice)."""
     d, v, m = mp.mpf(3), mp.mpf("0.3"), mp.mpf("0.067")
     e = mp.mpf(energy)
     if energy == 0.3:
