@@ -132,7 +132,7 @@ def certify(stack: Stack, bands: tuple[Band, ...], between: tuple[float, float])
 
 def band_numbers(stack: Stack, low: float, high: float) -> tuple[int, int]:
     """Index of the first band that ends above `low` and of the last that begins below `high` (first > last: none)."""
-    turning = rotation(Chain(stack, np.array([low, high])))
+    turning = rotation(Chain(lossless(stack), np.array([low, high])))
     below, above = turning.turns
     first = math.floor(below) + 1
     last = math.floor(above) + 1 if turning.passing[1] else round(above)
@@ -174,7 +174,7 @@ def lossless(stack: Stack) -> Stack:
 
 
 def _turns(stack: Stack, energy: Floats) -> Floats:
-    return rotation(Chain(stack, energy)).turns
+    return rotation(Chain(lossless(stack), energy)).turns
 
 
 def _label(stack: Stack, energy: Floats) -> Floats:

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from tests.transport.stacks import ALL, FREE, KANE, LEAD, OPAQUE, PLAIN, barrier, well
+from tests.transport.stacks import ALL, CLOSED_OFF, FREE, KANE, LEAD, LOSSY, OPAQUE, PLAIN, barrier, well
 from transport import Stack, bloch, certify, lattice_bands
 from transport.constants import HBAR, HBAR2_2M0
 
@@ -98,6 +98,10 @@ def test_the_decay_is_what_a_period_costs_deep_in_a_gap() -> None:
     fifty, sixty = (spectrum(PLAIN.with_periods(n), energy).log10_transmission for n in (50, 60))
     per_period = (fifty - sixty) / 10 * np.log(10) / 2
     assert bloch(PLAIN, energy).decay == pytest.approx(per_period, rel=1e-9)
+
+
+def test_bands_are_those_of_the_lossless_lattice() -> None:
+    assert lattice_bands(LOSSY).bands == lattice_bands(CLOSED_OFF).bands
 
 
 def test_a_reversed_range_and_a_crowd_of_bands_are_refused() -> None:
