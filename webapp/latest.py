@@ -14,7 +14,7 @@ Result = TypeVar("Result")
 _log = logging.getLogger("webapp")
 
 
-class Stopped(Exception):  # noqa: N818 - not an error: the work was told to stop
+class Stopped(Exception):
     """Raised within the work once it is told to stop."""
 
 
@@ -49,7 +49,7 @@ class Latest(Generic[Request, Result]):
         interrupts: bool = False,
     ) -> None:
         self._work, self._done, self._failed, self._interrupts = work, done, failed, interrupts
-        self._wanted: Request | None = None
+        self._waiting: list[Request] = []
         self._task: asyncio.Task[None] | None = None
         self._stop = Stop()
 
@@ -60,7 +60,7 @@ class Latest(Generic[Request, Result]):
 
     def ask(self, request: Request) -> None:
         """Want `request` done, in place of any that still waits. Call on the event loop."""
-        self._wanted = request
+        self._waiting = [request]
         if not self.is_busy:
             self._task = asyncio.get_running_loop().create_task(self._run())
         elif self._interrupts:
@@ -68,19 +68,19 @@ class Latest(Generic[Request, Result]):
 
     def cancel(self) -> None:
         """Stop the work in hand and forget what waits; nothing more is handed on."""
-        self._wanted = None
+        self._waiting = []
         self._stop.set()
 
     async def _run(self) -> None:
-        while self._wanted is not None:
-            request, self._wanted = self._wanted, None
+        while self._waiting:
+            request = self._waiting.pop()
             self._stop = stop = Stop()
             try:
                 result = await asyncio.to_thread(self._work, request, stop)
                 stop.check()
             except Stopped:
                 continue
-            except Exception as error:  # the outermost handler of work: what is not foreseen goes to the log
+            except Exception as error:  # noqa: BLE001 - the outermost handler: what is not foreseen goes to the log
                 if not isinstance(error, ValueError):
                     _log.exception("work failed")
                 self._failed(request, error)

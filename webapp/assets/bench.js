@@ -44,14 +44,15 @@ function preview(periods) {
   const energy = rows.data.energy[0]
   const log10 = rows.data.rows[0].slice(index * energy.length, (index + 1) * energy.length)
   const held = model("preview")
-  held.tags = [periods]
-  held.data = { energy, log10, transmission: log10.map((decade) => 10 ** decade) }
+  model("preview-line").tags = [periods]
+  const drawn = model("passes-range").tags[0] === "log" ? log10 : log10.map((decade) => 10 ** decade)
+  held.data = { energy, log10, drawn }
 }
 
 // The exact curve where it is that of the wanted count; else the held one where that is; else the exact one, dimmed.
 function chooseCurve() {
-  const exact = model("curve").tags[0] === wanted
-  const held = !exact && app.mayPreview() && model("preview").tags[0] === wanted
+  const exact = model("curve-line").tags[0] === wanted
+  const held = !exact && app.mayPreview() && model("preview-line").tags[0] === wanted
   model("preview-line").visible = held
   model("curve-line").visible = !held
 }

@@ -167,7 +167,7 @@ function updateField(node, view) {
 }
 
 function updateMessage(place, sentence) {
-  place.textContent = sentence ? `${sentence[0].toUpperCase()}${sentence.slice(1)}.` : ""
+  place.textContent = sentence
   place.hidden = !sentence
 }
 

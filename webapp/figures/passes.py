@@ -7,25 +7,34 @@ from collections.abc import Sequence
 from typing import Any, Literal
 
 import numpy as np
-from bokeh.models import AdaptiveTicker, BasicTicker, ColumnDataSource, CustomJSTickFormatter, NumeralTickFormatter, Range1d
+from bokeh.models import (
+    AdaptiveTicker,
+    BasicTicker,
+    ColumnDataSource,
+    CustomJSTickFormatter,
+    LinearAxis,
+    NumeralTickFormatter,
+    Range1d,
+)
 
 from transport import Target, Window
 from webapp.figures.frame import MEV, EnergyAxis, energy_frame, paint_frame, text_style
-from webapp.results import Emergence, Passage
+from webapp.results import Emergence, Floats, Passage
 from webapp.theme import Palette
 
 Scale = Literal["log", "linear"]
 
-_COLUMN = {"log": "log10", "linear": "transmission"}
+_CURVE = ("energy", "log10", "drawn", "measured")
+_LOWEST_DECADE = -330.0
 _LABEL = "transmission T (share passed)"
 _RIGHT = {"log": 0.35, "linear": 1.06}
 # Powers of ten in figures of their own: a canvas has no markup.
-_POWERS = CustomJSTickFormatter(code="""
+_POWERS = """
     const high = "\u2070\u00b9\u00b2\u00b3\u2074\u2075\u2076\u2077\u2078\u2079"
     if (tick == 0) return "1"
     if (!Number.isInteger(tick)) return ""
     return "10" + String(tick).replace("-", "\u207b").replace(/[0-9]/g, (digit) => high[digit])
-""")
+"""
 
 
 class PassesFigure:
@@ -39,11 +48,12 @@ class PassesFigure:
         self._x = Range1d(start=-8, end=_RIGHT["log"], name="passes-range")
         self.figure: Any = energy_frame("passes", axis, _LABEL, self._x, drags)
         self.scale: Scale = "log"
-        self._floor, self._target = -8.0, None  # type: float, Target | None
-        empty: dict[str, Any] = {"energy": [], "log10": [], "transmission": [], "measured": [], "log10_measured": []}
-        self.curve = ColumnDataSource(empty, name="curve")
+        self._floor = -8.0
+        self._target: Target | None = None
+        # `drawn` is T or its logarithm, as the axis has it; `log10` is for the readout.
+        self._curve = ColumnDataSource({name: [] for name in _CURVE}, name="curve")
         self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
-        self._preview = ColumnDataSource({"energy": [], "log10": [], "transmission": []}, name="preview")
+        self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
         self._brackets = ColumnDataSource({"xs": [], "ys": []})
         self._hatched = ColumnDataSource({"left": [], "right": [], "bottom": [], "top": []})
@@ -53,6 +63,14 @@ class PassesFigure:
         # What the browser does to these is its own affair and is not sent back.
         self._preview.syncable = False
         self._passage: Passage | None = None
+        # Two axes of which one shows: to exchange the parts of one costs a look at every model of the page.
+        self._log_axis = self.figure.xaxis[0]
+        self._log_axis.update(
+            formatter=CustomJSTickFormatter(code=_POWERS),
+            ticker=AdaptiveTicker(min_interval=1, mantissas=[1, 2, 5], desired_num_ticks=5, num_minor_ticks=0))
+        self._linear_axis = LinearAxis(axis_label=_LABEL, formatter=NumeralTickFormatter(format="0.0"),
+                                       ticker=BasicTicker(desired_num_ticks=5, num_minor_ticks=0))
+        self.figure.add_layout(self._linear_axis, "below")
         self._draw()
         self._rescale()
 
@@ -61,9 +79,9 @@ class PassesFigure:
         self._hatching = draw.quad("left", "right", "top", "bottom", source=self._hatched, hatch_pattern="/",
                                    hatch_scale=9, hatch_weight=1, fill_alpha=0.35, line_width=1.5)
         self._between = draw.harea(x1="lower", x2="upper", y="energy", source=self._envelope, fill_alpha=0.5)
-        self._line = draw.line("log10", "energy", source=self.curve, line_width=2, name="curve-line")
-        self._measured = draw.line("log10_measured", "energy", source=self.curve, line_width=2, line_dash=[6, 3])
-        self._held = draw.line("log10", "energy", source=self._preview, line_width=2, name="preview-line",
+        self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
+        self._measured = draw.line("measured", "energy", source=self._curve, line_width=2, line_dash=[6, 3])
+        self._held = draw.line("drawn", "energy", source=self._preview, line_width=2, name="preview-line",
                                visible=False)
         self._line.syncable = self._held.syncable = False
         self._bracket = draw.multi_line("xs", "ys", source=self._brackets, line_width=2.5)
@@ -72,25 +90,35 @@ class PassesFigure:
 
     def show(self, passage: Passage) -> None:
         """Draw the exact curve."""
-        measured = passage.measured if passage.measured is not None else np.zeros(0)
-        full = measured if measured.size else np.full(passage.energy.size, math.nan)
-        with np.errstate(divide="ignore"):
-            decades = np.maximum(np.log10(full), -330)
-        self.curve.update(tags=[passage.periods], data={
-            "energy": passage.energy * MEV, "log10": passage.log10, "transmission": passage.transmission,
-            "measured": full, "log10_measured": decades,
-        })
-        self._measured.visible = bool(measured.size)
-        self._line.glyph.line_alpha = 0.45 if measured.size else 1.0
         self._passage = passage
-        self._show_envelope()
+        self._measured.visible = passage.measured is not None
+        self._line.glyph.line_alpha = 0.45 if self._measured.visible else 1.0
+        self._show_curve()
+
+    def _show_curve(self) -> None:
+        passage, log = self._passage, self.scale == "log"
+        if passage is None:
+            return
+        # First the count, then the curve: its arrival makes the browser look at the count. Tags of the source itself
+        # would start a redrawing of the old data that the new then overtakes.
+        self._line.tags = [passage.periods]
+        measured = np.full(passage.energy.size, math.nan) if passage.measured is None else passage.measured
+        self._curve.data = {
+            "energy": passage.energy * MEV, "log10": passage.log10,
+            "drawn": passage.log10 if log else passage.transmission,
+            "measured": _decades(measured) if log else measured,
+        }
+        lower, upper = (np.zeros(0) if side is None else side for side in (passage.lower, passage.upper))
+        self._envelope.data = {"energy": passage.energy[: lower.size] * MEV, "lower": _decades(lower) if log else lower,
+                               "upper": _decades(upper) if log else upper}
 
     def clear(self) -> None:
         """Take the curve away, and the rows the browser holds."""
         self._passage = None
-        self.curve.update(tags=[-1], data={name: [] for name in self.curve.data})
+        self._line.tags = [-1]
+        for source in (self._curve, self._envelope):
+            source.data = {name: [] for name in source.data}
         self.hold(None, -1)
-        self._show_envelope()
 
     def hold(self, emergence: Emergence | None, version: int) -> None:
         """Give the browser the rows it may show at once, as those of a stack `version`; None takes them away."""
@@ -114,6 +142,7 @@ class PassesFigure:
         """Show T on a logarithmic or a linear axis."""
         self.scale = scale
         self._rescale()
+        self._show_curve()
 
     @property
     def floor(self) -> float:
@@ -121,27 +150,11 @@ class PassesFigure:
         return self._floor
 
     def _rescale(self) -> None:
-        log, column = self.scale == "log", _COLUMN[self.scale]
+        log = self.scale == "log"
         low, high = (self._floor, _RIGHT["log"]) if log else (0.0, _RIGHT["linear"])
         self._x.update(start=low, end=high, reset_start=low, reset_end=high, tags=[self.scale])
-        self._line.glyph.x = self._held.glyph.x = column
-        self._measured.glyph.x = "log10_measured" if log else "measured"
-        axis = self.figure.xaxis[0]
-        axis.formatter = _powers() if log else NumeralTickFormatter(format="0.0")
-        axis.ticker = AdaptiveTicker(min_interval=1, mantissas=[1, 2, 5], desired_num_ticks=5, num_minor_ticks=0) \
-            if log else BasicTicker(desired_num_ticks=5, num_minor_ticks=0)
+        self._log_axis.visible, self._linear_axis.visible = log, not log
         self._show_windows(low, high)
-        self._show_envelope()
-
-    def _show_envelope(self) -> None:
-        passage = self._passage
-        if passage is None or passage.lower is None or passage.upper is None:
-            self._envelope.data = {"energy": [], "lower": [], "upper": []}
-            return
-        sides = {"lower": passage.lower, "upper": passage.upper}
-        if self.scale == "log":
-            sides = {name: np.log10(np.maximum(side, 1e-300)) for name, side in sides.items()}
-        self._envelope.data = {"energy": passage.energy * MEV, **sides}
 
     def _show_windows(self, low: float, high: float) -> None:
         windows = self._target.windows if self._target else ()
@@ -182,8 +195,9 @@ class PassesFigure:
                                 background_fill_alpha=0.8, padding=2)
 
 
-def _powers() -> CustomJSTickFormatter:
-    return _POWERS.clone()
+def _decades(transmission: Floats) -> Floats:
+    with np.errstate(divide="ignore"):
+        return np.asarray(np.maximum(np.log10(transmission), _LOWEST_DECADE))
 
 
 def _caption(window: Window) -> str:
@@ -199,4 +213,5 @@ def describe_passes(passage: Passage, windows: Sequence[Window]) -> str:
     asked = "; ".join(f"{w.kind} {w.bottom * MEV:.6g} to {w.top * MEV:.6g} meV, {_caption(w)}" for w in windows)
     return (f"Transmission of {passage.periods:,} periods from {low:.4g} to {high:.4g} meV: largest "
             f"{passage.transmission[best]:.4g} at {passage.energy[best] * MEV:.5g} meV, smallest "
-            f"1e{passage.log10.min():.1f}. {'Windows: ' + asked + '.' if asked else 'No window is asked.'} {passage.note}")
+            f"1e{passage.log10.min():.1f}. "
+            f"{'Windows: ' + asked + '.' if asked else 'No window is asked.'} {passage.note}")
