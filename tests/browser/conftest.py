@@ -1,0 +1,88 @@
+"""A real server and a real browser: the server as its own process on a copy of the scenarios, a page that is ready."""
+
+from __future__ import annotations
+
+import re
+import shutil
+import subprocess
+import sys
+from collections.abc import Iterator
+from dataclasses import dataclass
+from pathlib import Path
+from typing import IO
+
+import pytest
+from playwright.sync_api import Browser, Page, sync_playwright
+
+from tests.browser.chromium import FLAGS, found
+from webapp.environment import CHECKOUT
+
+ADDRESS = re.compile(r"at (http://\S+)")
+
+
+@dataclass(frozen=True)
+class Served:
+    """A running server: its address and the folder it serves."""
+
+    address: str
+    folder: Path
+
+
+@pytest.fixture(scope="session")
+def browser() -> Iterator[Browser]:
+    place = found(Path(sys.executable))
+    assert place is not None, "no browser: run the tests with python3 -m tests.run, which finds or fetches one"
+    with sync_playwright() as playwright:
+        chromium = playwright.chromium.launch(executable_path=str(place), args=list(FLAGS))
+        yield chromium
+        chromium.close()
+
+
+@pytest.fixture
+def served(tmp_path: Path) -> Iterator[Served]:
+    folder = tmp_path / "scenarios"
+    shutil.copytree(CHECKOUT / "scenarios", folder)
+    command = [sys.executable, "-m", "webapp", "--port", "0", str(folder)]
+    log = tmp_path / "server.log"
+    with log.open("w") as written, subprocess.Popen(
+        command, cwd=CHECKOUT, stdout=subprocess.PIPE, stderr=written, text=True
+    ) as server:
+        assert server.stdout is not None
+        yield Served(_address(server.stdout, log), folder)
+        server.terminate()
+        assert server.wait(timeout=20) == 0, log.read_text()
+    assert "Traceback" not in log.read_text(), log.read_text()
+
+
+def _address(output: IO[str], log: Path) -> str:
+    """The address a server prints when it is ready; its log if it dies before."""
+    for line in output:
+        if named := ADDRESS.search(line):
+            return named[1]
+    raise AssertionError(f"the server ended before it was ready:\n{log.read_text()}")
+
+
+@pytest.fixture
+def page(browser: Browser, served: Served) -> Iterator[Page]:
+    """The start page, ready; afterwards no error may stand in its console and no request may have left the server."""
+    context = browser.new_context(viewport={"width": 1280, "height": 800})
+    visited = context.new_page()
+    faults: list[str] = []
+    visited.on("console", lambda message: faults.append(message.text) if message.type == "error" else None)
+    visited.on("pageerror", lambda error: faults.append(str(error)))
+    visited.on("request", lambda request: None if _local(request.url, served) else faults.append(request.url))
+    visited.goto(served.address)
+    ready(visited)
+    yield visited
+    context.close()
+    assert not faults
+
+
+def _local(url: str, served: Served) -> bool:
+    return url.startswith((served.address, served.address.replace("http", "ws"), "data:", "blob:"))
+
+
+def ready(page: Page) -> None:
+    """Wait until the figures show the scenario."""
+    page.wait_for_selector("body[data-ready=yes]")
+    page.wait_for_function("() => window.Bokeh.documents.length && window.Bokeh.documents.every((d) => d.is_idle)")
