@@ -58,7 +58,8 @@ def _starts(browser: Path) -> bool:
     if not browser.is_file():
         return False
     with tempfile.TemporaryDirectory(ignore_cleanup_errors=True) as profile:
-        trial: list[str | Path] = [browser, "--headless", *FLAGS, f"--user-data-dir={profile}", "--dump-dom", "about:blank"]
+        flags = (*FLAGS, f"--user-data-dir={profile}")
+        trial: list[str | Path] = [browser, "--headless", *flags, "--dump-dom", "about:blank"]
         try:
             return subprocess.run(trial, capture_output=True, timeout=60, check=False).returncode == 0
         except subprocess.TimeoutExpired:

@@ -46,7 +46,9 @@ def test_the_program_runs(monkeypatch: pytest.MonkeyPatch) -> None:
 
 
 @pytest.mark.parametrize("command", blocks("console")[0].splitlines())
-def test_every_command_answers(command: str, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> None:
+def test_every_command_answers(
+    command: str, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
     monkeypatch.chdir(CHECKOUT)
     words = shlex.split(command)
     assert words[:3] == ["python3", "-m", "transport"]
