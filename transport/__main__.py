@@ -13,7 +13,7 @@ import numpy as np
 from transport import report
 from transport.lattice import default_range, lattice_bands, lowest_energy
 from transport.parameters import PARAMETERS
-from transport.periods import period_verdict
+from transport.periods import no_progress, period_verdict
 from transport.scenario import Scenario, load_scenario
 from transport.spectrum import Spectrum, spectrum
 
@@ -144,8 +144,13 @@ def _bands(scenario: Scenario, options: argparse.Namespace) -> str:
 
 
 def _periods(scenario: Scenario, options: argparse.Namespace) -> str:
-    verdict = period_verdict(scenario, options.most)
+    verdict = period_verdict(scenario, options.most, _told if sys.stderr.isatty() else no_progress)
     return report.to_json(report.verdict_record(verdict)) if options.json else report.verdict_text(verdict)
+
+
+def _told(share: float) -> None:
+    """Progress of long work, on one line of the terminal."""
+    print(f"\r{share:4.0%}", end="" if share < 1 else "\r    \r", file=sys.stderr, flush=True)
 
 
 def _layers(scenario: Scenario, options: argparse.Namespace) -> str:

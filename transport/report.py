@@ -95,7 +95,8 @@ def layers_record(scenario: Scenario) -> Record:
     return {
         "layers": [
             {"where": row.where, "material": row.material, "x": row.x, "thickness_nm": row.thickness,
-             "monolayers": row.monolayers, "band_edge_eV": row.band_edge, "mass": row.mass}
+             "monolayers": row.monolayers, "band_edge_eV": row.band_edge, "mass": row.mass,
+             "delta_eV_nm": row.strength}
             for row in scenario.sheet
         ],
         "warnings": list(scenario.warnings),

@@ -10,8 +10,6 @@ from pathlib import Path
 from typing import Any, NoReturn
 
 HIGHEST_PORT = 65_535
-UNUSED_SESSION_S = 15
-"""How long a session is kept after its browser has gone; a reload within that time finds the server quick."""
 
 
 class _Parser(argparse.ArgumentParser):
@@ -35,7 +33,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except ScenarioError as error:
         print(error, file=sys.stderr)
     except OSError as error:
-        print(f"--port: {options.port} on {options.host} cannot be served ({error.strerror}); choose another with --port",
+        print(f"--host, --port: {options.host}:{options.port} cannot be served ({error.strerror}); choose another port",
               file=sys.stderr)
     return 2
 
@@ -57,23 +55,16 @@ def _port(text: str) -> int:
 
 
 def _serve(folder: Any, options: argparse.Namespace) -> int:
-    import panel as pn
+    from webapp.server import server
 
-    from webapp.app import session
-
-    assets = Path(__file__).parent / "assets"
-    server = pn.serve(
-        {"/": lambda: session(folder)}, address=options.host, port=options.port, show=options.open, start=False,
-        title="Colonnade", verbose=False, liveness=True, static_dirs={"assets": str(assets)},
-        unused_session_lifetime_milliseconds=UNUSED_SESSION_S * 1000,
-    )
+    served = server(folder, options.host, options.port, options.open)
     for number in (signal.SIGINT, signal.SIGTERM):
-        signal.signal(number, lambda *_: server.io_loop.add_callback_from_signal(server.io_loop.stop))
-    server.start()
-    print(f"Colonnade serves {folder.path} at http://{_shown(options.host)}:{server.port}  (Ctrl-C stops it)",
+        signal.signal(number, lambda *_: served.io_loop.add_callback_from_signal(served.io_loop.stop))
+    served.start()
+    print(f"Colonnade serves {folder.path} at http://{_shown(options.host)}:{served.port}  (Ctrl-C stops it)",
           flush=True)
-    server.io_loop.start()
-    server.stop(wait=False)
+    served.io_loop.start()
+    served.stop(wait=False)
     return 0
 
 

@@ -29,6 +29,7 @@ from webapp.work import Pictures, Wanted, pictures, verdict
 _PAGE = Path(__file__).parent / "page.html"
 _POLL = 0.2
 _SLOW = 0.3
+_PAUSE = 0.08
 
 _log = logging.getLogger("webapp")
 
@@ -44,6 +45,8 @@ class Session:
         self._verdict: Verdict | None = None
         self._verdict_state = "none"
         self._held: tuple[object, ...] = ()
+        self._wanted: Wanted | None = None
+        self._page: asyncio.TimerHandle | None = None
         self._span = natural_span(question(bench.scenario))
         self.board = Board(self._span, drags)
         self.board.paint(LIGHT)
@@ -60,17 +63,17 @@ class Session:
         """The visitor has gone."""
         for worker in (self._pictures, self._verdicts, self._listing):
             worker.cancel()
+        if self._page is not None:
+            self._page.cancel()
 
     # From the browser.
 
     def hear(self, data: object) -> None:
         """Act on one message of the browser."""
-        message = say.read(data)
-        self._seq = message.seq
-        with hold(self._document):
-            self._act(message)
+        self._later(self._act)(say.read(data))
 
     def _act(self, message: say.Any) -> None:
+        self._seq = message.seq
         match message:
             case say.Hello(theme=theme):
                 self._paint(theme)
@@ -96,6 +99,9 @@ class Session:
             case say.Slide(periods=periods):
                 self._bench.slide(periods)
                 self._follow(rail=False)
+            case say.Settle():
+                self._bench.settle()
+                self.wire.tell(status=self._status())
             case _:
                 self._edit(message)
 
@@ -106,8 +112,6 @@ class Session:
                 bench.set(path, text)
             case say.Revert(path=path):
                 bench.revert(path)
-            case say.Settle():
-                bench.settle()
             case say.Layer(path=path, index=index):
                 bench.add_layer(path, index)
             case say.Window(kind=kind):
@@ -135,14 +139,13 @@ class Session:
         key = (asked.stack, most_periods(asked.target), self._span)
         if key != self._held:
             self._held, self._version = key, self._version + 1
-        self.board.passes.ask(asked.target)
-        self.board.periods.mark(self._bench.scenario.stack.periods)
         if rail:
             self._tell_rail()
         else:
             self.wire.tell(status=self._status())
         self._ask_pictures()
         if asked != self._question:
+            self.board.passes.ask(asked.target)
             self._ask_verdict(asked)
         else:
             self._tell_verdict()
@@ -184,7 +187,7 @@ class Session:
     # The work behind the figures.
 
     def _later(self, show: Callable[..., None]) -> Callable[..., None]:
-        """A result's way to the figures: with the document's lock, as one change."""
+        """The way of messages and results to the figures: in turn, with the document's lock, as one change."""
 
         def locked(*arguments: Any) -> None:
             with hold(self._document):
@@ -204,17 +207,26 @@ class Session:
         room = 0.25 * (high - low)
         span = (min(self._span[0], low), max(self._span[1], high))
         view = (max(low - room, span[0]), min(high + room, span[1]))
-        self._pictures.ask(Wanted(self._bench.scenario, span, view, self._version))
+        wanted = Wanted(self._bench.scenario, span, view, self._version)
+        if wanted != self._wanted:
+            self._wanted = wanted
+            self._pictures.ask(wanted)
 
     def _show_pictures(self, wanted: Wanted, found: Pictures) -> None:
         texts = self.board.show(wanted, found)
-        self.wire.tell(pictured={"version": wanted.version, "periods": found.passage.periods, "fault": ""},
-                       texts=texts)
+        self.wire.tell(pictured={"version": wanted.version, "fault": ""}, texts=texts)
+        if self._page is not None:
+            self._page.cancel()
+        # The figures of the page, further down, wait until the slider pauses: the bench has the browser to itself.
+        self._page = asyncio.get_running_loop().call_later(
+            _PAUSE, lambda: self._later(self._show_page)(wanted, found))
+
+    def _show_page(self, wanted: Wanted, found: Pictures) -> None:
+        self.wire.tell(texts=self.board.show_page(wanted, found))
 
     def _fail_pictures(self, wanted: Wanted, error: Exception) -> None:
         self.board.clear()
-        self.wire.tell(pictured={"version": wanted.version, "periods": wanted.scenario.stack.periods,
-                                 "fault": _in_words(error)})
+        self.wire.tell(pictured={"version": wanted.version, "fault": _in_words(error)})
 
     def _ask_verdict(self, asked: Question) -> None:
         self._question, self._share, self._verdict_state = asked, 0.0, "working"

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import functools
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -34,11 +35,12 @@ Span = tuple[float, float]
 
 MOST_DRAWN_PERIODS = 400
 """Periods that the profile draws, and for which the finite stack's own points are told apart."""
+_TABLED_PERIODS = 60
 MOST_ROWS = 240
 """Counts of periods whose transmission the browser holds."""
 _PIXELS = 640
 """Energies of the emergence picture."""
-_BINS = 1600
+_BINS = 800
 """Energies a curve is thinned to: least and largest value of each bin are kept, so that no peak is lost."""
 _PER_BAND, _PER_SPAN = 512, 512
 _LOWEST_DECADE = -330.0
@@ -77,12 +79,18 @@ def natural_span(question: Question) -> Span:
     return max(low - 0.03 * (high - low), -limit), min(high, limit)
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Lattice:
     """The infinite lattice over a span: bands with their certificate, and Bloch phase and decay at many energies."""
 
     bands: Bands
     bloch: Bloch
+
+    @functools.cached_property
+    def table(self) -> tuple[Floats, Floats]:
+        """Every j/N that a slider passes, and the bands' energies there: looked for at once, which costs the least."""
+        share = np.unique(np.concatenate([np.arange(1, n) / n for n in range(2, _TABLED_PERIODS + 1)]))
+        return share, self.bands.energies(share * np.pi)
 
 
 @functools.lru_cache(maxsize=32)
@@ -100,7 +108,7 @@ def _crowded(bands: Bands, span: Span) -> Floats:
     edges = [edge for band in bands.bands for edge in (band.bottom, band.top)]
     turns = (1 - np.cos(np.linspace(0, np.pi, 97))) / 2
     corners = np.unique(np.clip([*span, *edges], *span))
-    return np.unique(np.concatenate([low + (high - low) * turns for low, high in zip(corners, corners[1:])]))
+    return np.unique(np.concatenate([low + (high - low) * turns for low, high in pairwise(corners)]))
 
 
 @dataclass(frozen=True, slots=True)
@@ -153,12 +161,20 @@ class Points:
     energy: Floats
 
 
-def points(bands: Bands, periods: int) -> Points:
+def points(infinite: Lattice, periods: int) -> Points:
     """Bloch phases j pi/N, j = 1 to N - 1, and their energies (eV), band after band; none for very many periods."""
+    bands = infinite.bands
     if periods > MOST_DRAWN_PERIODS or periods < 2 or not bands.bands:
         return Points(np.zeros(0), np.zeros(0))
-    phase = np.arange(1, periods) * (np.pi / periods)
-    return Points(np.tile(phase, len(bands.bands)), bands.energies(phase).ravel())
+    share = np.arange(1, periods) / periods
+    energy = _tabled(infinite, share) if periods <= _TABLED_PERIODS else bands.energies(share * np.pi)
+    return Points(np.tile(share * np.pi, len(bands.bands)), energy.ravel())
+
+
+def _tabled(infinite: Lattice, share: Floats) -> Floats:
+    """Energies of the bands at phases of the table: equal fractions are equal floats."""
+    tabled, energy = infinite.table
+    return np.asarray(energy[:, np.searchsorted(tabled, share)])
 
 
 def drawn_profile(stack: Stack) -> Profile:

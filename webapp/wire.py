@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from panel.custom import JSComponent
+from panel.models.esm import ESMEvent
 
 
 class Wire(JSComponent):  # type: ignore[misc]
@@ -24,4 +25,7 @@ class Wire(JSComponent):  # type: ignore[misc]
 
     def tell(self, **parts: Any) -> None:
         """Send parts of the page, each plain data under its name."""
-        self._send_msg(json.dumps(parts, ensure_ascii=False, allow_nan=False))
+        text = json.dumps(parts, ensure_ascii=False, allow_nan=False)
+        for model, _ in self._models.values():
+            # Not _send_msg: this way the message travels with the changes of the figures made under the same lock.
+            model.document.callbacks.send_event(ESMEvent(model=model, data=text))

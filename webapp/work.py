@@ -53,7 +53,7 @@ def pictures(wanted: Wanted, stop: Stop) -> Pictures:
     stack = scenario.stack
     infinite = lattice(asked.stack, wanted.span)
     passed = passage(stack, wanted.view, scenario.resolution)
-    own = points(infinite.bands, stack.periods)
+    own = points(infinite, stack.periods)
     return Pictures(
         drawn_profile(stack), infinite, passed, own, spectrum(stack, own.energy).transmission,
         emergence(asked.stack, most_periods(asked.target), wanted.span),

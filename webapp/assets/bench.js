@@ -37,7 +37,6 @@ export function showPeriods(periods, { fromServer }) {
 
 function preview(periods) {
   const rows = model("rows")
-  model("periods-marker").location = periods
   if (!app.mayPreview()) return
   const index = Array.prototype.indexOf.call(rows.data.counts[0], periods)
   if (index < 0) return

@@ -176,13 +176,14 @@ function updateMessage(place, sentence) {
 function periodsPart(view) {
   const slider = element("input", { type: "range", id: "period-slider", min: 1, step: 1, "aria-label": "Number of periods" })
   slider.addEventListener("input", () => {
-    byId(`field-${view.path}`).value = slider.value
-    showPeriods(Number(slider.value), { fromServer: false })
     send("slide", { periods: Number(slider.value) })
+    showPeriods(Number(slider.value), { fromServer: false })
+    const box = byId(`field-${view.path}`)
+    box.value = box.dataset.valid = slider.value
   })
   for (const end of ["pointerup", "keyup", "blur"]) slider.addEventListener(end, () => send("settle"))
-  const box = field({ ...view, label: "periods of the cell", kind: "number" })
-  return element("section", { class: "count", "aria-label": "Periods" }, box, slider,
+  return element("section", { class: "count", "aria-label": "Periods" },
+    field({ ...view, label: "periods of the cell", kind: "number" }), slider,
     element("span", { class: "ends", "aria-hidden": "true" }, element("span", {}, "1"), element("span", { id: "most" })))
 }
 

@@ -13,7 +13,7 @@ from webapp.figures.margins import describe_margins
 from webapp.figures.passes import PassesFigure, describe_passes
 from webapp.figures.profile import ProfileFigure, describe_profile
 from webapp.pages.periods import PeriodsPage
-from webapp.results import Span
+from webapp.results import Emergence, Lattice, Span
 from webapp.theme import Palette
 from webapp.work import Pictures, Wanted
 
@@ -33,7 +33,8 @@ class Board:
         self.periods = PeriodsPage(self.axis, self.minibands, drags)
         self.minibands.shade(self.profile.figure)
         self.minibands.shade(self.passes.figure)
-        self._lattice: object = None
+        self._lattice: Lattice | None = None
+        self._emergence: Emergence | None = None
         self._version = -1
 
     @property
@@ -49,29 +50,38 @@ class Board:
             part.paint(palette)
 
     def show(self, wanted: Wanted, found: Pictures) -> Texts:
-        """Draw what was found, and only what has changed; returns the figures in words."""
-        stack, dispersion = wanted.scenario.stack, self.periods.dispersion
+        """Draw the bench, and of it only what has changed; returns its figures in words."""
+        stack = wanted.scenario.stack
         self.profile.show(found.profile, wanted.span)
         self.passes.show(found.passage)
         if found.lattice is not self._lattice:
             self._lattice = found.lattice
             self.minibands.show(found.lattice.bands)
             self.lattice.show(found.lattice)
-            dispersion.show(found.lattice)
         self.lattice.show_points(found.points)
-        dispersion.show_points(found.points, found.at_points, stack.periods)
         if wanted.version != self._version:
             self._version = wanted.version
             self.passes.hold(found.emergence, wanted.version)
-            self.periods.emergence.show(found.emergence, self.passes.floor)
         windows = wanted.scenario.target.windows if wanted.scenario.target else ()
         return {
             "profile": describe_profile(stack, found.profile),
             "passes": describe_passes(found.passage, windows),
             "lattice": describe_lattice(found.lattice),
-            "emergence": describe_emergence(found.emergence),
-            "dispersion": describe_points(found.points, found.at_points, stack.periods),
             "certificate": found.lattice.bands.certificate.sentence,
+        }
+
+    def show_page(self, wanted: Wanted, found: Pictures) -> Texts:
+        """Draw the figures of the page, and of them only what has changed; returns them in words."""
+        page, periods = self.periods, wanted.scenario.stack.periods
+        page.mark(periods)
+        page.dispersion.show_points(found.points, found.at_points, periods)
+        if found.emergence is not self._emergence:
+            self._emergence = found.emergence
+            page.emergence.show(found.emergence, self.passes.floor)
+            page.dispersion.show(found.lattice)
+        return {
+            "emergence": describe_emergence(found.emergence),
+            "dispersion": describe_points(found.points, found.at_points, periods),
         }
 
     def show_verdict(self, verdict: Verdict | None) -> Texts:
@@ -81,7 +91,7 @@ class Board:
 
     def clear(self) -> None:
         """Take away what belongs to a stack that cannot be worked out."""
-        self._lattice, self._version = None, -1
+        self._lattice, self._emergence, self._version = None, None, -1
         self.minibands.show(None)
         for part in (self.passes, self.lattice, self.periods.emergence, self.periods.dispersion):
             part.clear()

@@ -24,7 +24,7 @@ from webapp.theme import Palette
 
 Scale = Literal["log", "linear"]
 
-_CURVE = ("energy", "log10", "drawn", "measured")
+_CURVE = ("energy", "log10", "drawn")
 _LOWEST_DECADE = -330.0
 _LABEL = "transmission T (share passed)"
 _RIGHT = {"log": 0.35, "linear": 1.06}
@@ -52,6 +52,7 @@ class PassesFigure:
         self._target: Target | None = None
         # `drawn` is T or its logarithm, as the axis has it; `log10` is for the readout.
         self._curve = ColumnDataSource({name: [] for name in _CURVE}, name="curve")
+        self._beam = ColumnDataSource({"energy": [], "drawn": []})
         self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
         self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
@@ -80,7 +81,7 @@ class PassesFigure:
                                    hatch_scale=9, hatch_weight=1, fill_alpha=0.35, line_width=1.5)
         self._between = draw.harea(x1="lower", x2="upper", y="energy", source=self._envelope, fill_alpha=0.5)
         self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
-        self._measured = draw.line("measured", "energy", source=self._curve, line_width=2, line_dash=[6, 3])
+        self._measured = draw.line("drawn", "energy", source=self._beam, line_width=2, line_dash=[6, 3])
         self._held = draw.line("drawn", "energy", source=self._preview, line_width=2, name="preview-line",
                                visible=False)
         self._line.syncable = self._held.syncable = False
@@ -91,8 +92,7 @@ class PassesFigure:
     def show(self, passage: Passage) -> None:
         """Draw the exact curve."""
         self._passage = passage
-        self._measured.visible = passage.measured is not None
-        self._line.glyph.line_alpha = 0.45 if self._measured.visible else 1.0
+        self._line.glyph.line_alpha = 1.0 if passage.measured is None else 0.45
         self._show_curve()
 
     def _show_curve(self) -> None:
@@ -102,21 +102,19 @@ class PassesFigure:
         # First the count, then the curve: its arrival makes the browser look at the count. Tags of the source itself
         # would start a redrawing of the old data that the new then overtakes.
         self._line.tags = [passage.periods]
-        measured = np.full(passage.energy.size, math.nan) if passage.measured is None else passage.measured
-        self._curve.data = {
-            "energy": passage.energy * MEV, "log10": passage.log10,
-            "drawn": passage.log10 if log else passage.transmission,
-            "measured": _decades(measured) if log else measured,
-        }
-        lower, upper = (np.zeros(0) if side is None else side for side in (passage.lower, passage.upper))
-        self._envelope.data = {"energy": passage.energy[: lower.size] * MEV, "lower": _decades(lower) if log else lower,
-                               "upper": _decades(upper) if log else upper}
+        drawn = passage.log10 if log else passage.transmission
+        self._curve.data = {"energy": passage.energy * MEV, "log10": passage.log10.astype(np.float32),
+                            "drawn": drawn.astype(np.float32)}
+        beam, lower, upper = (np.zeros(0) if side is None else _decades(side) if log else side
+                              for side in (passage.measured, passage.lower, passage.upper))
+        _replace(self._beam, {"energy": passage.energy[: beam.size] * MEV, "drawn": beam})
+        _replace(self._envelope, {"energy": passage.energy[: lower.size] * MEV, "lower": lower, "upper": upper})
 
     def clear(self) -> None:
         """Take the curve away, and the rows the browser holds."""
         self._passage = None
         self._line.tags = [-1]
-        for source in (self._curve, self._envelope):
+        for source in (self._curve, self._beam, self._envelope):
             source.data = {name: [] for name in source.data}
         self.hold(None, -1)
 
@@ -193,6 +191,12 @@ class PassesFigure:
                                     fill_color=palette.target_tint)
         self._name.glyph.update(**text_style(palette.target), background_fill_color=palette.card,
                                 background_fill_alpha=0.8, padding=2)
+
+
+def _replace(source: ColumnDataSource, data: dict[str, Any]) -> None:
+    """Set a source's data, unless it stays empty: the browser would draw the figure's lines once more for nothing."""
+    if len(data["energy"]) or len(source.data["energy"]):
+        source.data = data
 
 
 def _decades(transmission: Floats) -> Floats:

@@ -31,7 +31,8 @@ class ProfileFigure:
         position, potential = profile.position, profile.potential * MEV
         ground = np.full_like(position, min(span[0] * MEV, float(potential.min())))
         self._edge.data = {"position": position, "potential": potential, "ground": ground}
-        self._deltas.data = _stems(profile, 0.3 * (span[1] - span[0]) * MEV)
+        if profile.deltas or len(self._deltas.data["position"]):
+            self._deltas.data = _stems(profile, 0.3 * (span[1] - span[0]) * MEV)
         self._x.update(start=float(position[0]), end=float(position[-1]), reset_start=float(position[0]),
                        reset_end=float(position[-1]))
 
