@@ -55,9 +55,10 @@ def _with_turning_points(
     stencil = np.clip(interval - 1, first, last - 4) + np.arange(4)[:, None]
     origin, scale = energy[interval], energy[interval + 1] - energy[interval]
     turns = _cubic_turns((energy[stencil] - origin) / scale, value[stencil])
-    inside = (turns > 0) & (turns < 1)
-    places = np.broadcast_to(interval + 1, turns.shape)[inside]
-    added = (origin + scale * turns)[inside]
+    found = origin + scale * turns
+    inside = (found > energy[interval]) & (found < energy[interval + 1])
+    inside[1] &= found[1] != found[0]
+    places, added = np.broadcast_to(interval + 1, turns.shape)[inside], found[inside]
     order = np.lexsort((added, places))
     places, added = places[order], added[order]
     rows = row[places - 1]
@@ -101,8 +102,8 @@ def _dips(function: RowFunction, row: Rows, x: Floats, f: Floats) -> tuple[Float
 
 def _parabola_vertex(x: Floats, f: Floats) -> Floats:
     left, right = x[1] - x[0], x[2] - x[1]
-    rise, fall = (f[2] - f[1]) / right, (f[1] - f[0]) / left
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+        rise, fall = (f[2] - f[1]) / right, (f[1] - f[0]) / left
         return np.asarray(x[1] - (rise * left + fall * right) / (2 * (rise - fall)))
 
 

@@ -87,6 +87,10 @@ def window_in_words(window: Window) -> str:
     return f"{window.kind} {window.bottom * 1e3:.6g}\N{EN DASH}{window.top * 1e3:.6g} meV"
 
 
+_ROUNDING = 1e-10
+"""A margin smaller than this (dB) is met exactly: T = 1 comes out a few 1e-16 below."""
+
+
 def no_progress(share: float) -> None:
     """Take no notice of how far the work is."""
 
@@ -139,6 +143,7 @@ def _record(
 ) -> WindowHistory:
     values = window_values(stack, window, counts, resolution, progress)
     margin = 10 * (values.log10 - math.log10(window.transmission))
+    margin = np.where(abs(margin) < _ROUNDING, 0.0, margin)
     if window.kind == "block":
         margin = -margin
     record = WindowHistory(window, values.log10, values.energy, margin, None)

@@ -93,7 +93,7 @@ def _neighbours(stack: Stack, window: Window) -> str:
         if above and (below or window.bottom - reach < threshold(stack)):
             break
         reach *= 2
-    words = [f"{b.name} ({b.bottom * 1e3:.4g}{DASH}{b.top * 1e3:.4g} meV)" for b in (below[-1:] + above[:1])]
+    words = [f"{b.name} ({_span(b)})" for b in (below[-1:] + above[:1])]
     return ("between " if len(words) == 2 else "beside ") + " and ".join(words) if words else "far from any"
 
 
@@ -119,7 +119,7 @@ def _block_cause(stack: Stack, record: WindowHistory) -> str:
         overlap = min(band.top, window.top) - max(band.bottom, window.bottom)
         if overlap > 0 and band.top > threshold(stack):
             return (
-                f"{_name(window)} overlaps {band.name} ({band.bottom * 1e3:.4g}{DASH}{band.top * 1e3:.4g} meV) by "
+                f"{_name(window)} overlaps {band.name} ({_span(band)}) by "
                 f"{overlap * 1e3:.3g} meV, which stays open however many periods: move the window or the miniband"
             )
     peak = float(record.energy[-1])
@@ -176,5 +176,14 @@ def _name(window: Window) -> str:
     return f"the {window.kind} window {window.bottom * 1e3:.6g}{DASH}{window.top * 1e3:.6g} meV"
 
 
+def _span(band: Miniband) -> str:
+    return f"{_number(band.bottom)}{DASH}{_number(band.top)} meV"
+
+
 def _meV(energy: float) -> str:
-    return f"{energy * 1e3:.4g} meV"
+    return f"{_number(energy)} meV"
+
+
+def _number(energy: float) -> str:
+    """An energy (eV) in meV, to four digits and not beyond 0.0001."""
+    return f"{round(energy * 1e3, 4) + 0.0:.4g}"

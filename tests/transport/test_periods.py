@@ -5,7 +5,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 import pytest
 
-from tests.transport.stacks import CLOSED_OFF, END_WELLS, LEAD, LOSSY, PLAIN, UNEQUAL, barrier, well
+from tests.transport.stacks import CLOSED_OFF, END_WELLS, FREE, LEAD, LOSSY, PLAIN, UNEQUAL, barrier, well
 from transport import (
     Stack,
     Target,
@@ -155,6 +155,19 @@ def test_with_a_beam_resolution_the_measured_curve_is_judged() -> None:
         assert found.per_period[periods - 1].values[0] == pytest.approx(value, rel=1e-6)
     late = period_verdict(Asked(CLOSED_OFF, Target((window,), 150), width))
     assert late.per_period[-1].values[0] == pytest.approx(late.ripple_floor, rel=1e-3)
+
+
+def test_a_window_that_asks_for_all_is_met_where_all_passes() -> None:
+    found = verdict(FREE, passing(0.05, 0.4, 1.0), most=3)
+    assert found.fewest == 1 and found.per_period[0].margin_dB == 0
+
+
+@pytest.mark.filterwarnings("error")
+@pytest.mark.parametrize("measure", ["minimum", "mean"])
+def test_windows_from_the_lead_edge_itself_are_decided_without_a_warning(measure: str) -> None:
+    for stack in (CLOSED_OFF, UNEQUAL, FREE):
+        found = verdict(stack, passing(0.0, 0.05, 0.1, measure), blocking(0.0, 0.05, 0.1), most=4)
+        assert all(c.margin_dB is None or np.isfinite(c.margin_dB) for c in found.per_period)
 
 
 def test_a_floor_is_null_where_no_window_lies_in_a_miniband() -> None:
