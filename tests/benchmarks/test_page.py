@@ -15,7 +15,7 @@ from pathlib import Path
 from playwright.sync_api import Page
 
 from tests.benchmarks.harness import machine
-from tests.browser.conftest import Served, browser, page, ready, served
+from tests.browser.conftest import browser, page, ready, served
 from webapp.environment import CHECKOUT
 
 __all__ = ["browser", "page", "served"]
