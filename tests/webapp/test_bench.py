@@ -146,7 +146,8 @@ def test_an_empty_folder_begins_with_a_new_scenario(tmp_path: Path) -> None:
 
 def test_only_messages_of_the_page_are_read() -> None:
     assert read({"type": "slide", "seq": 3, "periods": 9}) == Slide(seq=3, periods=9)
-    for junk in ({}, {"type": "nothing", "seq": 1}, {"type": "slide", "seq": 1, "periods": "9"}, [], None):
+    lies: list[object] = [{}, {"type": "nothing", "seq": 1}, {"type": "slide", "seq": 1, "periods": "9"}, [], None]
+    for junk in lies:
         with pytest.raises(msgspec.ValidationError):
             read(junk)
 
