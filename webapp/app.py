@@ -72,7 +72,7 @@ class Session:
         """Act on one message of the browser."""
         self._later(self._act)(say.read(data))
 
-    def _act(self, message: say.Any) -> None:
+    def _act(self, message: say.AnyMessage) -> None:
         self._seq = message.seq
         match message:
             case say.Hello(theme=theme):
@@ -105,7 +105,7 @@ class Session:
             case _:
                 self._edit(message)
 
-    def _edit(self, message: say.Any) -> None:
+    def _edit(self, message: say.AnyMessage) -> None:
         bench, place = self._bench, self._bench.place
         match message:
             case say.Set(path=path, text=text):
@@ -172,7 +172,8 @@ class Session:
     def _tell_rail(self) -> None:
         scenario = self._bench.scenario
         self.wire.tell(status=self._status(), rail=Rail(self._bench).view(), about={
-            "title": scenario.title, "note": scenario.note, "cautions": scenario.warnings})
+            "title": scenario.title, "note": scenario.note, "cautions": scenario.warnings,
+            "beam": f"dashed: seen at {scenario.resolution * 1e3:g} meV" if scenario.resolution else ""})
 
     def _tell_verdict(self) -> None:
         view = verdict_view(self._verdict, self._bench.scenario.stack.periods, self._palette)

@@ -122,11 +122,11 @@ class Again(Message, frozen=True):
     """Work out the verdict after all."""
 
 
-Any = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo | Redo
-       | Browse | Open | Save | Cancel | Again)
-"""Any message."""
+AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
+              | Redo | Browse | Open | Save | Cancel | Again)
 
 
-def read(data: object) -> Any:
+def read(data: object) -> AnyMessage:
     """The message that plain data of the browser holds. Raises msgspec.ValidationError for anything else."""
-    return msgspec.convert(data, Any)
+    message: AnyMessage = msgspec.convert(data, AnyMessage)
+    return message

@@ -14,7 +14,7 @@ FONT = "'Inter', 'Segoe UI', 'Helvetica Neue', 'Liberation Sans', system-ui, san
 
 @dataclass(frozen=True, slots=True)
 class Palette:
-    """Colours of one theme; `heat` runs from no transmission to full transmission."""
+    """Colours of one theme; `heat` runs from no transmission to full, `marker` shows on every part of it."""
 
     name: str
     page: str
@@ -37,6 +37,7 @@ class Palette:
     missed: str
     missed_tint: str
     focus: str
+    marker: str
     shadow: str
     heat: tuple[str, ...]
     windows: tuple[str, ...]
@@ -49,7 +50,7 @@ LIGHT = Palette(
     cool="#1b7691", cool_deep="#0f5468", cool_tint="#d8ecf2",
     target="#41385e", target_tint="#ebe8f3",
     met="#24734a", met_tint="#e2f2e9", missed="#a32457", missed_tint="#fae6ee",
-    focus="#1b7691", shadow="0 1px 2px rgb(40 30 10 / .06), 0 4px 16px rgb(40 30 10 / .05)",
+    focus="#1b7691", marker="#7a5cd6", shadow="0 1px 2px rgb(40 30 10 / .06), 0 4px 16px rgb(40 30 10 / .05)",
     heat=("#fdfaf5", "#fae9d2", "#f6cf9f", "#eeaa68", "#e08240", "#c45c1f", "#9a3d10", "#662407"),
     windows=("#41385e", "#8a6d00", "#a32457", "#4d6a2f", "#6a55b0", "#7a4a3a"),
 )
@@ -61,7 +62,7 @@ DARK = Palette(
     cool="#62bdd6", cool_deep="#a4deee", cool_tint="#163642",
     target="#cfc6ee", target_tint="#2a2640",
     met="#6fcf9b", met_tint="#16301f", missed="#f287b0", missed_tint="#3a1a28",
-    focus="#62bdd6", shadow="0 1px 2px rgb(0 0 0 / .4), 0 4px 16px rgb(0 0 0 / .25)",
+    focus="#62bdd6", marker="#a58cff", shadow="0 1px 2px rgb(0 0 0 / .4), 0 4px 16px rgb(0 0 0 / .25)",
     heat=("#11151a", "#2a1a12", "#4d2a15", "#7c421c", "#b2602a", "#df8742", "#f7b877", "#ffeacb"),
     windows=("#cfc6ee", "#e5cc5c", "#f287b0", "#a9cf83", "#a892f2", "#d8a08c"),
 )

@@ -40,7 +40,8 @@ const parts = {
     markPending()
   },
   rail(rail) { drawRail(rail, send) },
-  about({ title, note, cautions }) {
+  about({ title, note, cautions, beam }) {
+    byId("beam").textContent = beam
     byId("title").textContent = title
     document.title = `${title} · Colonnade`
     byId("note").textContent = note

@@ -25,8 +25,7 @@ class EmergenceFigure:
                                         color_mapper=self._colours)
         minibands.outline(self.figure)
         self.figure.add_layout(marker)
-        self._bar = ColorBar(color_mapper=self._colours, title="log\u2081\u2080 T", title_standoff=8, width=10, padding=6,
-                             label_standoff=6, border_line_color=None)
+        self._bar = ColorBar(color_mapper=self._colours, width=10, padding=6, label_standoff=6, border_line_color=None)
         self.figure.add_layout(self._bar, "right")
 
     def clear(self) -> None:
@@ -46,8 +45,7 @@ class EmergenceFigure:
         paint_frame(self.figure, palette)
         self._colours.palette = heat_colours(palette)
         self._bar.update(background_fill_color=palette.card, major_label_text_color=palette.muted,
-                         major_label_text_font=FONT, title_text_color=palette.ink, title_text_font=FONT,
-                         title_text_font_style="normal", major_tick_line_color=palette.muted)
+                         major_label_text_font=FONT, major_tick_line_color=palette.muted)
 
 
 def describe_emergence(emergence: Emergence) -> str:

@@ -24,6 +24,8 @@ MEV = 1e3
 ENERGY_LABEL = "E above the left lead\N{RIGHT SINGLE QUOTATION MARK}s band edge (meV)"
 
 _TEXT, _SMALL = "12px", "11px"
+_TOOLBAR = ":host{--icon-color:var(--muted);--highlight-color:var(--cool)} .bk-divider{background-color:var(--line)}"
+"""The toolbar in the page's own colours, whatever the theme."""
 
 
 class EnergyAxis:
@@ -65,7 +67,7 @@ def _frame(name: str, x_label: str, x_range: Range1d, y_range: Range1d, drags: b
         # Fixed borders: frames of different axes would else differ by some pixels, and equal energies with them.
         min_border_left=64, min_border_right=14, min_border_bottom=52, min_border_top=10,
     )
-    frame.toolbar.update(logo=None, autohide=False)
+    frame.toolbar.update(logo=None, stylesheets=[_TOOLBAR])
     frame.xaxis.axis_label = x_label
     frame.grid.grid_line_width = 1
     return frame
@@ -73,7 +75,8 @@ def _frame(name: str, x_label: str, x_range: Range1d, y_range: Range1d, drags: b
 
 def paint_frame(frame: Any, palette: Palette) -> None:
     """Axes, grid and ground of a figure in the colours of a theme."""
-    frame.update(background_fill_color=palette.card, border_fill_color=palette.card, outline_line_color=palette.line)
+    frame.update(background_fill_color=palette.card, border_fill_color=palette.card, border_line_color=None,
+                 outline_line_color=palette.line)
     for axis in frame.axis:
         axis.update(
             axis_label_text_color=palette.ink, axis_label_text_font=FONT, axis_label_text_font_size=_TEXT,

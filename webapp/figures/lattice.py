@@ -13,8 +13,8 @@ from webapp.figures.frame import MEV, EnergyAxis, energy_frame, paint_frame, tex
 from webapp.results import Lattice, Points
 from webapp.theme import Palette
 
-PHASE_LABEL = "Bloch phase K d / \N{GREEK SMALL LETTER PI}"
-_BOTH_LABEL = "K d / \N{GREEK SMALL LETTER PI};  in gaps decay \N{GREEK SMALL LETTER KAPPA}d / \N{GREEK SMALL LETTER PI} (dotted)"
+PHASE_LABEL = "Bloch phase K d / \u03c0"
+_BOTH_LABEL = "K d / \u03c0,  in gaps \u03bad / \u03c0 (dotted)"
 _WIDEST = 2.0
 
 

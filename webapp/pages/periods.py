@@ -32,7 +32,7 @@ class PeriodsPage:
 
     def paint(self, palette: Palette) -> None:
         """Take on the colours of a theme."""
-        self._marker.line_color = palette.warm
+        self._marker.line_color = palette.marker
         for part in (self.margins, self.emergence, self.dispersion):
             part.paint(palette)
 
