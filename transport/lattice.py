@@ -87,7 +87,7 @@ def lattice_bands(stack: Stack, between: tuple[float, float] | None = None) -> B
     two; one that straddles an end is listed whole. Edges are exact to the rounding of the cell matrix, far below
     1e-10 eV. Raises ValueError for a range that is reversed or not finite, and where the one-band model ends.
     """
-    still = lossless(stack)
+    still = _cell_alone(stack)
     low, high = between if between is not None else (lowest_energy(still), default_range(stack)[1])
     if not (math.isfinite(low) and math.isfinite(high) and low < high):
         raise ValueError(f"between is ({low!r}, {high!r}): give two finite energies in eV, the lower one first")
@@ -113,7 +113,7 @@ def certify(stack: Stack, bands: tuple[Band, ...], between: tuple[float, float])
     A band counts as found if it stands in its place (ascending, not overlapping) and the Bloch phase at its middle,
     or just outside it where it is too narrow to enter, is that of its index.
     """
-    stack = lossless(stack)
+    stack = _cell_alone(stack)
     first, last = band_numbers(stack, *between)
     counted = max(0, last - first + 1)
     if not bands:
@@ -132,7 +132,7 @@ def certify(stack: Stack, bands: tuple[Band, ...], between: tuple[float, float])
 
 def band_numbers(stack: Stack, low: float, high: float) -> tuple[int, int]:
     """Index of the first band that ends above `low` and of the last that begins below `high` (first > last: none)."""
-    turning = rotation(Chain(lossless(stack), np.array([low, high])))
+    turning = rotation(Chain(_cell_alone(stack), np.array([low, high])))
     below, above = turning.turns
     first = math.floor(below) + 1
     last = math.floor(above) + 1 if turning.passing[1] else round(above)
@@ -173,8 +173,13 @@ def lossless(stack: Stack) -> Stack:
     )
 
 
+def _cell_alone(stack: Stack) -> Stack:
+    """One lossless cell between the leads: the lattice knows nothing of end layers, not even where their model ends."""
+    return Stack(stack.left, (), stack.cell, 1, (), stack.right)
+
+
 def _turns(stack: Stack, energy: Floats) -> Floats:
-    return rotation(Chain(lossless(stack), energy)).turns
+    return rotation(Chain(_cell_alone(stack), energy)).turns
 
 
 def _label(stack: Stack, energy: Floats) -> Floats:
@@ -233,7 +238,7 @@ class Bloch:
 def bloch(stack: Stack, energies: ArrayLike) -> Bloch:
     """Bloch phase, decay per period, group velocity and density of states of the stack's cell at given energies."""
     energy = np.atleast_1d(np.asarray(energies, dtype=float)).ravel()
-    chain = Chain(lossless(stack), energy)
+    chain = Chain(_cell_alone(stack), energy)
     half, squared = chain.cell.half_trace, chain.cell.sine_squared
     passing = squared > 0
     sine = np.sqrt(abs(squared))

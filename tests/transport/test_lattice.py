@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from tests.transport.stacks import ALL, CLOSED_OFF, FREE, KANE, LEAD, LOSSY, OPAQUE, PLAIN, barrier, well
-from transport import Stack, bloch, certify, lattice_bands
+from transport import Delta, Layer, Stack, bloch, certify, lattice_bands
 from transport.constants import HBAR, HBAR2_2M0
 
 UNRESOLVABLE = Stack(LEAD, (), (barrier(300.0), well(5.0)), 3, (), LEAD)
@@ -109,3 +109,12 @@ def test_a_reversed_range_and_a_crowd_of_bands_are_refused() -> None:
         lattice_bands(PLAIN, between=(1, 0))
     with pytest.raises(ValueError, match=r"more than the 20,000 that are listed: narrow the range"):
         lattice_bands(Stack(LEAD, (), (well(10_000.0),), 1, (), LEAD), between=(0.0, 900.0))
+
+
+def test_end_layers_do_not_end_the_lattices_model() -> None:
+    """A deep delta pulls the band below the energy at which the mass of an end layer would vanish."""
+    deep = (Layer(1.0, 0.0, 0.25), Delta(-0.25))
+    ended = Stack(LEAD, (), deep, 1, (Layer(1.0, 0.5, 0.25, 0.6),), LEAD)
+    assert lattice_bands(ended, between=(0.0, 1.5)).bands == lattice_bands(
+        Stack(LEAD, (), deep, 1, (), LEAD), between=(0.0, 1.5)
+    ).bands

@@ -13,9 +13,6 @@ from tests.transport.test_periods import Asked
 from transport import Delta, Layer, Lead, Stack, Target, Window, certify, lattice_bands, period_verdict, spectrum
 from transport.structure import Element
 
-settings.register_profile("steady", max_examples=40, deadline=None, derandomize=True)
-settings.load_profile("steady")
-
 LAYERS = st.builds(
     Layer, st.floats(0.3, 6.0), st.sampled_from([0.0, 0.3]) | st.floats(-0.2, 0.5), st.floats(0.03, 0.3),
     st.sampled_from([0.0, 0.0, 0.6]),
