@@ -145,6 +145,8 @@ class Chain:
     @cached_property
     def reflected(self) -> tuple[Amplitude, Amplitude]:
         """r F for exit.entry and for exit.swing.entry."""
+        if self.right is self.left and not (self.stack.entry or self.stack.exit):
+            return Amplitude(0.0, 0.0), self._reflected(self.cell.swing)
         plain, swing = self.around
         return self._reflected(plain), self._reflected(swing)
 

@@ -95,26 +95,28 @@ class Rotation:
 def dirichlet_count(elements: Sequence[Element], energy: Floats, upward: NDArray[np.bool_]) -> NDArray[np.int64]:
     """Dirichlet eigenvalues of a list of layers below each energy; `upward` says where psi ends above 0.
 
-    The count never falls with energy, so where it is the same at both ends of a run of energies it is known inside,
-    and where it grows by one, `upward` (its parity) tells where: few energies need following through the layers.
+    The count never falls with energy, and each eigenvalue turns the sign of psi. So if the sign turns as often as the
+    count grows from the first energy to the last, every energy in between has one more for each turn before it.
+    Otherwise two eigenvalues share an interval, and all energies are followed through the layers.
     """
-    if energy.size < 4 * _RUN:
+    if energy.size < _FEW:
         return np.broadcast_to(np.asarray(through(elements, energy).zeros, dtype=np.int64), energy.shape)
     if not (energy[1:] >= energy[:-1]).all():
         order, result = np.argsort(energy), np.empty(energy.size, dtype=np.int64)
         result[order] = dirichlet_count(elements, energy[order], upward[order])
         return result
-    ends = np.append(np.arange(0, energy.size - 1, _RUN), energy.size - 1)
-    known = np.asarray(through(elements, energy[ends]).zeros, dtype=np.int64)
-    counts = np.append(np.repeat(known[:-1], np.diff(ends)), known[-1])
-    counts += (counts & 1 == 1) == upward
-    leaps = np.repeat(np.diff(known) > 1, np.diff(ends))
-    if (unsure := np.flatnonzero(leaps)).size:
-        counts[unsure] = through(elements, energy[unsure]).zeros
+    first, last = (int(count) for count in through(elements, energy[[0, -1]]).zeros)
+    turned = upward[1:] != upward[:-1]
+    if np.count_nonzero(turned) != last - first:
+        return np.asarray(through(elements, energy).zeros, dtype=np.int64)
+    counts = np.empty(energy.size, dtype=np.int64)
+    counts[0] = first
+    np.cumsum(turned, out=counts[1:])
+    counts[1:] += first
     return counts
 
 
-_RUN = 128
+_FEW = 512
 
 
 def rotation(chain: Chain) -> Rotation:

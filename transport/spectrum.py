@@ -85,7 +85,7 @@ class Spectrum:
             phase[order] = np.unwrap(-argument[order])
         else:
             phase = absolute_phase(chain, argument, zeros(chain, self.stack.periods, self._powers))
-        return self._shaped(np.where(chain.open, phase, np.nan))
+        return self._shaped(np.where(chain.open, phase, np.nan) if chain.some_closed else phase)
 
 
 def spectrum(
