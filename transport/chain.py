@@ -133,10 +133,15 @@ class Chain:
             return self.entry, swing
         return self.exit if self.entry is IDENTITY else self.exit @ self.entry, self.exit @ swing
 
+    @property
+    def _is_bare(self) -> bool:
+        """No end layers between equal leads: half of every amplitude vanishes, and is left out."""
+        return self.right is self.left and not (self.stack.entry or self.stack.exit)
+
     @cached_property
     def outgoing(self) -> tuple[Amplitude, Amplitude]:
         """F for exit.entry and for exit.swing.entry."""
-        if self.right is self.left and not (self.stack.entry or self.stack.exit):  # g_R lean - g_L lean = 0
+        if self._is_bare:  # g_R lean - g_L lean = 0
             cell = self.cell.matrix
             return self._outgoing(IDENTITY), Amplitude(0.0, cell.c - self.lead_product * cell.b)
         plain, swing = self.around
@@ -145,7 +150,7 @@ class Chain:
     @cached_property
     def reflected(self) -> tuple[Amplitude, Amplitude]:
         """r F for exit.entry and for exit.swing.entry."""
-        if self.right is self.left and not (self.stack.entry or self.stack.exit):
+        if self._is_bare:
             return Amplitude(0.0, 0.0), self._reflected(self.cell.swing)
         plain, swing = self.around
         return self._reflected(plain), self._reflected(swing)

@@ -1,6 +1,6 @@
 """What extra periods cannot change: the ripple floor of a pass window and the limit of its mean.
 
-Inside a miniband T swings between two envelopes that do not depend on the number of periods (`scattering.Envelope`).
+Inside a miniband T swings between two envelopes that do not depend on the number of periods (`chain.Envelope`).
 As periods are added the minimum over a window tends to the least of the lower one, and any average over energy to the
 average of the geometric mean of the two (the phase N phi then takes every value equally often).
 """

@@ -28,7 +28,7 @@ _STEP = 1e-30
 
 @dataclass(frozen=True, slots=True)
 class Band:
-    """One band: `index` from 1, edges in eV; effective masses (m0) at both edges, negative at the zone-centre-like top.
+    """One band: `index` from 1, edges in eV; effective masses (m0) at both edges, negative at the top.
 
     A mass is 0 where the gap beside the edge is closed (the dispersion is a straight line there).
     """
@@ -147,7 +147,7 @@ def lowest_energy(stack: Stack) -> float:
     edges = [e.band_edge for e in stack.cell if isinstance(e, Layer)]
     start = min(min(edges), stack.left.band_edge, stack.right.band_edge)
     depth = 0.0
-    while _turns(stack, np.array([start - depth]))[0] > 0:
+    while _turns(_cell_alone(stack), np.array([start - depth]))[0] > 0:
         depth = max(2 * depth, 1e-3)
     return start - depth
 
@@ -166,20 +166,13 @@ def default_range(stack: Stack) -> tuple[float, float]:
     return low, top + HBAR2_2M0 / stack.left.mass * (4 * math.pi / stack.period_length) ** 2
 
 
-def lossless(stack: Stack) -> Stack:
-    """The same stack without dephasing."""
-    return stack if not stack.dephasing else Stack(
-        stack.left, stack.entry, stack.cell, stack.periods, stack.exit, stack.right
-    )
-
-
 def _cell_alone(stack: Stack) -> Stack:
     """One lossless cell between the leads: the lattice knows nothing of end layers, not even where their model ends."""
     return Stack(stack.left, (), stack.cell, 1, (), stack.right)
 
 
 def _turns(stack: Stack, energy: Floats) -> Floats:
-    return rotation(Chain(_cell_alone(stack), energy)).turns
+    return rotation(Chain(stack, energy)).turns
 
 
 def _label(stack: Stack, energy: Floats) -> Floats:
@@ -233,6 +226,11 @@ class Bloch:
     decay: Floats
     velocity: Floats
     density_of_states: Floats
+
+    @property
+    def rejection_dB(self) -> Floats:
+        """What each period takes from T in the gaps: 20 log10(e) decay, the usual 8.686 kappa d."""
+        return np.asarray(20 / math.log(10) * self.decay)
 
 
 def bloch(stack: Stack, energies: ArrayLike) -> Bloch:

@@ -10,7 +10,6 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from transport.chain import Chain
-from transport.lattice import lossless
 from transport.numerics import gauss_nodes, row_minima
 from transport.oscillation import Floats
 from transport.sampling import resolve
@@ -67,7 +66,7 @@ def measured_curves(
     if end <= begin:
         return [Measured(np.zeros(1), np.zeros(1), sigma)] * counts.size
     start = math.ceil((end - begin) / sigma * _STEPS_PER_SIGMA) + 2
-    samples = resolve(lossless(stack), counts, np.full(counts.size, begin), np.full(counts.size, end), start)
+    samples = resolve(stack.lossless(), counts, np.full(counts.size, begin), np.full(counts.size, end), start)
     joined = np.flatnonzero(samples.joined)
     node, weight = gauss_nodes(samples.energy[joined], samples.energy[joined + 1])
     row = np.repeat(samples.row[joined], node.shape[1])

@@ -11,7 +11,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from transport.floor import Floor, mean_limit, measured_limit, ripple_floor
-from transport.lattice import lossless
 from transport.reasons import WindowHistory, counts_in_words, why_not
 from transport.structure import Stack, Target, Window
 from transport.windows import window_values
@@ -149,7 +148,7 @@ def _record(
     record = WindowHistory(window, values.log10, values.energy, margin, None)
     if window.kind == "block" or stack.dephasing:
         return record
-    return replace(record, floor=_limit(lossless(stack), window, resolution))
+    return replace(record, floor=_limit(stack.lossless(), window, resolution))
 
 
 def _limit(stack: Stack, window: Window, resolution: float) -> Floor | None:

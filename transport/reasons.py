@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from transport.floor import Floor, Miniband, minibands
-from transport.lattice import bloch, lossless
+from transport.lattice import bloch
 from transport.oscillation import Floats
 from transport.structure import Stack, Window
 from transport.windows import threshold
@@ -131,7 +131,7 @@ def _block_cause(stack: Stack, record: WindowHistory) -> str:
 def _is_peak(stack: Stack, record: WindowHistory, energy: float) -> bool:
     """Whether T at an inner maximum stands above what the decay at its energy leaves of the window's ends."""
     window = record.window
-    rates = bloch(lossless(stack), np.array([window.bottom, energy, window.top])).decay
+    rates = bloch(stack, np.array([window.bottom, energy, window.top])).decay
     return bool(rates[1] > min(rates[0], rates[2]))
 
 

@@ -11,7 +11,6 @@ from numpy.typing import ArrayLike, NDArray
 
 from transport.cell import Powers
 from transport.chain import Amplitude, Chain, Envelope
-from transport.lattice import lossless
 from transport.oscillation import Floats, absolute_phase, zeros
 from transport.sampling import resolve
 from transport.structure import Stack
@@ -121,7 +120,7 @@ def _chosen(stack: Stack, low: float, high: float) -> Spectrum:
     threshold = max(stack.left.band_edge, stack.right.band_edge)
     if high <= threshold:
         return Spectrum(stack, np.array([low, high]))
-    begin, still = max(low, threshold), lossless(stack)
+    begin, still = max(low, threshold), stack.lossless()
     ends = np.array([begin, high])
     chain = Chain(still, ends)
     peaks = int(np.diff(zeros(chain, stack.periods))[0])
@@ -176,4 +175,4 @@ def _enveloped(stack: Stack, low: float, begin: float, high: float, peaks: int) 
         f"{peaks:,} peaks lie in this range, more than the {MOST_PEAKS:,} that are resolved one by one: "
         "the envelope's two sides are given, between which T swings"
     )
-    return Spectrum(stack, energy, Chain(lossless(stack), energy).envelope, note)
+    return Spectrum(stack, energy, Chain(stack.lossless(), energy).envelope, note)

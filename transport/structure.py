@@ -111,6 +111,10 @@ class Stack:
         """The same stack with another number of periods."""
         return replace(self, periods=periods)
 
+    def lossless(self) -> Stack:
+        """The same stack without dephasing."""
+        return replace(self, dephasing=0.0) if self.dephasing else self
+
     def reversed(self) -> Stack:
         """The same stack entered from the other side; energies then count from what was the right lead's edge."""
         shift = self.right.band_edge

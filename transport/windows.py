@@ -14,7 +14,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from transport.chain import Chain
-from transport.lattice import lossless
 from transport.measuring import measured_curves
 from transport.numerics import RowFunction, Rows, row_integrals, row_minima
 from transport.oscillation import Floats
@@ -63,7 +62,7 @@ def _batch_values(stack: Stack, window: Window, counts: NDArray[np.int64], resol
         return _measured_values(stack, window, counts, resolution)
     begin = max(window.bottom, threshold(stack))
     low, high = np.full(counts.size, begin), np.full(counts.size, window.top)
-    samples = resolve(lossless(stack), counts, low, high, start=17 if window.measure == "mean" else 65)
+    samples = resolve(stack.lossless(), counts, low, high, start=17 if window.measure == "mean" else 65)
 
     def log10_transmission(row: Rows, energy: Floats) -> Floats:
         chain = Chain(stack, energy)

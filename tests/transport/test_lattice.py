@@ -98,6 +98,7 @@ def test_the_decay_is_what_a_period_costs_deep_in_a_gap() -> None:
     fifty, sixty = (spectrum(PLAIN.with_periods(n), energy).log10_transmission for n in (50, 60))
     per_period = (fifty - sixty) / 10 * np.log(10) / 2
     assert bloch(PLAIN, energy).decay == pytest.approx(per_period, rel=1e-9)
+    assert bloch(PLAIN, energy).rejection_dB == pytest.approx(fifty - sixty, rel=1e-9)  # ten periods of log10 T
 
 
 def test_bands_are_those_of_the_lossless_lattice() -> None:

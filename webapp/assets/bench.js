@@ -86,7 +86,7 @@ function passed(energy) {
 
 function infinite(energy) {
   const { bottom, top, name } = model("bands").data
-  const { energy: grid, phase, decay } = model("bloch").data
+  const { energy: grid, phase, decay, rejection } = model("bloch").data
   for (let i = 0; i < bottom.length; i += 1) {
     if (energy >= bottom[i] && energy <= top[i]) {
       const turn = interpolated(grid, phase, energy)
@@ -94,7 +94,8 @@ function infinite(energy) {
     }
   }
   const rate = interpolated(grid, decay, energy)
-  return rate === null ? "" : `gap, κd = ${rate.toFixed(3)} (−${(8.685889638 * rate).toFixed(1)} dB per period)`
+  const cost = interpolated(grid, rejection, energy)
+  return rate === null ? "" : `gap, κd = ${rate.toFixed(3)} (−${cost.toFixed(1)} dB per period)`
 }
 
 function interpolated(x, y, at) {

@@ -70,7 +70,7 @@ class LatticeFigure:
         self._x = Range1d(start=-0.03, end=1.03)
         self.figure: Any = energy_frame("lattice", axis, _BOTH_LABEL, self._x, drags)
         minibands.shade(self.figure, names=True)
-        self._bloch = ColumnDataSource({"energy": [], "phase": [], "decay": []}, name="bloch")
+        self._bloch = ColumnDataSource({"energy": [], "phase": [], "decay": [], "rejection": []}, name="bloch")
         # No glyph draws these, which the readout needs; as a tag they travel with the figure all the same.
         self.figure.tags = [self._bloch]
         self._lines = ColumnDataSource({"energy": [], "phase": [], "decay": []})
@@ -82,7 +82,8 @@ class LatticeFigure:
     def show(self, lattice: Lattice) -> None:
         """Draw dispersion and decay."""
         found = lattice.bloch
-        whole = {"energy": found.energy * MEV, "phase": found.phase / math.pi, "decay": found.decay}
+        whole = {"energy": found.energy * MEV, "phase": found.phase / math.pi, "decay": found.decay,
+                 "rejection": found.rejection_dB}
         self._bloch.data = whole
         self._lines.data = dispersion_lines(lattice)
         end = min(max(1.03, 1.05 * float(found.decay.max(initial=0.0)) / math.pi), _WIDEST)
