@@ -1,0 +1,496 @@
+"""Waves inside a finite stack: psi(x), local density of states, charge, dwell and phase times.
+
+A wave that comes in from one side is carried from the other side, the far face, where it only goes out, towards its
+source: there it grows, so the growing solution is the wanted one and nothing cancels. Its size is held as a logarithm.
+The state is (psi, psi'/m), as in `propagation.py`; a layer is its own mirror image, so marching leftwards is marching
+rightwards through the reversed list with the sign of psi'/m turned.
+
+Probability. With C = hbar^2/2m0, chi = psi'/m and a dot for d/dE, psi' = m chi and chi' = -(E - V) psi/C give
+
+    d/dx (psi* chi. - chi* psi.) = -(|psi|^2 + C m. |chi|^2) / C          (lossless)
+    d/dx Im(psi* chi) = -(dephasing/2C) (|psi|^2 + C m. |chi|^2)          (dephasing)
+
+so where the mass depends on energy the density that is counted, stored and absorbed is |psi|^2 + C m. |chi|^2: the
+second part is what the two-band model puts into the valence band. `probability` means this; else it is |psi|^2.
+Dwell time and its bond with the phase times: Hauge and Stoevneng, Rev. Mod. Phys. 61, 917 (1989); Winful,
+Phys. Rev. Lett. 91, 260401 (2003). Local density of states from waves of unit flux: Gasparian, Christen and Buettiker,
+Phys. Rev. A 54, 4022 (1996).
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, replace
+from typing import Any, Literal
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from transport.constants import HBAR, HBAR2_2M0
+from transport.oscillation import Floats
+from transport.propagation import IDENTITY, Array, Span, Transfer, element_transfer, mass_at, require_model
+from transport.structure import Delta, Element, Layer, Lead, Stack
+
+Complex = NDArray[np.complex128]
+Side = Literal["left", "right"]
+
+MOST_VALUES = 10_000_000
+"""Values (energies times positions or layers) that one call computes at most."""
+
+MOST_ELEMENTS = 50_000
+"""Layers and deltas, all periods written out, that a wave is carried through at most."""
+
+_NO_POLE = 1e-3  # kink, as an angle, at which two outgoing waves are no longer one
+
+
+@dataclass(frozen=True, slots=True)
+class Wave:
+    """A wave in a stack: `position` (x,) in nm from the left face, `energy` (n,) in eV; the rest is (n, x).
+
+    `psi`: in (s/nm)^1/2 for one electron a second from a lead; in nm^-1/2 for a pole. `slope`: psi'/m (1/nm of
+    psi's unit, m in m0); at a delta, that on its left. `current`: electrons a second, positive to the right.
+    """
+
+    position: Floats
+    energy: Array
+    psi: Complex
+    slope: Complex
+    current: Floats
+
+    @property
+    def density(self) -> Floats:
+        """|psi|^2."""
+        return np.asarray(self.psi.real**2 + self.psi.imag**2)
+
+
+@dataclass(frozen=True, slots=True)
+class LocalDensity:
+    """Local density of states in states/(eV nm) for each spin: `density` (n, x) at `energy` (n,), `position` (x,)."""
+
+    position: Floats
+    energy: Floats
+    density: Floats
+
+
+def wave(
+    stack: Stack, energies: ArrayLike, side: Side = "left", positions: ArrayLike | None = None,
+    points_per_nm: float = 5.0,
+) -> Wave:
+    """The wave that one electron a second, coming from `side`, makes at real energies (eV, shape (n,)).
+
+    At `positions` (nm from the left face), or else at both faces of every layer and evenly between them, at least
+    `points_per_nm` of them. The incident wave has phase 0 at the face it meets. `current` follows from the continuity
+    equation, what leaves plus what is absorbed on the way, since psi* psi'/m of an almost standing wave has lost it.
+    Raises ValueError for energies that are not finite or at which that lead is closed, positions outside the stack,
+    more values than MOST_VALUES, and where the one-band model ends.
+    """
+    energy = _incident_energies(stack, energies, side)
+    places = _places(stack, positions, points_per_nm)
+    _require_size(energy.size, places.position.size)
+    march = _scattered(stack, energy, side)
+    psi, slope = march.scaled(*places.seen_from(march))
+    towards = -1.0 if side == "left" else 1.0  # the march runs against the wave's own direction
+    return Wave(places.position, energy, psi.T, towards * slope.T, -towards * _current(stack, march, places).T)
+
+
+def pole_wave(
+    stack: Stack, energies: ArrayLike, positions: ArrayLike | None = None, points_per_nm: float = 5.0
+) -> Wave:
+    """The decaying state of a resonance at complex energies (eV, shape (n,)): waves go out of the stack only.
+
+    Carried from both ends and joined where it is largest, so that a long-lived state dies away on both sides. Its
+    probability within the stack is 1; `psi` is in nm^-1/2 and real where it is joined. Raises ValueError as `wave`
+    does, and where the two ends do not join: the energy is no pole.
+    """
+    energy = np.atleast_1d(np.asarray(energies, dtype=complex)).ravel()
+    if not np.isfinite(energy).all():
+        raise ValueError("energies: every one must be a finite number of eV")
+    places = _places(stack, positions, points_per_nm)
+    _require_size(energy.size, places.position.size)
+    right_going, left_going, join = _joined(_outgoing(stack, energy, "left"), _outgoing(stack, energy, "right"))
+    count = len(right_going.layers)
+    psi = slope = np.zeros((places.position.size, energy.size), dtype=np.complex128)
+    norm = np.zeros(energy.size)
+    for march, last, towards in ((right_going, count - join, -1.0), (left_going, join, 1.0)):
+        row, offset = places.seen_from(march)
+        with np.errstate(over="ignore", invalid="ignore"):  # beyond the join, where it is left out
+            held = march.probability() * abs(march.amplitude) ** 2
+            one, two = march.scaled(row, offset)
+        norm += np.where(np.arange(count)[:, None] < last, held, 0.0).sum(axis=0)
+        mine = row[:, None] < last
+        psi = np.where(mine, one, psi)
+        slope = np.where(mine, towards * two, slope)
+    psi, slope = (psi / np.sqrt(norm)).T, (slope / np.sqrt(norm)).T
+    return Wave(places.position, energy, psi, slope, 2 * HBAR2_2M0 / HBAR * (psi.conj() * slope).imag)
+
+
+def local_density_of_states(
+    stack: Stack, energies: ArrayLike, positions: ArrayLike | None = None, points_per_nm: float = 5.0
+) -> LocalDensity:
+    """Local density of states: probability of the waves of unit flux from both sides, over 2 pi hbar.
+
+    A closed lead sends nothing. With dephasing it is the part that the leads feed. `positions` and errors as for
+    `wave`, except that any finite energy is taken.
+    """
+    energy = _finite(energies)
+    places = _places(stack, positions, points_per_nm)
+    _require_size(energy.size, places.position.size)
+    density = np.zeros((energy.size, places.position.size))
+    sides: tuple[Side, ...] = ("left", "right")
+    for side in sides:
+        open_ = np.flatnonzero(energy > _lead(stack, side).band_edge)
+        if open_.size:
+            march = _scattered(stack, energy[open_], side)
+            density[open_] += march.density_at(*places.seen_from(march)).T / (2 * math.pi * HBAR)
+    return LocalDensity(places.position, energy, density)
+
+
+def charge(stack: Stack, energies: ArrayLike, side: Side = "left") -> Floats:
+    """Share of the probability in each layer, all periods written out: shape (n, layers), each row adding up to 1.
+
+    For the wave from `side` at energies (eV); layers from the left, deltas left out. Raises as `wave` does.
+    """
+    energy = _incident_energies(stack, energies, side)
+    march = _scattered(stack, energy, side)
+    held = march.probability().T
+    held = held[:, ::-1] if side == "left" else held
+    return np.asarray(held / held.sum(axis=1, keepdims=True))
+
+
+def dwell_time(stack: Stack, energies: ArrayLike, side: Side = "left") -> Floats:
+    """Probability within the stack over the incident flux (s), at energies (eV, shape (n,)).
+
+    With dephasing, dephasing/hbar times this is the share absorbed, 1 - T - R. Raises as `wave` does.
+    """
+    energy = _incident_energies(stack, energies, side)
+    march = _scattered(stack, energy, side)
+    return np.asarray(march.probability().sum(axis=0) * abs(march.amplitude) ** 2)
+
+
+def phase_time(stack: Stack, energies: ArrayLike) -> Floats:
+    """hbar d(arg t)/dE (s) at energies (eV, shape (n,)): Wigner, Phys. Rev. 98, 145 (1955). Exact derivative.
+
+    t is the amplitude between the outer faces, the same from either side. Raises ValueError as `wave` does, and
+    where the other lead is closed: nothing comes through that had a phase.
+    """
+    energy = _incident_energies(stack, _incident_energies(stack, energies, "left"), "right")
+    inside: Array = energy + 0.5j * stack.dephasing if stack.dephasing else energy
+    near, far = (_flux_factor(lead, energy) for lead in (stack.left, stack.right))
+    near_rate, far_rate = (_flux_factor_rate(lead, energy) for lead in (stack.left, stack.right))
+    psi, slope = np.ones(energy.size, dtype=complex), -1j * far
+    psi_rate, slope_rate = np.zeros(energy.size, dtype=complex), -1j * far_rate
+    elements = _written_out(stack)[::-1]
+    steps = {e: (step := element_transfer(e, inside), _rate(e, step, inside)) for e in dict.fromkeys(elements)}
+    for element in elements:
+        step, rate = steps[element]
+        psi_rate, slope_rate = (
+            step.a * psi_rate + step.b * slope_rate + rate.a * psi + rate.b * slope,
+            step.c * psi_rate + step.d * slope_rate + rate.c * psi + rate.d * slope,
+        )
+        psi, slope = step.a * psi + step.b * slope, step.c * psi + step.d * slope
+        size = abs(psi) + abs(slope)
+        psi, slope, psi_rate, slope_rate = psi / size, slope / size, psi_rate / size, slope_rate / size
+    incident = psi + 1j * slope / near
+    incident_rate = psi_rate + 1j * (slope_rate - slope * near_rate / near) / near
+    return np.asarray(-HBAR * (incident_rate / incident).imag)
+
+
+@dataclass(frozen=True, slots=True)
+class _March:
+    """A solution carried from its far face, with `layers` and rows counted from there.
+
+    `psi`, `slope` (d psi/dy / m, y the distance from the far face), both times exp(`log`): shape (layers + 1, n), at
+    the far face of every layer, and at the near face of the stack. It is wanted over exp(`reference`), (n,), and times
+    `amplitude`, which makes the incident flux 1.
+    """
+
+    layers: tuple[Layer, ...]
+    inside: Array
+    psi: Complex
+    slope: Complex
+    log: Floats
+    reference: Floats
+    amplitude: Any
+    leftwards: bool
+
+    def at(self, row: NDArray[np.int64], offset: Floats) -> tuple[Complex, Complex, Floats]:
+        """psi, slope and log (places, n) at distances `offset` (nm) beyond the far face of layers `row`."""
+        shape = (row.size, self.inside.size)
+        psi, slope, log = np.empty(shape, complex), np.empty(shape, complex), self.log[row]
+        kinds = {layer: kind for kind, layer in enumerate(dict.fromkeys(self.layers))}
+        kind_of = np.array([kinds[layer] for layer in self.layers])[row]
+        span = Span.of(self.inside)
+        for layer, kind in kinds.items():
+            chosen = np.flatnonzero(kind_of == kind)
+            offsets, which = np.unique(offset[chosen], return_inverse=True)
+            pieces = [_piece(layer, float(s), self.inside, span) for s in offsets]
+            a, b, c, more = (
+                np.array([np.broadcast_to(getattr(piece, name), shape[1:]) for piece in pieces]).reshape(-1, shape[1])
+                for name in ("a", "b", "c", "log_scale")
+            )
+            one, two = self.psi[row[chosen]], self.slope[row[chosen]]
+            psi[chosen] = a[which] * one + b[which] * two
+            slope[chosen] = c[which] * one + a[which] * two
+            if more.any():
+                log[chosen] += more[which]
+        return psi, slope, log
+
+    def scaled(self, row: NDArray[np.int64], offset: Floats) -> tuple[Complex, Complex]:
+        """psi and slope (places, n) of the wave that is wanted."""
+        psi, slope, log = self.at(row, offset)
+        scale = self.amplitude * np.exp(log - self.reference)
+        return psi * scale, slope * scale
+
+    def density_at(self, row: NDArray[np.int64], offset: Floats) -> Floats:
+        """Probability per nm of the wave of unit flux, shape (places, n)."""
+        psi, slope, log = self.at(row, offset)
+        density = psi.real**2 + psi.imag**2
+        rate = np.array([_mass_rate(layer) for layer in self.layers])[row]
+        if rate.any():
+            density += HBAR2_2M0 * rate[:, None] * (slope.real**2 + slope.imag**2)
+        return np.asarray(density * np.exp(2 * (log - self.reference)) * abs(self.amplitude) ** 2)
+
+    def probability(self, row: NDArray[np.int64] | None = None, offset: Floats | None = None) -> Floats:
+        """Probability in layers `row` (default: each) up to `offset` from the far face (default: the whole of it).
+
+        Shape (places, n), without `amplitude`. From the state at the middle of the piece, where
+        psi = u cos qy + m w sin(qy)/q has an even and an odd part: the cross term integrates to 0, the rest is
+        positive, whether the wave oscillates, decays or both.
+        """
+        row = np.arange(len(self.layers)) if row is None else row
+        if offset is None:
+            offset = np.array([layer.thickness for layer in self.layers])[row]
+        psi, slope, log = self.at(row, offset / 2)
+        kinetic, mass = np.empty_like(psi), np.empty_like(psi)
+        for layer in dict.fromkeys(self.layers):
+            chosen = np.array([other == layer for other in self.layers])[row]
+            kinetic[chosen], mass[chosen] = self.inside - layer.band_edge, mass_at(layer, self.inside)
+        rate = np.array([_mass_rate(layer) for layer in self.layers])[row][:, None]
+        even, odd, growth = _squared_integrals(np.sqrt(kinetic * mass / HBAR2_2M0), offset[:, None])
+        upper, lower = abs(psi) ** 2, abs(slope) ** 2
+        total = upper * even + abs(mass) ** 2 * lower * odd
+        total += HBAR2_2M0 * rate * (lower * even + abs(kinetic / HBAR2_2M0) ** 2 * upper * odd)
+        return np.asarray(total * np.exp(2 * (log - self.reference) + growth))
+
+
+def _squared_integrals(wave_number: Complex, length: Floats) -> tuple[Floats, Floats, Floats]:
+    """Integrals of |cos qy|^2 and |sin(qy)/q|^2 over |y| < length/2, both over exp(growth), and growth.
+
+    length/2 (sinh(z)/z +- sin(r)/r), the second over |q|^2, with z = |Im q| length and r = |Re q| length; for small
+    |q| length the second is summed as a series, since there the two parts cancel.
+    """
+    z, r = abs(wave_number.imag) * length, abs(wave_number.real) * length
+    steep, flat = np.where(z > 0, z, 1.0), np.sinc(r / np.pi) * np.exp(-z)
+    rise = np.where(z > 0, -np.expm1(-2 * steep) / (2 * steep), 1.0)
+    square = z * z + r * r
+    near = square < 1
+    series, term, power = np.zeros_like(z), np.ones_like(z), np.ones_like(z)
+    p, s = np.where(near, z * z, 0.0), np.where(near, -r * r, 0.0)
+    for n in range(1, 11):
+        series += term / math.factorial(2 * n + 1)
+        power = power * s
+        term = term * p + power
+    ratio = np.where(near, series * np.exp(-z), (rise - flat) / np.where(near, 1.0, square))
+    return length / 2 * (rise + flat), length**3 / 2 * ratio, z
+
+
+def _scattered(stack: Stack, energy: Floats, side: Side) -> _March:
+    """The wave of unit flux from `side`."""
+    march = _outgoing(stack, energy, side)
+    factor = _flux_factor(_lead(stack, side), energy)
+    incident = (march.psi[-1] + 1j * march.slope[-1] / factor) / 2
+    return replace(march, amplitude=np.sqrt(HBAR / (2 * HBAR2_2M0 * factor.real)) / incident)
+
+
+def _outgoing(stack: Stack, energy: Array, side: Side) -> _March:
+    """The solution that goes out at the face away from `side`, carried towards `side`."""
+    elements = _written_out(stack)
+    inside: Array = energy + 0.5j * stack.dephasing if stack.dephasing else energy
+    require_model(stack.elements, Span.of(inside))
+    far = stack.right if side == "left" else stack.left
+    ordered = elements[::-1] if side == "left" else elements
+    layers = tuple(element for element in ordered if isinstance(element, Layer))
+    _require_size(energy.size, len(layers))
+    rows, logs = np.empty((2, len(layers) + 1, energy.size), complex), np.empty((len(layers) + 1, energy.size))
+    psi, slope, log = np.ones(energy.size, complex), -1j * _flux_factor(far, energy), np.zeros(energy.size)
+    span, row = Span.of(inside), 0
+    steps = {element: element_transfer(element, inside, span) for element in dict.fromkeys(ordered)}
+    for element in ordered:
+        if isinstance(element, Layer):
+            rows[0, row], rows[1, row], logs[row] = psi, slope, log
+            row += 1
+        step = steps[element]
+        psi, slope = step.a * psi + step.b * slope, step.c * psi + step.d * slope
+        size = abs(psi) + abs(slope)
+        psi, slope, log = psi / size, slope / size, log + step.log_scale + np.log(size)
+    rows[0, row], rows[1, row], logs[row] = psi, slope, log
+    return _March(layers, inside, rows[0], rows[1], logs, log, 1.0, side == "left")
+
+
+def _current(stack: Stack, march: _March, places: _Places) -> Floats:
+    """Flux against the march (places, n): what leaves at the far face, and what dephasing takes on the way there."""
+    far = stack.right if march.leftwards else stack.left
+    scale = abs(march.amplitude) ** 2
+    leaving = 2 * HBAR2_2M0 / HBAR * _flux_factor(far, march.inside.real).real
+    leaving = leaving * abs(march.psi[0]) ** 2 * np.exp(2 * (march.log[0] - march.reference)) * scale
+    shape = (places.position.size, march.inside.size)
+    if not stack.dephasing:
+        return np.broadcast_to(leaving, shape)
+    row, offset = places.seen_from(march)
+    whole = np.cumsum(march.probability(), axis=0)
+    before = np.where(row[:, None] > 0, whole[row - 1], 0.0)
+    return np.asarray(leaving + stack.dephasing / HBAR * scale * (before + march.probability(row, offset)))
+
+
+def _joined(right_going: _March, left_going: _March) -> tuple[_March, _March, NDArray[np.int64]]:
+    """Both outgoing solutions brought to one scale, and the layer (from the left) at whose left face they join.
+
+    They join where the product of the two is largest, which is where the state is: short of it each of them still
+    grows away from its own end and is exact, beyond it rounding grows instead.
+    """
+    count = len(left_going.layers)
+    thickness = np.array([layer.thickness for layer in right_going.layers])
+    from_right = [part[::-1] for part in right_going.at(np.arange(count), thickness)]
+    from_left = [left_going.psi[:-1], left_going.slope[:-1], left_going.log[:-1]]
+    size = [np.log(abs(psi) + abs(slope)) + log for psi, slope, log in (from_right, from_left)]
+    join = np.argmax(size[0] + size[1], axis=0)
+    (psi, slope, log), (other, bend, reference) = (
+        [np.take_along_axis(part, join[None], axis=0)[0] for part in parts] for parts in (from_right, from_left)
+    )
+    slope = -slope
+    factor = (other.conj() * psi + bend.conj() * slope) / (abs(other) ** 2 + abs(bend) ** 2)
+    kink = np.hypot(abs(psi - factor * other), abs(slope - factor * bend)) / np.hypot(abs(psi), abs(slope))
+    if (kink > _NO_POLE).any():
+        lost = right_going.inside[np.argmax(kink)]
+        raise ValueError(f"energies: at {lost:.9g} eV no wave goes out on both sides, give poles of the transmission")
+    turn = np.exp(-1j * np.angle(psi))
+    return (replace(right_going, amplitude=turn, reference=log),
+            replace(left_going, amplitude=turn * factor, reference=reference), join)
+
+
+@dataclass(frozen=True, slots=True)
+class _Places:
+    """Positions (nm from the left face), each with its layer, counted from the left, and the offset inside it."""
+
+    position: Floats
+    layer: NDArray[np.int64]
+    offset: Floats
+    thickness: Floats
+
+    def seen_from(self, march: _March) -> tuple[NDArray[np.int64], Floats]:
+        """Row of the march and distance from that layer's far face."""
+        if march.leftwards:
+            return len(march.layers) - 1 - self.layer, self.thickness[self.layer] - self.offset
+        return self.layer, self.offset
+
+
+def _places(stack: Stack, positions: ArrayLike | None, points_per_nm: float) -> _Places:
+    layers = [element for element in _written_out(stack) if isinstance(element, Layer)]
+    thickness = np.array([layer.thickness for layer in layers])
+    face = np.concatenate([[0.0], np.cumsum(thickness)])
+    if positions is not None:
+        position = np.atleast_1d(np.asarray(positions, dtype=float)).ravel()
+        if not (np.isfinite(position).all() and (position >= 0).all() and (position <= face[-1] * (1 + 1e-12)).all()):
+            raise ValueError(f"positions: every one must lie in the stack, from 0 to {face[-1]:.9g} nm")
+        layer = np.minimum(np.searchsorted(face[1:], position), thickness.size - 1)
+        return _Places(position, layer, np.clip(position - face[layer], 0.0, thickness[layer]), thickness)
+    if not (math.isfinite(points_per_nm) and points_per_nm > 0):
+        raise ValueError(f"points_per_nm is {points_per_nm!r}: give a number above 0")
+    count = np.maximum(np.ceil(thickness * points_per_nm - 1e-9), 1)
+    _require_size(1, float(count.sum()) + 1)
+    count = count.astype(np.int64)
+    layer = np.concatenate([[0], np.repeat(np.arange(thickness.size), count)])
+    step = np.arange(1, layer.size) - np.repeat(np.cumsum(count) - count, count)
+    offset = np.concatenate([[0.0], thickness[layer[1:]] * (step / count[layer[1:]])])
+    return _Places(face[layer] + offset, layer, offset, thickness)
+
+
+def _piece(layer: Layer, length: float, inside: Array, span: Span) -> Transfer:
+    return element_transfer(replace(layer, thickness=length), inside, span) if length > 0 else IDENTITY
+
+
+def _rate(element: Element, step: Transfer, inside: Array) -> Transfer:
+    """d/dE of a layer's matrix, to the scale of `step`.
+
+    With x as in `propagation.py`: d cos sqrt(x)/dx = -S/2 and dS/dx = (cos sqrt(x) - S)/2x, near 0 by its series.
+    """
+    if isinstance(element, Delta):
+        return Transfer(0.0, 0.0, 0.0, 0.0)
+    kinetic, mass, length = inside - element.band_edge, mass_at(element, inside), element.thickness
+    rate = _mass_rate(element)
+    x = kinetic * mass * (length * length / HBAR2_2M0)
+    growth = (mass + kinetic * rate) * (length * length / HBAR2_2M0)
+    sine = step.b / (mass * length)
+    near = abs(x) < 1
+    series, small = np.zeros_like(x), np.where(near, x, 0.0)
+    for n in range(10, 0, -1):
+        series = series * small + (-1) ** n * n / math.factorial(2 * n + 1)
+    bend = np.where(near, series, (step.a - sine) / (2 * np.where(near, 1.0, x))) * growth
+    even = -sine / 2 * growth
+    return Transfer(
+        even, length * (rate * sine + mass * bend), -length / HBAR2_2M0 * (sine + kinetic * bend), even
+    )
+
+
+def _mass_rate(medium: Layer | Lead) -> float:
+    """dm/dE (m0/eV)."""
+    return medium.mass * medium.nonparabolicity
+
+
+def _flux_factor(lead: Lead, energy: Array) -> Complex:
+    """k/m (1/nm per m0) of the wave that goes out into a lead; i kappa/m where it is closed, with m(E) continued."""
+    kinetic, mass = energy - lead.band_edge, mass_at(lead, energy)
+    if (np.asarray(mass).real <= 0).any():
+        end = lead.band_edge - 1 / lead.nonparabolicity
+        raise ValueError(
+            f"the one-band model ends at {end * 1e3:.6g} meV, where the mass of a lead with band edge "
+            f"{lead.band_edge * 1e3:.6g} meV falls to 0: ask for energies above it"
+        )
+    square = kinetic / (HBAR2_2M0 * mass) + 0j
+    closed = square.real < 0
+    return np.asarray(np.where(closed, 1j, 1.0) * np.sqrt(np.where(closed, -square, square)))
+
+
+def _flux_factor_rate(lead: Lead, energy: Floats) -> Floats:
+    """d(k/m)/dE of an open lead."""
+    kinetic, mass = energy - lead.band_edge, mass_at(lead, energy)
+    rate = (1 - kinetic * _mass_rate(lead) / mass) / (HBAR2_2M0 * mass)
+    return np.asarray(rate / (2 * _flux_factor(lead, energy).real))
+
+
+def _lead(stack: Stack, side: Side) -> Lead:
+    return stack.left if side == "left" else stack.right
+
+
+def _written_out(stack: Stack) -> tuple[Element, ...]:
+    count = len(stack.entry) + len(stack.cell) * stack.periods + len(stack.exit)
+    if count > MOST_ELEMENTS:
+        raise ValueError(
+            f"stack has {count:,} layers with all periods written out, more than the {MOST_ELEMENTS:,} that a wave is "
+            "carried through: take fewer periods"
+        )
+    return stack.entry + stack.cell * stack.periods + stack.exit
+
+
+def _finite(energies: ArrayLike) -> Floats:
+    energy = np.atleast_1d(np.asarray(energies, dtype=float)).ravel()
+    if not np.isfinite(energy).all():
+        raise ValueError("energies: every one must be a finite number of eV")
+    return energy
+
+
+def _incident_energies(stack: Stack, energies: ArrayLike, side: Side) -> Floats:
+    if side not in ("left", "right"):
+        raise ValueError(f"side is {side!r}: give 'left' or 'right', where the wave comes from")
+    energy, edge = _finite(energies), _lead(stack, side).band_edge
+    if (energy <= edge).any():
+        raise ValueError(f"energies: the {side} lead is closed below {edge:.9g} eV, ask above it")
+    return energy
+
+
+def _require_size(energies: float, places: float) -> None:
+    if energies * places > MOST_VALUES:
+        raise ValueError(
+            f"energies, positions: {energies:,.0f} times {places:,.0f} values are more than the {MOST_VALUES:,} of one "
+            "call: ask for fewer energies or positions"
+        )
