@@ -6,15 +6,19 @@ import argparse
 import os
 import sys
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from typing import NoReturn
 
 import numpy as np
 
 from transport import report
+from transport.allowance import verdict_range
 from transport.lattice import default_range, lattice_bands, lowest_energy
+from transport.matching import matched_ends
+from transport.nearest import MOST_MONOLAYERS, nearest_stacks
 from transport.parameters import PARAMETERS
 from transport.periods import no_progress, period_verdict
-from transport.scenario import Scenario, load_scenario
+from transport.scenario import Scenario, load_scenario, save_scenario
 from transport.spectrum import Spectrum, spectrum
 
 Handler = Callable[[Scenario, argparse.Namespace], str]
@@ -66,6 +70,16 @@ def _parser() -> argparse.ArgumentParser:
     command = _command(commands, "periods", _periods, "how many periods the target needs")
     command.add_argument("--most", type=_whole("most_periods"), metavar="N",
                          help="largest count tried (default: the target's most_periods)")
+    command.add_argument("--range", action="store_true",
+                         help="also the range of the verdict (without it, only where the file has [growth])")
+    command = _command(commands, "ends", _ends, "end layers that raise what the pass windows tend to")
+    command.add_argument("--whole-monolayers", action="store_true", help="only layers of whole monolayers")
+    command.add_argument("--cells", type=_whole("cells"), metavar="N", help="longest taper, in cells (default: 4)")
+    command.add_argument("--save", metavar="FILE", help="write the scenario with the best ends to a new file")
+    command = _command(commands, "remedy", _remedy, "the nearest stacks that meet the target")
+    command.add_argument("--monolayers", type=_whole("remedy_monolayers"), metavar="N",
+                         help="by how many monolayers a layer of the cell may change (default: 3)")
+    command.add_argument("--save", metavar="FILE", help="write the nearest stack that meets the target to a new file")
     _command(commands, "layers", _layers, "the grower's sheet")
     return parser
 
@@ -144,8 +158,41 @@ def _bands(scenario: Scenario, options: argparse.Namespace) -> str:
 
 
 def _periods(scenario: Scenario, options: argparse.Namespace) -> str:
-    verdict = period_verdict(scenario, options.most, _told if sys.stderr.isatty() else no_progress)
-    return report.to_json(report.verdict_record(verdict)) if options.json else report.verdict_text(verdict)
+    if options.most is not None and scenario.target is not None:
+        scenario = replace(scenario, target=replace(scenario.target, most_periods=options.most))
+    verdict = period_verdict(scenario, progress=_progress())
+    found = verdict_range(scenario, _progress()) if options.range or scenario.document.growth else None
+    if options.json:
+        extra = {"range": report.range_record(found)} if found else {}
+        return report.to_json(report.verdict_record(verdict) | extra)
+    return report.verdict_text(verdict) + (f"\nRange: {found.sentence}" if found else "")
+
+
+def _ends(scenario: Scenario, options: argparse.Namespace) -> str:
+    found = matched_ends(scenario, options.whole_monolayers, options.cells, _progress())
+    _save([proposal.scenario for proposal in found.proposals], options.save)
+    return report.to_json(report.ends_record(found)) if options.json else report.ends_text(found)
+
+
+def _remedy(scenario: Scenario, options: argparse.Namespace) -> str:
+    found = nearest_stacks(scenario, options.monolayers or MOST_MONOLAYERS, _progress())
+    _save([proposal.scenario for proposal in found.proposals], options.save)
+    return report.to_json(report.remedy_record(found)) if options.json else report.remedy_text(found)
+
+
+def _save(proposals: Sequence[Scenario], path: str | None) -> None:
+    """Write the first proposal to a new file, if that is wanted."""
+    if path is None:
+        return
+    if os.path.lexists(path):
+        raise ValueError(f"--save: {path} is there already, choose another name")
+    if not proposals:
+        raise ValueError("--save: there is no proposal to save; leave the option out to read why")
+    save_scenario(proposals[0], path)
+
+
+def _progress() -> Callable[[float], None]:
+    return _told if sys.stderr.isatty() else no_progress
 
 
 def _told(share: float) -> None:

@@ -7,6 +7,8 @@ from collections.abc import Iterator
 
 from transport.document import (
     Document,
+    EndsRecord,
+    GrowthRecord,
     LayerRecord,
     LeadRecord,
     Record,
@@ -46,6 +48,8 @@ def check_document(document: Document) -> None:
     _check_stack(document.stack)
     if document.target is not None:
         _check_target(document.target)
+    if document.growth is not None:
+        _check_growth(document.growth)
 
 
 def written_out(key: str, records: tuple[LayerRecord, ...]) -> Iterator[tuple[str, LayerRecord]]:
@@ -113,6 +117,8 @@ def _check_stack(stack: StackRecord) -> None:
                   "holds deltas only and has no length; give it at least one layer with a thickness")
     sizes = [_size(record) for record in (*stack.entry, *stack.cell, *stack.exit)]
     _check_count("stack", "file_layers", sum(sizes), "holds", "layers, repeat groups written out")
+    if stack.ends is not None:
+        _check_ends(stack.ends, stack.periods)
 
 
 def _size(record: LayerRecord) -> int:
@@ -157,6 +163,33 @@ def _check_thickness(key: str, record: LayerRecord) -> None:
     remedy = "give it" if record.material is None else "give it, or monolayers"
     refuse_unless(record.thickness_nm is not None or record.monolayers is not None, f"{key}.thickness_nm",
                   f"is missing; {remedy}")
+
+
+def _check_ends(ends: EndsRecord, periods: int) -> None:
+    key, kind = "stack.ends", ends.kind
+    tapered = kind not in ("half", "cells")
+    allowed = ("of", "cells") if tapered else ("left_cells", "right_cells") if kind == "cells" else ()
+    _refuse_others(key, ends, ("kind", "whole_monolayers", *allowed), f"ends of kind {kind}")
+    _check_numbers(key, ends)
+    if tapered:
+        cells = ends.cells or 1
+        refuse_unless(cells <= periods, f"{key}.cells",
+                      f"is {cells}: a taper longer than the stack of {periods:,} periods; give at most {periods:,}")
+    if kind == "cells":
+        refuse_unless(bool(ends.left_cells), f"{key}.left_cells", "is missing or empty; list the end cells")
+        refuse_unless(ends.right_cells != (), f"{key}.right_cells", "is empty; list the end cells, or leave it out")
+    for name in ("left_cells", "right_cells"):
+        cells_here = getattr(ends, name) or ()
+        _check_count(f"{key}.{name}", "file_end_cells", len(cells_here), "lists", "end cells")
+        for index, cell in enumerate(cells_here):
+            _check_numbers(f"{key}.{name}[{index}]", cell)
+
+
+def _check_growth(growth: GrowthRecord) -> None:
+    _check_numbers("growth", growth)
+    refuse_unless(any((growth.offset_percent, growth.mass_percent, growth.monolayer_error)), "growth",
+                  "leaves no range, all its figures are 0; give offset_percent, mass_percent or monolayer_error, "
+                  "or take it out")
 
 
 def _check_target(target: TargetRecord) -> None:

@@ -75,6 +75,24 @@ class LayerRecord(Record, frozen=True):
         return "explicit" if self.repeat is None else "group"
 
 
+class EndCellRecord(Record, frozen=True):
+    """One end cell, as shares of the cell's own thicknesses."""
+
+    barrier_share: float
+    well_share: float = 1.0
+
+
+class EndsRecord(Record, frozen=True):
+    """An end treatment (`ends.py` says what it comes to); lists run from the lead inwards."""
+
+    kind: Literal["half", "cells", "linear", "gaussian", "poisson"]
+    of: Literal["width", "height"] | None = None
+    cells: int | None = None
+    left_cells: tuple[EndCellRecord, ...] | None = None
+    right_cells: tuple[EndCellRecord, ...] | None = None
+    whole_monolayers: bool = False
+
+
 class StackRecord(Record, frozen=True, kw_only=True):
     """What lies between the leads."""
 
@@ -84,6 +102,7 @@ class StackRecord(Record, frozen=True, kw_only=True):
     entry: tuple[LayerRecord, ...] = ()
     cell: tuple[LayerRecord, ...]
     exit: tuple[LayerRecord, ...] = ()
+    ends: EndsRecord | None = None
 
 
 class WindowRecord(Record, frozen=True):
@@ -108,6 +127,14 @@ class TargetRecord(Record, frozen=True):
     windows: tuple[WindowRecord, ...] = ()
 
 
+class GrowthRecord(Record, frozen=True):
+    """How far a grown stack may be from the written one."""
+
+    offset_percent: float = default("offset_percent")
+    mass_percent: float = default("mass_percent")
+    monolayer_error: int = int(default("monolayer_error"))
+
+
 class UserMaterial(Record, frozen=True):
     """A material the scenario defines as [materials.NAME]."""
 
@@ -129,6 +156,7 @@ class Document(Record, frozen=True, kw_only=True):
     leads: Leads
     stack: StackRecord
     target: TargetRecord | None = None
+    growth: GrowthRecord | None = None
     materials: tuple[UserMaterial, ...] = ()
 
 
@@ -192,7 +220,9 @@ _TABLES: Mapping[str, tuple[type[Record], str]] = {
     "": (Document, "a scenario"), "conditions": (Conditions, "[conditions]"), "leads": (Leads, "[leads]"),
     "left": (LeadRecord, "a lead"), "right": (LeadRecord, "a lead"), "stack": (StackRecord, "[stack]"),
     "entry": (LayerRecord, "a layer"), "cell": (LayerRecord, "a layer"), "exit": (LayerRecord, "a layer"),
-    "layers": (LayerRecord, "a layer"), "target": (TargetRecord, "[target]"),
+    "layers": (LayerRecord, "a layer"), "ends": (EndsRecord, "[stack.ends]"),
+    "left_cells": (EndCellRecord, "an end cell"), "right_cells": (EndCellRecord, "an end cell"),
+    "growth": (GrowthRecord, "[growth]"), "target": (TargetRecord, "[target]"),
     "windows": (WindowRecord, "a window"), "materials": (UserMaterial, "a material"),
 }
 _TYPES = {"float": "a number", "int": "a whole number", "str": "text in quotes", "bool": "true or false",

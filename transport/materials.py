@@ -109,6 +109,12 @@ def is_alloy(name: str) -> bool:
     return name in _library().alloys
 
 
+def base_of(name: str) -> str | None:
+    """What an alloy of the library becomes at x = 0; None for a binary."""
+    alloy = _library().alloys.get(name)
+    return alloy.second if alloy else None
+
+
 @functools.lru_cache(maxsize=1024)
 def material(name: str, x: float | None, temperature: float, substrate: str | None = None) -> Material:
     """The library material `name` of composition `x` (None for a binary) at `temperature` (K).

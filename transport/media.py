@@ -18,7 +18,7 @@ from transport.refusal import ScenarioError, nearest, refuse_unless, shown
 @dataclass(frozen=True, slots=True)
 class Medium:
     """`material` (None where only an edge is given) with `band_edge` on the document's scale (eV), `mass` (m0),
-    `nonparabolicity` (1/eV) and, where it is known, `monolayer` (nm)."""
+    `nonparabolicity` (1/eV) and, where they are known, `monolayer` (nm) and `base`: what an alloy is at x = 0."""
 
     material: str | None
     x: float | None
@@ -27,6 +27,7 @@ class Medium:
     nonparabolicity: float
     monolayer: float | None = None
     warnings: tuple[str, ...] = ()
+    base: str | None = None
 
 
 class Media:
@@ -89,7 +90,7 @@ class Media:
         self.library.add(found.label)
         nonparabolicity = 1 / found.gap if self._conditions.nonparabolic else 0.0
         return Medium(name, x, found.band_edge - self._zero.band_edge, found.mass, nonparabolicity, found.monolayer,
-                      (*found.warnings, *self._mismatch_warning(found)))
+                      (*found.warnings, *self._mismatch_warning(found)), materials.base_of(name))
 
     def _mismatch_warning(self, found: Material) -> tuple[str, ...]:
         reference = self._substrate or self._zero

@@ -109,13 +109,10 @@ def period_verdict(
     most = target.most_periods if most is None else most
     if most < 1:
         raise ValueError(f"most: {most} periods asked for, give 1 or more")
-    stack, counts = scenario.stack, np.arange(1, most + 1)
-    share = 1 / len(target.windows)
-    records = tuple(
-        _record(stack, window, counts, scenario.resolution, _part(progress, i * share, share))
-        for i, window in enumerate(target.windows)
-    )
-    checks = tuple(_check(records, place) for place in range(most))
+    counts = np.arange(1, most + 1)
+    records = tuple(replace(record, floor=_limit(scenario, record.window))
+                    for record in histories(scenario, counts, progress))
+    checks = checked(records, counts)
     meeting = tuple(check.periods for check in checks if check.meets)
     floors = [r.floor for r in records if r.floor and r.window.measure == "minimum"]
     limits = [r.floor.value for r in records if r.floor and r.window.measure == "mean"]
@@ -123,7 +120,7 @@ def period_verdict(
     return Verdict(
         fewest=meeting[0] if meeting else None,
         meeting=meeting,
-        reason=None if meeting else why_not(stack, records, scenario.resolution),
+        reason=None if meeting else why_not(scenario.stack, records, scenario.resolution),
         ripple_floor=least.value if least else None,
         ripple_floor_energy=least.energy if least else None,
         mean_limit=min(limits, default=None),
@@ -132,27 +129,45 @@ def period_verdict(
     )
 
 
+def histories(
+    question: Question, counts: NDArray[np.int64], progress: Callable[[float], None] = no_progress
+) -> tuple[WindowHistory, ...]:
+    """Every window of the target at ascending `counts` of periods, exact; without the limits of many periods."""
+    windows = question.target.windows if question.target else ()
+    share = 1 / max(1, len(windows))
+    found = []
+    for place, window in enumerate(windows):
+        values = window_values(
+            question.stack, window, counts, question.resolution, _part(progress, place * share, share))
+        margin = 10 * (values.log10 - math.log10(window.transmission))
+        margin = np.where(abs(margin) < _ROUNDING, 0.0, margin)
+        margin = -margin if window.kind == "block" else margin
+        found.append(WindowHistory(window, values.log10, values.energy, margin))
+    return tuple(found)
+
+
+def checked(records: tuple[WindowHistory, ...], counts: NDArray[np.int64]) -> tuple[PeriodCheck, ...]:
+    """The check of each count, from the histories of all windows."""
+    return tuple(_check(records, place, int(count)) for place, count in enumerate(counts))
+
+
 def _part(progress: Callable[[float], None], begin: float, share: float) -> Callable[[float], None]:
     """Progress of one part of the work, told as progress of the whole."""
     return lambda done: progress(begin + done * share)
 
 
-def _record(
-    stack: Stack, window: Window, counts: NDArray[np.int64], resolution: float, progress: Callable[[float], None]
-) -> WindowHistory:
-    values = window_values(stack, window, counts, resolution, progress)
-    margin = 10 * (values.log10 - math.log10(window.transmission))
-    margin = np.where(abs(margin) < _ROUNDING, 0.0, margin)
-    if window.kind == "block":
-        margin = -margin
-    record = WindowHistory(window, values.log10, values.energy, margin, None)
-    if window.kind == "block" or stack.dephasing:
-        return record
-    return replace(record, floor=_limit(stack.lossless(), window, resolution))
+def _limit(question: Question, window: Window) -> Floor | None:
+    """The limit of a pass window; None for a block window, and with dephasing, which leaves none."""
+    if window.kind == "block" or question.stack.dephasing:
+        return None
+    return pass_limit(question.stack, window, question.resolution)
 
 
-def _limit(stack: Stack, window: Window, resolution: float) -> Floor | None:
-    """What a pass window's measure tends to as periods are added."""
+def pass_limit(stack: Stack, window: Window, resolution: float) -> Floor | None:
+    """What a pass window's measure tends to as periods of a lossless stack are added; None outside every miniband.
+
+    With a beam resolution (eV FWHM) it is the limit of what is measured.
+    """
     if resolution:
         limit = measured_limit(stack, window.bottom, window.top, resolution)
         if window.measure == "mean":
@@ -163,13 +178,13 @@ def _limit(stack: Stack, window: Window, resolution: float) -> Floor | None:
     return ripple_floor(stack, window)
 
 
-def _check(records: tuple[WindowHistory, ...], place: int) -> PeriodCheck:
+def _check(records: tuple[WindowHistory, ...], place: int, count: int) -> PeriodCheck:
     values = tuple(10.0 ** float(r.log10[place]) for r in records)
     closed = [i for i, r in enumerate(records) if r.window.kind == "pass" and r.log10[place] == -math.inf]
     if closed:
-        return PeriodCheck(place + 1, False, None, closed[0], values)
+        return PeriodCheck(count, False, None, closed[0], values)
     margins = {i: float(r.margin[place]) for i, r in enumerate(records) if r.log10[place] > -math.inf}
     if not margins:
-        return PeriodCheck(place + 1, True, None, None, values)
+        return PeriodCheck(count, True, None, None, values)
     limiting = min(margins, key=lambda i: margins[i])
-    return PeriodCheck(place + 1, margins[limiting] >= 0, margins[limiting], limiting, values)
+    return PeriodCheck(count, margins[limiting] >= 0, margins[limiting], limiting, values)

@@ -24,7 +24,7 @@ class WindowHistory:
     log10: Floats
     energy: Floats
     margin: Floats
-    floor: Floor | None
+    floor: Floor | None = None
 
     @property
     def met(self) -> NDArray[np.bool_]:
@@ -54,7 +54,7 @@ def _cause(stack: Stack, record: WindowHistory, resolution: float) -> str:
         )
     if stack.dephasing:
         return _short(record) + ", and with dephasing further periods only lose current"
-    place = _place(stack, window)
+    place = misplaced(stack, window)
     if place:
         return place
     if record.floor is not None and record.floor.value < window.transmission:
@@ -62,7 +62,7 @@ def _cause(stack: Stack, record: WindowHistory, resolution: float) -> str:
     return _short(record)
 
 
-def _place(stack: Stack, window: Window) -> str:
+def misplaced(stack: Stack, window: Window) -> str:
     """What is wrong with where a pass window lies; empty if it lies within one miniband."""
     bands = [b for b in minibands(stack, window.bottom, window.top) if b.top > window.bottom]
     if not bands:

@@ -7,12 +7,17 @@ import math
 from collections.abc import Iterable, Sequence
 from typing import Any
 
+import msgspec
 import numpy as np
 
+from transport.allowance import VerdictRange
+from transport.document import EndsRecord
 from transport.lattice import Bands
+from transport.matching import MatchedEnds
 from transport.measuring import measured_transmission
+from transport.nearest import NearestStacks, Remedy
 from transport.periods import Verdict
-from transport.scenario import Scenario
+from transport.scenario import Scenario, format_scenario
 from transport.spectrum import Spectrum
 
 Record = dict[str, Any]
@@ -90,6 +95,53 @@ def verdict_record(verdict: Verdict) -> Record:
     }
 
 
+def range_record(found: VerdictRange) -> Record:
+    """The range of a verdict, figure by figure and case by case."""
+    return {
+        "fewest_periods": found.nominal, "low": found.low, "high": found.high, "unanswered": found.unanswered,
+        "cases": [{"signs": list(case.signs), "fewest_periods": case.fewest} for case in found.cases],
+        "figures": [{"name": f.name, "fewest_low": f.low, "fewest_high": f.high} for f in found.figures],
+        "matters_most": found.matters_most, "sentence": found.sentence,
+    }
+
+
+def ends_record(found: MatchedEnds) -> Record:
+    """What end treatments do, the best first; `scenario` is the file to open or save."""
+    return {
+        "sentence": found.sentence, "windows": list(found.windows), "before": list(found.before),
+        "proposals": [
+            {"name": p.name, "ends": _plain(p.ends), "limits": list(p.limits), "gain_dB": p.gain_dB,
+             "scenario": format_scenario(p.scenario)}
+            for p in found.proposals
+        ],
+    }
+
+
+def remedy_record(found: NearestStacks) -> Record:
+    """The nearest stacks that meet the target, or the nearest miss; `scenario` is the file to open or save."""
+    return {
+        "sentence": found.sentence, "tried": found.tried, "together": found.together,
+        "proposals": [_remedy(remedy) for remedy in found.proposals],
+        "nearest_miss": None if found.miss is None else _remedy(found.miss),
+    }
+
+
+def _remedy(remedy: Remedy) -> Record:
+    return {
+        "words": remedy.words,
+        "changes": [{"layer": c.layer, "name": c.name, "monolayers": c.monolayers} for c in remedy.changes],
+        "ends": None if remedy.ends is None else _plain(remedy.ends),
+        "periods": remedy.check.periods, "margin_dB": remedy.check.margin_dB,
+        "limiting_window": remedy.check.limiting_window, "length_nm": remedy.length,
+        "scenario": format_scenario(remedy.scenario),
+    }
+
+
+def _plain(ends: EndsRecord) -> Record:
+    """The table [stack.ends] without its absent keys."""
+    return {key: value for key, value in msgspec.to_builtins(ends).items() if value is not None}
+
+
 def layers_record(scenario: Scenario) -> Record:
     """The grower's sheet, from the left lead's side."""
     return {
@@ -155,6 +207,24 @@ def verdict_text(verdict: Verdict) -> str:
         lines.append(f"Mean limit {verdict.mean_limit:.4g}.")
     rows = [(c.periods, c.meets, c.margin_dB, c.limiting_window) for c in verdict.per_period]
     return "\n".join([*lines, table(("periods", "meets", "margin_dB", "limiting_window"), rows)])
+
+
+def ends_text(found: MatchedEnds) -> str:
+    """What end treatments do, as a table of limits."""
+    if not found.proposals:
+        return found.sentence
+    rows = [(None, *found.before), *((p.gain_dB, *p.limits) for p in found.proposals)]
+    lines = table(("gain_dB", *(f"limit_of_window_{place}" for place in found.windows)), rows).split("\n")
+    words = ["ends", "as they are", *(p.name for p in found.proposals)]
+    return "\n".join([found.sentence, *(f"{line}  {what}" for line, what in zip(lines, words, strict=True))])
+
+
+def remedy_text(found: NearestStacks) -> str:
+    """The nearest stacks that meet the target, as a table."""
+    rows = [(p.check.periods, p.check.margin_dB, p.length) for p in found.proposals]
+    lines = table(("periods", "margin_dB", "length_nm"), rows).split("\n") if rows else []
+    words = ["change", *(p.words for p in found.proposals)]
+    return "\n".join([found.sentence, *(f"{line}  {what}" for line, what in zip(lines, words, strict=False))])
 
 
 def layers_text(scenario: Scenario) -> str:

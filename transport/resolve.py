@@ -7,6 +7,7 @@ from dataclasses import dataclass, replace
 
 from transport.checks import written_out
 from transport.document import Document, LayerRecord, LeadRecord, WindowRecord, default_measure
+from transport.ends import KEY, end_layers
 from transport.materials import OFFSET_WARNING
 from transport.media import Media, Medium
 from transport.parameters import PARAMETERS
@@ -37,6 +38,11 @@ class SheetRow:
     warnings: tuple[str, ...] = ()
 
 
+def monolayer_of(row: SheetRow) -> float:
+    """Thickness of one monolayer in nm; for a layer whose material has none, about that of GaAs (common practice)."""
+    return row.thickness / row.monolayers if row.thickness and row.monolayers else 0.2827
+
+
 @dataclass(frozen=True, slots=True)
 class Resolved:
     """What a document comes to."""
@@ -54,12 +60,12 @@ def resolve(document: Document) -> Resolved:
     zero = media.medium("leads.left", document.leads.left).band_edge
     sheet = tuple(_sheet(document, media, zero))
     stack = Stack(
-        left=_lead(sheet[0]),
+        left=lead_of(sheet[0]),
         entry=_elements(sheet, "entry"),
         cell=_elements(sheet, "cell"),
         periods=document.stack.periods,
         exit=_elements(sheet, "exit"),
-        right=_lead(sheet[-1]),
+        right=lead_of(sheet[-1]),
         dephasing=document.conditions.dephasing_meV / 1000,
     )
     return Resolved(stack, _target(document), sheet, _warnings(sheet, media))
@@ -89,10 +95,16 @@ def _built_in_drop(left: LeadRecord, right: LeadRecord) -> bool:
 
 
 def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:
+    stack = document.stack
+    left, right = end_layers(stack.ends, stack.cell, media.medium) if stack.ends else ((), ())
+    parts = {
+        "entry": [*written_out("stack.entry", stack.entry), *((KEY, record) for record in left)],
+        "cell": written_out("stack.cell", stack.cell),
+        "exit": [*((KEY, record) for record in right), *written_out("stack.exit", stack.exit)],
+    }
     yield _row("left lead", "leads.left", media.medium("leads.left", document.leads.left), zero)
-    for part in ("entry", "cell", "exit"):
-        for key, record in written_out(f"stack.{part}", getattr(document.stack, part)):
-            yield _layer_row(part, key, record, media, zero)
+    for part, layers in parts.items():
+        yield from (_layer_row(part, key, record, media, zero) for key, record in layers)
     yield _row("right lead", "leads.right", media.medium("leads.right", document.leads.right), zero)
 
 
@@ -125,17 +137,19 @@ def _thickness(key: str, record: LayerRecord, medium: Medium) -> tuple[float, fl
 
 
 def _elements(sheet: tuple[SheetRow, ...], part: str) -> tuple[Element, ...]:
-    return tuple(_element(row) for row in sheet if row.where == part)
+    return tuple(element_of(row) for row in sheet if row.where == part)
 
 
-def _element(row: SheetRow) -> Element:
+def element_of(row: SheetRow) -> Element:
+    """The layer or delta that a line of the sheet describes."""
     if row.strength is not None:
         return Delta(row.strength)
     assert None not in (row.thickness, row.band_edge, row.mass)
     return Layer(row.thickness or 0.0, row.band_edge or 0.0, row.mass or 0.0, row.nonparabolicity or 0.0)
 
 
-def _lead(row: SheetRow) -> Lead:
+def lead_of(row: SheetRow) -> Lead:
+    """The lead that a line of the sheet describes."""
     assert row.band_edge is not None and row.mass is not None
     return Lead(row.band_edge, row.mass, row.nonparabolicity or 0.0)
 

@@ -107,6 +107,12 @@ class Stack:
         """Length of one cell in nm."""
         return math.fsum(thickness(element) for element in self.cell)
 
+    @property
+    def length(self) -> float:
+        """Length of the whole stack in nm, all periods and end layers."""
+        ends = math.fsum(thickness(element) for element in self.entry + self.exit)
+        return self.periods * self.period_length + ends
+
     def with_periods(self, periods: int) -> Stack:
         """The same stack with another number of periods."""
         return replace(self, periods=periods)

@@ -1,5 +1,6 @@
 """The command line as a user meets it: keys, exit statuses, one sentence for each mistake."""
 
+import contextlib
 import json
 import subprocess
 import sys
@@ -143,3 +144,51 @@ def test_a_reader_that_stops_early_leaves_no_traceback(scenario: str) -> None:
     done = subprocess.run(command, shell=True, capture_output=True, text=True, check=False)
     assert done.stdout.split()[0] == "energy_meV"
     assert done.stderr == ""
+
+
+PASSING = SCENARIO.replace("windows = [ ", """windows = [
+    { kind = "pass", from_meV = 76, to_meV = 84, transmission = 0.5, measure = "mean" }, """)
+
+
+@pytest.fixture
+def passing(tmp_path: Path) -> str:
+    path = tmp_path / "passing.toml"
+    path.write_text(PASSING)
+    return str(path)
+
+
+def test_ends_lists_what_raises_the_pass_windows(passing: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "ends", passing)
+    assert set(found) == {"sentence", "windows", "before", "proposals"}
+    assert found["windows"] == [0]
+    assert found["proposals"][0]["limits"][0] > found["before"][0]
+
+
+def test_a_saved_remedy_meets_the_target(passing: str, tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    new = str(tmp_path / "mended.toml")
+    found = answer(capsys, "remedy", passing, "--save", new)
+    first = found["proposals"][0]
+    assert answer(capsys, "periods", new)["per_period"][first["periods"] - 1]["meets"] is True
+    assert main(["remedy", passing, "--save", new]) == 2
+    assert capsys.readouterr().err == f"--save: {new} is there already, choose another name\n"
+
+
+def test_periods_gives_the_range_where_it_is_asked_for(passing: str, capsys: pytest.CaptureFixture[str]) -> None:
+    assert "range" not in answer(capsys, "periods", passing)
+    found = answer(capsys, "periods", passing, "--range", "--most", "15")
+    assert found["range"]["fewest_periods"] == found["fewest_periods"]
+    assert found["range"]["sentence"].endswith(".")
+
+
+@pytest.mark.parametrize(("arguments", "sentence"), [
+    (["ends", "--cells", "5"], "cells: is 5, a taper longer than the stack of 4 periods; ask for at most 4\n"),
+    (["ends", "--cells", "0"], "argument --cells: '0' must be a whole number from 1 to 20"),
+    (["remedy", "--monolayers", "11"], "argument --monolayers: '11' must be a whole number from 1 to 10"),
+])
+def test_wrong_options_of_the_remedies_are_one_sentence(
+    arguments: list[str], sentence: str, passing: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    command, *rest = arguments
+    with contextlib.suppress(SystemExit):
+        assert main([command, passing, *rest]) == 2
+    assert capsys.readouterr().err.startswith(sentence)

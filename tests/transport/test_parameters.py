@@ -11,7 +11,8 @@ from transport import document
 from transport.parameters import PARAMETERS, Parameter, default
 
 RECORDS = [document.Conditions, document.LeadRecord, document.LayerRecord, document.StackRecord, document.WindowRecord,
-           document.TargetRecord, document.UserMaterial]
+           document.TargetRecord, document.UserMaterial, document.EndsRecord, document.EndCellRecord,
+           document.GrowthRecord]
 
 
 @pytest.mark.parametrize("record", RECORDS)

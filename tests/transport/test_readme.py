@@ -33,8 +33,14 @@ def limits() -> str:
 
 
 def test_the_scenario_is_met() -> None:
-    (text,) = blocks("toml")
+    text, _ = blocks("toml")
     assert period_verdict(parse_scenario(text)).fewest is not None
+
+
+def test_the_optional_tables_are_read() -> None:
+    scenario = parse_scenario("\n".join(blocks("toml")))
+    assert scenario.document.stack.ends is not None and scenario.document.growth is not None
+    assert len(scenario.stack.entry) == 2
 
 
 def test_the_program_runs(monkeypatch: pytest.MonkeyPatch) -> None:

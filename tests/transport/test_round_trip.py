@@ -18,6 +18,7 @@ from transport import (
 )
 from transport.document import (
     Conditions,
+    GrowthRecord,
     LayerRecord,
     LeadRecord,
     Leads,
@@ -104,6 +105,8 @@ def documents(draw: st.DrawFn) -> Document:
         stack=StackRecord(periods=draw(st.integers(1, 1_000_000)), entry=draw(parts(users)),
                           cell=tuple(draw(st.lists(layers(users), min_size=1, max_size=3))), exit=draw(parts(users))),
         target=draw(st.none() | target),
+        growth=draw(st.none() | st.builds(GrowthRecord, st.floats(0.01, 50), numbers("mass_percent"),
+                                          st.integers(0, 10))),
         materials=tuple(materials),
     )
 

@@ -39,9 +39,22 @@ WRONG_FILES = {
     "format true": ("format = 1", "format = true", "format: is true, but this version reads format = 1 only"),
     "format 1.0": ("format = 1", "format = 1.0", "format: is 1.0, but this version reads format = 1 only"),
     "unknown section": (
-        "[target]", "[growth]\nrate = 1\n[target]",
-        "growth: is not a key of a scenario; known here: format, title, note, conditions, leads, stack, "
-        "target, materials",
+        "[target]", "[cooling]\nrate = 1\n[target]",
+        "cooling: is not a key of a scenario; known here: format, title, note, conditions, leads, stack, "
+        "target, growth, materials",
+    ),
+    "growth out of limits": (
+        "[target]", "[growth]\nmass_percent = 51\n[target]",
+        "growth.mass_percent: must be from 0 to 50 %, but is 51.0",
+    ),
+    "growth misspelt": (
+        "[target]", "[growth]\nmonolayers = 1\n[target]",
+        "growth.monolayers: is not a key of [growth]; did you mean monolayer_error?",
+    ),
+    "growth of nothing": (
+        "[target]", "[growth]\noffset_percent = 0\nmass_percent = 0\nmonolayer_error = 0\n[target]",
+        "growth: leaves no range, all its figures are 0; give offset_percent, mass_percent or monolayer_error, "
+        "or take it out",
     ),
     "misspelt section": ("[target]", "[targets]", "targets: is not a key of a scenario; did you mean target?"),
     "misspelt key": (
@@ -78,7 +91,7 @@ WRONG_FILES = {
     ),
     "line break in a key": (
         "periods = 8", 'periods = 8\n"a\\nb" = 1',
-        "stack.a\\nb: is not a key of [stack]; known here: periods, bias_V, drop_V, entry, cell, exit",
+        "stack.a\\nb: is not a key of [stack]; known here: periods, bias_V, drop_V, entry, cell, exit, ends",
     ),
     # text
     "title a number": ('"sound"', "3", "title: must be text in quotes, but is 3"),
