@@ -11,6 +11,7 @@ from dataclasses import dataclass, replace
 from itertools import product
 
 import numpy as np
+from numpy.typing import NDArray
 
 from transport.document import GrowthRecord
 from transport.fewest import Asked, fewest_periods
@@ -59,6 +60,11 @@ class VerdictRange:
     matters_most: str | None
     sentence: str
 
+    @property
+    def assumed(self) -> str:
+        """What may be off, in words."""
+        return "For " + ", ".join(figure.name for figure in self.figures) + ", each alone and all at once."
+
 
 def verdict_range(scenario: Scenario, progress: Callable[[float], None] = no_progress) -> VerdictRange:
     """The range of a scenario's verdict for the figures of its `[growth]`, or their defaults.
@@ -97,16 +103,16 @@ def verdict_range(scenario: Scenario, progress: Callable[[float], None] = no_pro
 
 
 def margin_range(
-    scenario: Scenario, found: VerdictRange, progress: Callable[[float], None] = no_progress
+    scenario: Scenario,
+    found: VerdictRange,
+    counts: NDArray[np.int64],
+    progress: Callable[[float], None] = no_progress,
 ) -> tuple[Floats, Floats]:
-    """The least and the largest margin (dB) of each count from 1 to the most, over all cases of a range.
+    """The least and the largest margin (dB) of each of some ascending counts, over all cases of a range.
 
     NaN where no case has a margin.
     """
-    if scenario.target is None:
-        raise ValueError("target.windows: give at least one pass or block window to decide by")
     off = Deviations.of(scenario)
-    counts = np.arange(1, scenario.target.most_periods + 1)
     low, high = np.full(counts.size, np.inf), np.full(counts.size, -np.inf)
     for place, case in enumerate(found.cases):
         margins = np.array([np.nan if check.margin_dB is None else check.margin_dB

@@ -30,6 +30,7 @@ LONGEST_TAPER = 4
 """End cells that a taper is given at most, unless more are asked for."""
 
 _SHAPES: tuple[Literal["linear", "gaussian", "poisson"], ...] = ("linear", "gaussian", "poisson")
+_SHAPE_NAMES = {"linear": "linear", "gaussian": "Gaussian", "poisson": "Poisson"}
 _SAMPLES = 33
 _LEAST_GAIN = 0.01  # dB: less is none
 _BARRIERS, _WELLS = np.linspace(0.2, 1.1, 7), np.linspace(0.55, 1.45, 7)
@@ -118,7 +119,7 @@ def describe_ends(ends: EndsRecord) -> str:
             return f"{count} at each end: {_in_words(left)}{whole}"
         return f"{count} at each end: left {_in_words(left)}; right {_in_words(right)}{whole}"
     cells = "1 cell" if (ends.cells or 1) == 1 else f"{ends.cells} cells"
-    return f"{ends.kind} taper of the barriers' {ends.of or 'width'} over {cells} at each end{whole}"
+    return f"{_SHAPE_NAMES[ends.kind]} taper of the barriers' {ends.of or 'width'} over {cells} at each end{whole}"
 
 
 def _in_words(cells: Iterable[EndCellRecord]) -> str:

@@ -14,14 +14,18 @@ from bokeh.document import Document
 from panel.io.document import hold
 
 from transport import Verdict
+from transport.document import GrowthRecord
 from webapp import messages as say
 from webapp.bench import Bench
 from webapp.editor import Rail
 from webapp.figures.board import Board
 from webapp.files import Entry, Folder
 from webapp.latest import Latest, Stop
+from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
-from webapp.results import Question, Span, most_periods, natural_span, question
+from webapp.ranges import Ranges
+from webapp.remedies import Remedies
+from webapp.results import Band, Question, Span, most_periods, natural_span, question
 from webapp.theme import LIGHT, PALETTES, css_variables
 from webapp.wire import Wire
 from webapp.work import Pictures, Wanted, pictures, verdict
@@ -44,6 +48,8 @@ class Session:
         self._question: Question | None = None
         self._verdict: Verdict | None = None
         self._verdict_state = "none"
+        self._range: dict[str, str] | None = None
+        self._growth: GrowthRecord | None = None
         self._held: tuple[object, ...] = ()
         self._wanted: Wanted | None = None
         self._page: asyncio.TimerHandle | None = None
@@ -56,6 +62,8 @@ class Session:
         self._pictures = Latest(pictures, self._later(self._show_pictures), self._later(self._fail_pictures))
         self._verdicts = Latest(self._work_out, self._later(self._show_verdict), self._later(self._fail_verdict),
                                 interrupts=True)
+        self._ranges = Ranges(self._tell_range, self._draw_band, self._later)
+        self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
             lambda _, stop: bench.folder.entries(), self._later(self._show_files), self._later(self._fail_files))
 
@@ -63,6 +71,8 @@ class Session:
         """The visitor has gone."""
         for worker in (self._pictures, self._verdicts, self._listing):
             worker.cancel()
+        self._ranges.forget()
+        self._remedies.forget()
         if self._page is not None:
             self._page.cancel()
 
@@ -91,6 +101,10 @@ class Session:
                 self._tell_verdict()
             case say.Again():
                 self._ask_verdict(question(self._bench.scenario))
+            case say.Propose(what=what, whole=whole):
+                self._remedies.look(self._bench.scenario, what, whole)
+            case say.StopProposing():
+                self._remedies.stop()
             case say.Save(name=name, agreed=agreed):
                 objections = self._bench.save(name, agreed)
                 if objections:
@@ -107,6 +121,7 @@ class Session:
 
     def _edit(self, message: say.AnyMessage) -> None:
         bench, place = self._bench, self._bench.place
+        self.board.passes.forget()
         match message:
             case say.Set(path=path, text=text):
                 bench.set(path, text)
@@ -122,12 +137,19 @@ class Session:
                 bench.delete(path, index)
             case say.Move(path=path, index=index, by=by):
                 bench.move(path, index, by)
+            case say.DropEnds():
+                bench.drop_ends()
+            case say.Adopt(index=index):
+                if proposal := self._remedies.chosen(index):
+                    self.board.passes.remember()
+                    bench.adopt(proposal.scenario, proposal.words)
             case say.Undo():
                 bench.undo()
             case say.Redo():
                 bench.redo()
             case say.Open(name=name):
                 bench.open(name)
+        self._tell_shown()
         self._follow(reset=bench.place != place)
 
     # To the browser.
@@ -145,10 +167,13 @@ class Session:
             self.wire.tell(status=self._status())
         self._ask_pictures()
         if asked != self._question:
+            self._remedies.follow(asked)
             self.board.passes.ask(asked.target)
             self._ask_verdict(asked)
         else:
             self._tell_verdict()
+            if self._verdict_state == "known" and self._growth != self._bench.document.growth:
+                self._ask_range()
 
     def _show_span(self, natural: Span, reset: bool) -> None:
         """Follow the stack with the energy axis, unless the user has chosen another part of it."""
@@ -179,7 +204,21 @@ class Session:
         view = verdict_view(self._verdict, self._bench.scenario.stack.periods, self._palette)
         if self._verdict_state != "known":
             view = {"state": self._verdict_state, "sentence": "", "present": "", "legend": [], "share": self._share}
-        self.wire.tell(verdict=view)
+        self.wire.tell(verdict={**view, "range": self._range})
+
+    def _tell_range(self, found: dict[str, str] | None) -> None:
+        self._range = found
+        if self._verdict_state == "known":
+            self._tell_verdict()
+
+    def _draw_band(self, band: Band | None) -> None:
+        self.board.periods.margins.show_range(band)
+        self._tell_shown()
+
+    def _tell_shown(self) -> None:
+        """Which of the extra curves are on screen, for the captions."""
+        self.wire.tell(shown={"range": self.board.periods.margins.shows_range,
+                              "earlier": self.board.passes.shows_before})
 
     def _paint(self, theme: str) -> None:
         self._palette = PALETTES[theme]
@@ -227,10 +266,11 @@ class Session:
 
     def _fail_pictures(self, wanted: Wanted, error: Exception) -> None:
         self.board.clear()
-        self.wire.tell(pictured={"version": wanted.version, "fault": _in_words(error)})
+        self.wire.tell(pictured={"version": wanted.version, "fault": in_words(error)})
 
     def _ask_verdict(self, asked: Question) -> None:
         self._question, self._share, self._verdict_state = asked, 0.0, "working"
+        self._ranges.forget()
         self._tell_verdict()
         self._verdicts.ask(asked)
         asyncio.get_running_loop().create_task(self._watch(asked))
@@ -259,25 +299,24 @@ class Session:
         self._verdict, self._verdict_state = found, "known"
         self._tell_verdict()
         self.wire.tell(texts=self.board.show_verdict(found))
+        self._ask_range()
+
+    def _ask_range(self) -> None:
+        self._growth = self._bench.document.growth
+        self._ranges.forget()
+        self._ranges.ask(self._bench.scenario)
 
     def _fail_verdict(self, asked: Question, error: Exception) -> None:
         self._verdict, self._verdict_state = None, "none"
         self.board.periods.margins.show(None)
-        self.wire.tell(verdict={"state": "fault", "sentence": _in_words(error), "present": "", "legend": []})
+        self.wire.tell(verdict={"state": "fault", "sentence": in_words(error), "present": "", "legend": []})
 
     def _show_files(self, _: None, entries: tuple[Entry, ...]) -> None:
         self.wire.tell(files=[{"name": e.name, "title": e.title, "note": e.note, "problem": e.problem}
                               for e in entries])
 
     def _fail_files(self, _: None, error: Exception) -> None:
-        self.wire.tell(files=[], objection=_in_words(error))
-
-
-def _in_words(error: Exception) -> str:
-    """A refusal of the engine is a sentence; anything else is a fault of ours, which the log has in full."""
-    if isinstance(error, ValueError):
-        return str(error)
-    return "Something went wrong within the program; the server's log says what. Undo the last edit to go on."
+        self.wire.tell(files=[], objection=in_words(error))
 
 
 def session(folder: Folder) -> None:

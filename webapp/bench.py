@@ -176,6 +176,15 @@ class Bench:
         if index + by >= 0 and self._holds(f"{path}[{index}]") and self._holds(f"{path}[{index + by}]"):
             self._rearrange(path, lambda data: edits.exchanged(data, path, index, index + by), "move")
 
+    def adopt(self, scenario: Scenario, step: str) -> None:
+        """Take on a scenario that was proposed; undo leads back, to the drafts as well."""
+        self._enter(State(scenario.document, {}, self.place, step), scenario)
+
+    def drop_ends(self) -> None:
+        """Take the end treatment away."""
+        self._rearrange("stack.ends", lambda data: (edits.with_value(data, "stack.ends", None), lambda old: old),
+                        "ends taken away")
+
     def undo(self) -> None:
         """One step back."""
         if self._past:
@@ -244,7 +253,7 @@ class Bench:
     def _holds(self, path: str) -> bool:
         """Whether there is a record at `path`: a message about a row may arrive after the row is gone."""
         data = document_to_data(self.document)
-        return path in ("", "target") or edits.value_at(data, path) is not None
+        return path in ("", "target", "growth") or edits.value_at(data, path) is not None
 
     def _use(self, drafts: Drafts, path: str, step: str) -> None:
         """Bring as many drafts into force as go together, those beside the one at `path` before the others."""

@@ -8,7 +8,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-from transport.document import LayerRecord, LeadRecord, WindowRecord, default_measure
+from transport import describe_ends
+from transport.document import GrowthRecord, LayerRecord, LeadRecord, WindowRecord, default_measure
 from transport.materials import material_names, substrate_names
 from transport.parameters import PARAMETERS, default
 from transport.resolve import SheetRow
@@ -23,6 +24,9 @@ _LABELS = {
     "temperature_K": "temperature", "dephasing_meV": "dephasing", "resolution_meV": "beam resolution",
     "band_edge_eV": "band edge", "mass": "mass", "nonparabolicity_per_eV": "non-parabolicity", "x": "x",
     "thickness_nm": "thickness", "monolayers": "thickness", "delta_eV_nm": "strength", "repeat": "repeat",
+    "cells": "cells at each end", "barrier_share": "barrier", "well_share": "well",
+    "offset_percent": "band offsets \N{PLUS-MINUS SIGN}", "mass_percent": "masses \N{PLUS-MINUS SIGN}",
+    "monolayer_error": "layers \N{PLUS-MINUS SIGN}",
     "periods": "periods", "most_periods": "most periods", "from_meV": "from", "to_meV": "to",
 }
 _UNITS = {"m0": "m\N{SUBSCRIPT ZERO}", "1/eV": "eV\N{SUPERSCRIPT MINUS}\N{SUPERSCRIPT ONE}", "monolayers": "ML"}
@@ -48,7 +52,7 @@ class Rail:
         return {
             "periods": self._periods(),
             "parts": [self._conditions(), self._lead("left"), *(self._part(name) for name in _PARTS),
-                      self._lead("right"), self._target(), self._about()],
+                      self._lead("right"), self._ends(), self._target(), self._growth(), self._about()],
         }
 
     # One field.
@@ -174,6 +178,32 @@ class Rail:
             self._number(path, "to_meV", window.to_meV),
             self._number(path, "transmission", window.transmission, asked),
         ]}
+
+    def _ends(self) -> View:
+        ends = self._document.stack.ends
+        if ends is None:
+            return {"id": "ends", "title": "Matched ends", "fields": [], "acts": [],
+                    "help": "None. Periods, below the bench, proposes end layers that raise what the windows pass."}
+        path, fields, described = "stack.ends", [], describe_ends(ends)
+        if ends.cells is not None:
+            fields.append(self._number(path, "cells", ends.cells))
+        for side in ("left", "right"):
+            for index, cell in enumerate(getattr(ends, f"{side}_cells") or ()):
+                fields += [self._number(f"{path}.{side}_cells[{index}]", name, getattr(cell, name),
+                                        f"{side} cell {index + 1}, {_LABELS[name]}")
+                           for name in ("barrier_share", "well_share")]
+        fields.append(self._field(f"{path}.whole_monolayers", ends.whole_monolayers, "whole monolayers", kind="check",
+                                  help="thicknesses of the end cells rounded to whole monolayers"))
+        return {"id": "ends", "title": "Matched ends", "fields": fields,
+                "help": f"{described[:1].upper()}{described[1:]}.",
+                "acts": [{"label": "Take the ends away", "type": "dropends"}]}
+
+    def _growth(self) -> View:
+        growth = self._document.growth or GrowthRecord()
+        return {"id": "growth", "title": "Growth", "fields": [
+            self._number("growth", name, getattr(growth, name))
+            for name in ("offset_percent", "mass_percent", "monolayer_error")],
+            "help": "How far a grown sample may be off: what the range of the verdict is worked out for."}
 
     def _about(self) -> View:
         return {"id": "about", "title": "Title and note", "fields": [

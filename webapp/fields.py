@@ -15,7 +15,8 @@ from webapp.edits import Data
 CHOICE, UNIT = "choice", "unit"
 """Fields that are no keys of the file: what a layer or lead is, and in what its thickness is given."""
 
-_TEXTS = ("title", "note", "name", "measure", "substrate", "kind")
+_TEXTS = ("title", "note", "name", "measure", "substrate", "kind", "of")
+_SWITCHES = ("nonparabolic", "whole_monolayers")
 _EMPTY_IS_TEXT = ("title", "note")
 
 
@@ -62,7 +63,7 @@ def _zero(document: Document) -> float:
 
 
 def _value(path: str, name: str, text: str) -> Any:
-    if name == "nonparabolic":
+    if name in _SWITCHES:
         return text == "true"
     if name in _TEXTS:
         return text if text or name in _EMPTY_IS_TEXT else None

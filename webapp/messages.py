@@ -1,4 +1,4 @@
-"""What the browser may say: one record for each kind of message, checked before anything acts on it."""
+"""What the browser may say, one record for each kind of message, and how it is told of a fault."""
 
 from __future__ import annotations
 
@@ -89,6 +89,27 @@ class Move(Message, frozen=True):
     by: Literal[-1, 1]
 
 
+class DropEnds(Message, frozen=True):
+    """The end treatment goes."""
+
+
+class Propose(Message, frozen=True):
+    """Look for matched ends, or for the nearest stacks that meet the target."""
+
+    what: Literal["ends", "nearest"]
+    whole: bool = False
+
+
+class StopProposing(Message, frozen=True):
+    """Give up looking."""
+
+
+class Adopt(Message, frozen=True):
+    """Take a proposal, by its place in the list on screen."""
+
+    index: int
+
+
 class Undo(Message, frozen=True):
     """One step back."""
 
@@ -123,7 +144,14 @@ class Again(Message, frozen=True):
 
 
 AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
-              | Redo | Browse | Open | Save | Cancel | Again)
+              | Redo | DropEnds | Propose | StopProposing | Adopt | Browse | Open | Save | Cancel | Again)
+
+
+def in_words(error: Exception) -> str:
+    """A refusal of the engine is a sentence; anything else is a fault of ours, which the log has in full."""
+    if isinstance(error, ValueError):
+        return str(error)
+    return "Something went wrong within the program; the server's log says what. Undo the last edit to go on."
 
 
 def read(data: object) -> AnyMessage:

@@ -31,6 +31,7 @@ from transport.parameters import PARAMETERS, default
 from transport.structure import Layer
 
 Floats = NDArray[np.float64]
+Counts = NDArray[np.int64]
 Span = tuple[float, float]
 
 MOST_DRAWN_PERIODS = 400
@@ -180,6 +181,15 @@ def _tabled(infinite: Lattice, share: Floats) -> Floats:
 def drawn_profile(stack: Stack) -> Profile:
     """The band edge along the stack, at most MOST_DRAWN_PERIODS of its periods."""
     return band_profile(stack.with_periods(min(stack.periods, MOST_DRAWN_PERIODS)))
+
+
+@dataclass(frozen=True, slots=True)
+class Band:
+    """The range of the margins, count by count (dB; NaN where there is none)."""
+
+    counts: Counts
+    low: Floats
+    high: Floats
 
 
 @dataclass(frozen=True, slots=True)

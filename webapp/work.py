@@ -4,10 +4,27 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from typing import Literal
 
-from transport import Profile, Scenario, Verdict, period_verdict, spectrum
+import numpy as np
+
+from transport import (
+    Profile,
+    Scenario,
+    Verdict,
+    VerdictRange,
+    margin_range,
+    matched_ends,
+    nearest_stacks,
+    period_verdict,
+    spectrum,
+    verdict_range,
+)
+from transport.periods import no_progress
 from webapp.latest import Stop
+from webapp.pages.remedies import Proposal, of_ends, of_stacks
 from webapp.results import (
+    Band,
     Emergence,
     Floats,
     Lattice,
@@ -23,6 +40,10 @@ from webapp.results import (
     points,
     question,
 )
+
+MOST_RANGED = 240
+"""The largest count up to which the range of the margins is worked out."""
+_RANGED = 60
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,9 +85,50 @@ def verdict(asked: Question, stop: Stop, progress: Callable[[float], None]) -> V
     """Work out the verdict; None where no window is asked. Raises Stopped, and ValueError where the model ends."""
     if asked.target is None or not asked.target.windows:
         return None
+    return period_verdict(asked, progress=_checked(stop, progress))
 
-    def checked(share: float) -> None:
+
+def _checked(stop: Stop, progress: Callable[[float], None] = no_progress) -> Callable[[float], None]:
+    """Progress that also stops the work where that is asked."""
+
+    def told(share: float) -> None:
         stop.check()
         progress(share)
 
-    return period_verdict(asked, progress=checked)
+    return told
+
+
+def range_of(scenario: Scenario, stop: Stop) -> VerdictRange | None:
+    """The range of a scenario's verdict; None where no window is asked. Raises Stopped."""
+    if scenario.target is None or not scenario.target.windows:
+        return None
+    return verdict_range(scenario, _checked(stop))
+
+
+def band_of(asked: tuple[Scenario, VerdictRange], stop: Stop) -> Band | None:
+    """The range of the margins; None for more counts than are worth the wait. Raises Stopped."""
+    scenario, found = asked
+    most = most_periods(scenario.target)
+    if most > MOST_RANGED:
+        return None
+    counts = np.unique(np.linspace(1, most, min(most, _RANGED)).round().astype(np.int64))
+    return Band(counts, *margin_range(scenario, found, counts, _checked(stop)))
+
+
+@dataclass(frozen=True, slots=True)
+class Search:
+    """A remedy to look for; ends in whole monolayers or not."""
+
+    scenario: Scenario
+    what: Literal["ends", "nearest"]
+    whole: bool
+
+
+def proposals(search: Search, stop: Stop, progress: Callable[[float], None]) -> tuple[str, tuple[Proposal, ...]]:
+    """What is found, in a sentence and as proposals. Raises Stopped, and ScenarioError where there is nothing to do."""
+    told = _checked(stop, progress)
+    if search.what == "ends":
+        ends = matched_ends(search.scenario, search.whole, progress=told)
+        return ends.sentence, of_ends(ends)
+    stacks = nearest_stacks(search.scenario, progress=told)
+    return stacks.sentence, of_stacks(stacks)

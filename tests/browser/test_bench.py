@@ -8,7 +8,7 @@ import pytest
 from playwright.sync_api import Page, expect
 
 from tests.browser.conftest import Served, ready
-from transport import load_scenario, period_verdict, spectrum
+from transport import load_scenario, nearest_stacks, period_verdict, spectrum, verdict_range
 
 PICTURE = Path(__file__).with_name("bench.png")
 
@@ -115,6 +115,51 @@ def test_a_verdict_that_is_impossible_says_why(page: Page) -> None:
     expect(page.locator("#sentence")).to_contain_text("overlaps miniband 1")
     opened(page, "Reed sill, bare ends")
     expect(page.locator("#sentence")).to_contain_text("ripple floor")
+
+
+def test_a_refusal_is_mended_by_a_remedy_and_undone_with_one_key(page: Page, served: Served) -> None:
+    opened(page, "Reed sill, bare ends")
+    refusal = period_verdict(load_scenario(served.folder / "reed-sill-bare.toml")).sentence
+    expect(page.locator("#sentence")).to_have_text(refusal)
+    page.get_by_role("button", name="Find a remedy").click()
+    remedy = nearest_stacks(load_scenario(served.folder / "reed-sill-bare.toml"))
+    expect(page.locator("#remedies-sentence")).to_have_text(remedy.sentence)
+    expect(page.locator(".proposal")).to_have_count(len(remedy.proposals))
+
+    page.locator(".proposal").first.get_by_role("button").click()
+    taken = remedy.proposals[0]
+    expect(page.locator("#sentence")).to_have_text(period_verdict(taken.scenario).sentence)
+    expect(page.locator("#periods-shown")).to_have_text(f"{taken.check.periods} periods")
+    expect(page.locator("#earlier")).to_be_visible()
+    assert len(drawn(page, "before", "energy")) > 100
+    page.keyboard.press("Control+z")
+    expect(page.locator("#sentence")).to_have_text(refusal)
+    expect(page.locator("#earlier")).to_be_hidden()
+
+    page.get_by_role("button", name="Match the ends").click()
+    expect(page.locator("#remedies-sentence")).to_contain_text("Matched ends raise the ripple floor")
+    page.locator(".proposal").first.get_by_role("button").click()
+    expect(page.get_by_role("button", name="Take the ends away")).to_be_visible()
+    page.get_by_role("button", name="Take the ends away").click()
+    expect(page.get_by_role("button", name="Take the ends away")).to_have_count(0)
+
+
+def test_the_verdict_comes_with_its_range_and_follows_the_growers_figures(page: Page, served: Served) -> None:
+    opened(page, "Heron gate")
+    expect(page.locator("#range-words")).to_have_text(
+        verdict_range(load_scenario(served.folder / "heron-gate.toml")).sentence)
+    expect(page.locator("#range-drawn")).to_be_visible()
+    typed(page, "growth.monolayer_error", "0")
+    expect(page.locator("#range-assumed")).to_have_text("For band offset ±5 %, mass ±5 %, each alone and all at once.")
+    typed(page, "growth.offset_percent", "0")
+    typed(page, "growth.mass_percent", "0")
+    expect(page.locator('[data-message="growth.mass_percent"]')).to_contain_text("leaves no range")
+
+
+def test_ends_without_a_pass_window_have_nothing_to_raise(page: Page) -> None:
+    opened(page, "Mill race")
+    page.get_by_role("button", name="Match the ends").click()
+    expect(page.locator("#remedies-sentence[data-fault=true]")).to_contain_text("holds no pass window")
 
 
 def test_saving_under_a_bad_name_or_outside_the_folder_is_refused(page: Page, served: Served) -> None:

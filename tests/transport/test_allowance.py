@@ -70,8 +70,8 @@ def test_the_range_spans_its_cases_and_counts_those_without_an_answer() -> None:
 
 
 def test_the_margins_of_a_range_enclose_those_of_the_stack_as_written() -> None:
-    found = verdict_range(with_growth(GrowthRecord(), most=14))
-    low, high = margin_range(with_growth(GrowthRecord(), most=14), found)
+    scenario = with_growth(GrowthRecord(), most=14)
+    low, high = margin_range(scenario, verdict_range(scenario), np.arange(1, 15))
     margins = np.array([check.margin_dB for check in period_verdict(HERON, 14).per_period])
     assert np.all((low <= margins) & (margins <= high)) and np.any(high > margins + 1)
 

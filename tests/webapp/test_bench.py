@@ -10,7 +10,7 @@ from pathlib import Path
 import msgspec
 import pytest
 
-from transport import ScenarioError, load_scenario
+from transport import ScenarioError, load_scenario, matched_ends
 from webapp.bench import Bench
 from webapp.environment import CHECKOUT
 from webapp.files import Folder
@@ -47,6 +47,29 @@ def test_a_value_that_cannot_is_kept_beside_its_sentence(bench: Bench, text: str
     assert bench.drafts[BARRIER].text == text
     assert sentence in bench.drafts[BARRIER].message
     assert bench.document == before
+
+
+def test_a_proposal_is_taken_in_one_step_and_its_drafts_come_back(bench: Bench) -> None:
+    bench.set(BARRIER, "x")
+    before = bench.document
+    proposal = matched_ends(bench.scenario).proposals[0]
+    bench.adopt(proposal.scenario, proposal.name)
+    assert bench.document == proposal.scenario.document and bench.undo_step == proposal.name
+    bench.set("stack.ends.whole_monolayers", "true")
+    assert bench.document.stack.ends is not None and bench.document.stack.ends.whole_monolayers
+    bench.drop_ends()
+    assert bench.document.stack.ends is None
+    for _ in range(3):
+        bench.undo()
+    assert bench.document == before and bench.drafts[BARRIER].text == "x"
+
+
+def test_growth_figures_are_made_where_the_file_has_none(bench: Bench) -> None:
+    assert bench.document.growth is None
+    bench.set("growth.offset_percent", "8")
+    assert bench.document.growth is not None and bench.document.growth.offset_percent == 8
+    bench.set("growth.monolayer_error", "half")
+    assert "must be a number" in bench.drafts["growth.monolayer_error"].message
 
 
 def test_undo_reaches_back_over_edits_drafts_and_files(bench: Bench) -> None:

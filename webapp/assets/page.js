@@ -3,11 +3,13 @@
 import { byId, element, icon } from "./dom.js"
 import { drawRail, periodsFromRail } from "./rail.js"
 import { heldVersion, showPeriods, startBench } from "./bench.js"
+import { drawRemedies, startRemedies } from "./remedies.js"
 import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 
 const page = { status: null, pictured: null, sequence: 0, edited: 0, wire: null, palette: null }
 
-const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open"])
+const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
+  "dropends", "adopt"])
 
 function send(type, content = {}) {
   page.sequence += 1
@@ -60,6 +62,10 @@ const parts = {
     if (state === "stopped") byId("sentence").textContent = "The verdict was not worked out."
     else if (sentence) byId("sentence").textContent = sentence
     byId("present").textContent = present
+    byId("range-words").textContent = verdict.range?.sentence ?? ""
+    byId("range-assumed").textContent = verdict.range?.assumed ?? ""
+    byId("range").hidden = !verdict.range
+    byId("mend").hidden = state !== "missed"
     byId("legend").replaceChildren(...legend.map(({ colour, kind, name }) => {
       const mark = element("i", { class: `key ${kind}` })
       mark.style.color = colour
@@ -79,6 +85,11 @@ const parts = {
     document.body.dataset.ready = "yes"
     markPending()
   },
+  shown({ range, earlier }) {
+    byId("range-drawn").hidden = !range
+    byId("earlier").hidden = !earlier
+  },
+  remedies(remedies) { drawRemedies(remedies) },
   files(files) { drawFiles(files, page.status) },
   objections(objections) { drawObjections(objections) },
 }
@@ -127,6 +138,7 @@ function start() {
   for (const choice of document.querySelectorAll("input[name=scale]")) {
     choice.addEventListener("change", () => send("scale", { scale: choice.value }))
   }
+  startRemedies(send)
   startFiles(send, () => page.status)
   document.addEventListener("keydown", shortcuts)
   addEventListener("beforeunload", (event) => { if (page.status?.changed) event.preventDefault() })

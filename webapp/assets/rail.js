@@ -28,7 +28,7 @@ export function drawRail(rail, sender) {
 function patternOf(part) {
   const fields = (list) => (list ?? []).map(({ path, kind, options }) => [path, kind, options])
   const rows = (list) => (list ?? []).map((row) => [row.path, row.swatch, fields(row.fields), rows(row.rows)])
-  return JSON.stringify([fields(part.fields), rows(part.rows)])
+  return JSON.stringify([fields(part.fields), rows(part.rows), part.acts, part.acts ? part.help : ""])
 }
 
 function drawPart(place, part, index) {
@@ -49,7 +49,9 @@ function drawPart(place, part, index) {
 
 function body(part) {
   const fields = part.fields?.length ? [element("div", { class: "fields" }, ...part.fields.map(field))] : []
-  return part.list === undefined ? fields : [...list(part), ...fields]
+  const acts = (part.acts ?? []).map(({ label, type }) => element("button", { type: "button", class: "add",
+    "data-key": `${part.id}#${type}`, onclick: () => send(type) }, label))
+  return part.list === undefined ? [...fields, ...acts] : [...list(part), ...fields]
 }
 
 function list(part) {

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from typing import Any
 
+import numpy as np
 from bokeh.models import (
     BoxAnnotation,
     ColumnDataSource,
@@ -15,6 +16,7 @@ from bokeh.models import (
 
 from transport import PeriodCheck, Verdict
 from webapp.figures.frame import paint_frame, plain_frame
+from webapp.results import Band
 from webapp.theme import Palette
 
 _MARKERS = {"pass": "circle", "block": "square"}
@@ -31,6 +33,8 @@ class MarginsFigure:
         self._zero = Span(location=0, dimension="width", line_width=1.5)
         for annotation in (self._met, self._zero, marker):
             self.figure.add_layout(annotation)
+        self._range = ColumnDataSource({"periods": [], "low": [], "high": []})
+        self._band = self.figure.varea("periods", "low", "high", source=self._range, fill_alpha=0.6)
         self._source = ColumnDataSource({name: [] for name in _COLUMNS})
         self._line = self.figure.line("periods", "margin", source=self._source, line_width=1)
         marks = self.figure.scatter("periods", "margin", source=self._source, marker="marker", size=7, line_width=1.5,
@@ -55,6 +59,19 @@ class MarginsFigure:
         room = 0.06 * (high - low)
         self._y.update(start=low - room, end=high + room, reset_start=low - room, reset_end=high + room)
 
+    def show_range(self, band: Band | None) -> None:
+        """Draw the range of the margins over all that growth may do; None takes it away."""
+        if band is None:
+            self._range.data = {"periods": [], "low": [], "high": []}
+            return
+        known = np.isfinite(band.low) & np.isfinite(band.high)
+        self._range.data = {"periods": band.counts[known], "low": band.low[known], "high": band.high[known]}
+
+    @property
+    def shows_range(self) -> bool:
+        """Whether a range is drawn."""
+        return len(self._range.data["periods"]) > 0
+
     def _draw(self) -> None:
         if self._verdict is None or self._palette is None:
             self._source.data = {name: [] for name in _COLUMNS}
@@ -76,6 +93,7 @@ class MarginsFigure:
         self._palette = palette
         paint_frame(self.figure, palette)
         self._line.glyph.line_color = palette.line
+        self._band.glyph.fill_color = palette.warm_tint
         self._met.fill_color = palette.met_tint
         self._zero.line_color = palette.met
         self._draw()

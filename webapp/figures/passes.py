@@ -56,6 +56,7 @@ class PassesFigure:
         self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
         self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
+        self._before = ColumnDataSource({"energy": [], "drawn": []}, name="before")
         self._brackets = ColumnDataSource({"xs": [], "ys": []})
         self._hatched = ColumnDataSource({"left": [], "right": [], "bottom": [], "top": []})
         self._names = ColumnDataSource({"x": [], "y": [], "text": [], "align": [], "offset": []})
@@ -64,6 +65,7 @@ class PassesFigure:
         # What the browser does to these is its own affair and is not sent back.
         self._preview.syncable = False
         self._passage: Passage | None = None
+        self._earlier: Passage | None = None
         # Two axes of which one shows: to exchange the parts of one costs a look at every model of the page.
         self._log_axis = self.figure.xaxis[0]
         self._log_axis.update(
@@ -80,6 +82,7 @@ class PassesFigure:
         self._hatching = draw.quad("left", "right", "top", "bottom", source=self._hatched, hatch_pattern="/",
                                    hatch_scale=9, hatch_weight=1, fill_alpha=0.35, line_width=1.5)
         self._between = draw.harea(x1="lower", x2="upper", y="energy", source=self._envelope, fill_alpha=0.5)
+        self._past = draw.line("drawn", "energy", source=self._before, line_width=1.5, line_dash=[2, 3])
         self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
         self._measured = draw.line("drawn", "energy", source=self._beam, line_width=2, line_dash=[6, 3])
         self._held = draw.line("drawn", "energy", source=self._preview, line_width=2, name="preview-line",
@@ -109,6 +112,27 @@ class PassesFigure:
                               for side in (passage.measured, passage.lower, passage.upper))
         _replace(self._beam, {"energy": passage.energy[: beam.size] * MEV, "drawn": beam})
         _replace(self._envelope, {"energy": passage.energy[: lower.size] * MEV, "lower": lower, "upper": upper})
+
+    def remember(self) -> None:
+        """Keep the present curve beside the next one, as what was before."""
+        self._earlier = self._passage
+        self._show_before()
+
+    def forget(self) -> None:
+        """Take the curve of before away."""
+        self._earlier = None
+        self._show_before()
+
+    @property
+    def shows_before(self) -> bool:
+        """Whether a curve of before is drawn."""
+        return self._earlier is not None
+
+    def _show_before(self) -> None:
+        passage, log = self._earlier, self.scale == "log"
+        data = {"energy": np.zeros(0), "drawn": np.zeros(0)} if passage is None else {
+            "energy": passage.energy * MEV, "drawn": passage.log10 if log else passage.transmission}
+        _replace(self._before, data)
 
     def clear(self) -> None:
         """Take the curve away, and the rows the browser holds."""
@@ -141,6 +165,7 @@ class PassesFigure:
         self.scale = scale
         self._rescale()
         self._show_curve()
+        self._show_before()
 
     @property
     def floor(self) -> float:
@@ -185,6 +210,7 @@ class PassesFigure:
         for renderer in (self._line, self._held):
             renderer.glyph.line_color = palette.warm
         self._measured.glyph.line_color = palette.warm_deep
+        self._past.glyph.line_color = palette.muted
         self._between.glyph.fill_color = palette.warm
         self._bracket.glyph.line_color = palette.target
         self._hatching.glyph.update(line_color=palette.target, hatch_color=palette.target, hatch_alpha=0.4,
