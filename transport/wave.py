@@ -21,7 +21,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
-from typing import Any, Literal
+from typing import Any, Literal, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -34,11 +34,8 @@ from transport.structure import Delta, Element, Layer, Lead, Stack
 Complex = NDArray[np.complex128]
 Side = Literal["left", "right"]
 
-MOST_VALUES = 10_000_000
-"""Values (energies times positions or layers) that one call computes at most."""
-
-MOST_ELEMENTS = 50_000
-"""Layers and deltas, all periods written out, that a wave is carried through at most."""
+MOST_VALUES, MOST_PLACES = 10_000_000, 100_000
+"""Values (energies times places) that one call computes at most, and places (positions, or layers) at most."""
 
 _NO_POLE = 1e-3  # kink, as an angle, at which two outgoing waves are no longer one
 
@@ -60,7 +57,7 @@ class Wave:
     @property
     def density(self) -> Floats:
         """|psi|^2."""
-        return np.asarray(self.psi.real**2 + self.psi.imag**2)
+        return _squared(self.psi)
 
 
 @dataclass(frozen=True, slots=True)
@@ -85,8 +82,7 @@ def wave(
     more values than MOST_VALUES, and where the one-band model ends.
     """
     energy = _incident_energies(stack, energies, side)
-    places = _places(stack, positions, points_per_nm)
-    _require_size(energy.size, places.position.size)
+    places = _places(stack, positions, points_per_nm, energy.size)
     march = _scattered(stack, energy, side)
     psi, slope = march.scaled(*places.seen_from(march))
     towards = -1.0 if side == "left" else 1.0  # the march runs against the wave's own direction
@@ -102,13 +98,10 @@ def pole_wave(
     probability within the stack is 1; `psi` is in nm^-1/2 and real where it is joined. Raises ValueError as `wave`
     does, and where the two ends do not join: the energy is no pole.
     """
-    energy = np.atleast_1d(np.asarray(energies, dtype=complex)).ravel()
-    if not np.isfinite(energy).all():
-        raise ValueError("energies: every one must be a finite number of eV")
-    places = _places(stack, positions, points_per_nm)
-    _require_size(energy.size, places.position.size)
+    energy = _finite(np.asarray(energies, dtype=complex))
+    places = _places(stack, positions, points_per_nm, energy.size)
     right_going, left_going, join = _joined(_outgoing(stack, energy, "left"), _outgoing(stack, energy, "right"))
-    count = len(right_going.layers)
+    count = right_going.kind.size
     psi = slope = np.zeros((places.position.size, energy.size), dtype=np.complex128)
     norm = np.zeros(energy.size)
     for march, last, towards in ((right_going, count - join, -1.0), (left_going, join, 1.0)):
@@ -132,16 +125,18 @@ def local_density_of_states(
     A closed lead sends nothing. With dephasing it is the part that the leads feed. `positions` and errors as for
     `wave`, except that any finite energy is taken.
     """
-    energy = _finite(energies)
-    places = _places(stack, positions, points_per_nm)
-    _require_size(energy.size, places.position.size)
+    energy = _finite(np.asarray(energies, dtype=float))
+    places = _places(stack, positions, points_per_nm, energy.size)
     density = np.zeros((energy.size, places.position.size))
-    sides: tuple[Side, ...] = ("left", "right")
-    for side in sides:
+    for side in get_args(Side):
         open_ = np.flatnonzero(energy > _lead(stack, side).band_edge)
         if open_.size:
             march = _scattered(stack, energy[open_], side)
-            density[open_] += march.density_at(*places.seen_from(march)).T / (2 * math.pi * HBAR)
+            row, offset = places.seen_from(march)
+            psi, slope = march.scaled(row, offset)
+            rate = HBAR2_2M0 * march.numbers[3, row, None]
+            density[open_] += (_squared(psi) + (rate * _squared(slope) if rate.any() else 0.0)).T
+    density /= 2 * math.pi * HBAR
     return LocalDensity(places.position, energy, density)
 
 
@@ -174,12 +169,12 @@ def phase_time(stack: Stack, energies: ArrayLike) -> Floats:
     where the other lead is closed: nothing comes through that had a phase.
     """
     energy = _incident_energies(stack, _incident_energies(stack, energies, "left"), "right")
-    inside: Array = energy + 0.5j * stack.dephasing if stack.dephasing else energy
+    inside = _inside(stack, energy)
     near, far = (_flux_factor(lead, energy) for lead in (stack.left, stack.right))
     near_rate, far_rate = (_flux_factor_rate(lead, energy) for lead in (stack.left, stack.right))
     psi, slope = np.ones(energy.size, dtype=complex), -1j * far
     psi_rate, slope_rate = np.zeros(energy.size, dtype=complex), -1j * far_rate
-    elements = _written_out(stack)[::-1]
+    elements = _written_out(stack, energy.size)[::-1]
     steps = {e: (step := element_transfer(e, inside), _rate(e, step, inside)) for e in dict.fromkeys(elements)}
     for element in elements:
         step, rate = steps[element]
@@ -197,14 +192,17 @@ def phase_time(stack: Stack, energies: ArrayLike) -> Floats:
 
 @dataclass(frozen=True, slots=True)
 class _March:
-    """A solution carried from its far face, with `layers` and rows counted from there.
+    """A solution carried from its far face; rows are layers counted from there, of `kind` in the distinct `layers`.
 
-    `psi`, `slope` (d psi/dy / m, y the distance from the far face), both times exp(`log`): shape (layers + 1, n), at
+    `numbers`: thickness (nm), band edge (eV), mass (m0) and dm/dE (m0/eV) of each row, shape (4, rows).
+    `psi`, `slope` (d psi/dy / m, y the distance from the far face), both times exp(`log`): shape (rows + 1, n), at
     the far face of every layer, and at the near face of the stack. It is wanted over exp(`reference`), (n,), and times
     `amplitude`, which makes the incident flux 1.
     """
 
     layers: tuple[Layer, ...]
+    kind: NDArray[np.int64]
+    numbers: Floats
     inside: Array
     psi: Complex
     slope: Complex
@@ -217,15 +215,18 @@ class _March:
         """psi, slope and log (places, n) at distances `offset` (nm) beyond the far face of layers `row`."""
         shape = (row.size, self.inside.size)
         psi, slope, log = np.empty(shape, complex), np.empty(shape, complex), self.log[row]
-        kinds = {layer: kind for kind, layer in enumerate(dict.fromkeys(self.layers))}
-        kind_of = np.array([kinds[layer] for layer in self.layers])[row]
         span = Span.of(self.inside)
-        for layer, kind in kinds.items():
-            chosen = np.flatnonzero(kind_of == kind)
+        for kind, layer in enumerate(self.layers):
+            chosen = np.flatnonzero(self.kind[row] == kind)
+            if not chosen.size:
+                continue
             offsets, which = np.unique(offset[chosen], return_inverse=True)
-            pieces = [_piece(layer, float(s), self.inside, span) for s in offsets]
+            pieces = [
+                element_transfer(replace(layer, thickness=float(s)), self.inside, span) if s > 0 else IDENTITY
+                for s in offsets
+            ]
             a, b, c, more = (
-                np.array([np.broadcast_to(getattr(piece, name), shape[1:]) for piece in pieces]).reshape(-1, shape[1])
+                np.array([np.broadcast_to(getattr(piece, name), shape[1:]) for piece in pieces])
                 for name in ("a", "b", "c", "log_scale")
             )
             one, two = self.psi[row[chosen]], self.slope[row[chosen]]
@@ -241,15 +242,6 @@ class _March:
         scale = self.amplitude * np.exp(log - self.reference)
         return psi * scale, slope * scale
 
-    def density_at(self, row: NDArray[np.int64], offset: Floats) -> Floats:
-        """Probability per nm of the wave of unit flux, shape (places, n)."""
-        psi, slope, log = self.at(row, offset)
-        density = psi.real**2 + psi.imag**2
-        rate = np.array([_mass_rate(layer) for layer in self.layers])[row]
-        if rate.any():
-            density += HBAR2_2M0 * rate[:, None] * (slope.real**2 + slope.imag**2)
-        return np.asarray(density * np.exp(2 * (log - self.reference)) * abs(self.amplitude) ** 2)
-
     def probability(self, row: NDArray[np.int64] | None = None, offset: Floats | None = None) -> Floats:
         """Probability in layers `row` (default: each) up to `offset` from the far face (default: the whole of it).
 
@@ -257,17 +249,15 @@ class _March:
         psi = u cos qy + m w sin(qy)/q has an even and an odd part: the cross term integrates to 0, the rest is
         positive, whether the wave oscillates, decays or both.
         """
-        row = np.arange(len(self.layers)) if row is None else row
-        if offset is None:
-            offset = np.array([layer.thickness for layer in self.layers])[row]
+        row = np.arange(self.kind.size) if row is None else row
+        offset = self.numbers[0, row] if offset is None else offset
         psi, slope, log = self.at(row, offset / 2)
-        kinetic, mass = np.empty_like(psi), np.empty_like(psi)
-        for layer in dict.fromkeys(self.layers):
-            chosen = np.array([other == layer for other in self.layers])[row]
-            kinetic[chosen], mass[chosen] = self.inside - layer.band_edge, mass_at(layer, self.inside)
-        rate = np.array([_mass_rate(layer) for layer in self.layers])[row][:, None]
-        even, odd, growth = _squared_integrals(np.sqrt(kinetic * mass / HBAR2_2M0), offset[:, None])
-        upper, lower = abs(psi) ** 2, abs(slope) ** 2
+        edge, mass_there, rate = self.numbers[1:, row, None]
+        kinetic = self.inside - edge
+        mass = mass_there + rate * kinetic
+        wave_number = np.sqrt(kinetic * mass / HBAR2_2M0 + 0j)
+        even, odd, growth = _squared_integrals(wave_number, offset[:, None])
+        upper, lower = _squared(psi), _squared(slope)
         total = upper * even + abs(mass) ** 2 * lower * odd
         total += HBAR2_2M0 * rate * (lower * even + abs(kinetic / HBAR2_2M0) ** 2 * upper * odd)
         return np.asarray(total * np.exp(2 * (log - self.reference) + growth))
@@ -304,27 +294,33 @@ def _scattered(stack: Stack, energy: Floats, side: Side) -> _March:
 
 def _outgoing(stack: Stack, energy: Array, side: Side) -> _March:
     """The solution that goes out at the face away from `side`, carried towards `side`."""
-    elements = _written_out(stack)
-    inside: Array = energy + 0.5j * stack.dephasing if stack.dephasing else energy
-    require_model(stack.elements, Span.of(inside))
+    elements = _written_out(stack, energy.size)
+    inside = _inside(stack, energy)
     far = stack.right if side == "left" else stack.left
     ordered = elements[::-1] if side == "left" else elements
-    layers = tuple(element for element in ordered if isinstance(element, Layer))
-    _require_size(energy.size, len(layers))
-    rows, logs = np.empty((2, len(layers) + 1, energy.size), complex), np.empty((len(layers) + 1, energy.size))
+    layers = [element for element in ordered if isinstance(element, Layer)]
+    distinct = {layer: kind for kind, layer in enumerate(dict.fromkeys(layers))}
+    states = []
     psi, slope, log = np.ones(energy.size, complex), -1j * _flux_factor(far, energy), np.zeros(energy.size)
-    span, row = Span.of(inside), 0
-    steps = {element: element_transfer(element, inside, span) for element in dict.fromkeys(ordered)}
+    steps = {element: element_transfer(element, inside) for element in dict.fromkeys(ordered)}
     for element in ordered:
         if isinstance(element, Layer):
-            rows[0, row], rows[1, row], logs[row] = psi, slope, log
-            row += 1
+            states.append((psi, slope, log))
         step = steps[element]
         psi, slope = step.a * psi + step.b * slope, step.c * psi + step.d * slope
         size = abs(psi) + abs(slope)
         psi, slope, log = psi / size, slope / size, log + step.log_scale + np.log(size)
-    rows[0, row], rows[1, row], logs[row] = psi, slope, log
-    return _March(layers, inside, rows[0], rows[1], logs, log, 1.0, side == "left")
+    psis, slopes, logs = (np.array(parts) for parts in zip(*states, (psi, slope, log), strict=True))
+    kind = np.array([distinct[layer] for layer in layers])
+    numbers = np.array([(x.thickness, x.band_edge, x.mass, _mass_rate(x)) for x in distinct]).T[:, kind]
+    return _March(tuple(distinct), kind, numbers, inside, psis, slopes, logs, log, 1.0, side == "left")
+
+
+def _inside(stack: Stack, energy: Array) -> Array:
+    """The energies that the layers see, checked against the end of the one-band model."""
+    inside = energy + 0.5j * stack.dephasing if stack.dephasing else energy
+    require_model(stack.elements, Span.of(inside))
+    return inside
 
 
 def _current(stack: Stack, march: _March, places: _Places) -> Floats:
@@ -348,9 +344,8 @@ def _joined(right_going: _March, left_going: _March) -> tuple[_March, _March, ND
     They join where the product of the two is largest, which is where the state is: short of it each of them still
     grows away from its own end and is exact, beyond it rounding grows instead.
     """
-    count = len(left_going.layers)
-    thickness = np.array([layer.thickness for layer in right_going.layers])
-    from_right = [part[::-1] for part in right_going.at(np.arange(count), thickness)]
+    rows = np.arange(right_going.kind.size)
+    from_right = [part[::-1] for part in right_going.at(rows, right_going.numbers[0])]
     from_left = [left_going.psi[:-1], left_going.slope[:-1], left_going.log[:-1]]
     size = [np.log(abs(psi) + abs(slope)) + log for psi, slope, log in (from_right, from_left)]
     join = np.argmax(size[0] + size[1], axis=0)
@@ -380,33 +375,31 @@ class _Places:
     def seen_from(self, march: _March) -> tuple[NDArray[np.int64], Floats]:
         """Row of the march and distance from that layer's far face."""
         if march.leftwards:
-            return len(march.layers) - 1 - self.layer, self.thickness[self.layer] - self.offset
+            return march.kind.size - 1 - self.layer, self.thickness[self.layer] - self.offset
         return self.layer, self.offset
 
 
-def _places(stack: Stack, positions: ArrayLike | None, points_per_nm: float) -> _Places:
-    layers = [element for element in _written_out(stack) if isinstance(element, Layer)]
+def _places(stack: Stack, positions: ArrayLike | None, points_per_nm: float, energies: int) -> _Places:
+    """The places asked for, after a check that `energies` times their number is not too much."""
+    layers = [element for element in _written_out(stack, energies) if isinstance(element, Layer)]
     thickness = np.array([layer.thickness for layer in layers])
     face = np.concatenate([[0.0], np.cumsum(thickness)])
     if positions is not None:
         position = np.atleast_1d(np.asarray(positions, dtype=float)).ravel()
         if not (np.isfinite(position).all() and (position >= 0).all() and (position <= face[-1] * (1 + 1e-12)).all()):
             raise ValueError(f"positions: every one must lie in the stack, from 0 to {face[-1]:.9g} nm")
+        _require_size(energies, position.size)
         layer = np.minimum(np.searchsorted(face[1:], position), thickness.size - 1)
         return _Places(position, layer, np.clip(position - face[layer], 0.0, thickness[layer]), thickness)
     if not (math.isfinite(points_per_nm) and points_per_nm > 0):
         raise ValueError(f"points_per_nm is {points_per_nm!r}: give a number above 0")
     count = np.maximum(np.ceil(thickness * points_per_nm - 1e-9), 1)
-    _require_size(1, float(count.sum()) + 1)
+    _require_size(energies, float(count.sum()) + 1)
     count = count.astype(np.int64)
     layer = np.concatenate([[0], np.repeat(np.arange(thickness.size), count)])
     step = np.arange(1, layer.size) - np.repeat(np.cumsum(count) - count, count)
     offset = np.concatenate([[0.0], thickness[layer[1:]] * (step / count[layer[1:]])])
     return _Places(face[layer] + offset, layer, offset, thickness)
-
-
-def _piece(layer: Layer, length: float, inside: Array, span: Span) -> Transfer:
-    return element_transfer(replace(layer, thickness=length), inside, span) if length > 0 else IDENTITY
 
 
 def _rate(element: Element, step: Transfer, inside: Array) -> Transfer:
@@ -430,6 +423,10 @@ def _rate(element: Element, step: Transfer, inside: Array) -> Transfer:
     return Transfer(
         even, length * (rate * sine + mass * bend), -length / HBAR2_2M0 * (sine + kinetic * bend), even
     )
+
+
+def _squared(amplitude: Complex) -> Floats:
+    return np.asarray(amplitude.real**2 + amplitude.imag**2)
 
 
 def _mass_rate(medium: Layer | Lead) -> float:
@@ -462,18 +459,13 @@ def _lead(stack: Stack, side: Side) -> Lead:
     return stack.left if side == "left" else stack.right
 
 
-def _written_out(stack: Stack) -> tuple[Element, ...]:
-    count = len(stack.entry) + len(stack.cell) * stack.periods + len(stack.exit)
-    if count > MOST_ELEMENTS:
-        raise ValueError(
-            f"stack has {count:,} layers with all periods written out, more than the {MOST_ELEMENTS:,} that a wave is "
-            "carried through: take fewer periods"
-        )
+def _written_out(stack: Stack, energies: int) -> tuple[Element, ...]:
+    _require_size(energies, len(stack.entry) + len(stack.cell) * stack.periods + len(stack.exit))
     return stack.entry + stack.cell * stack.periods + stack.exit
 
 
-def _finite(energies: ArrayLike) -> Floats:
-    energy = np.atleast_1d(np.asarray(energies, dtype=float)).ravel()
+def _finite(energies: Array) -> Array:
+    energy = np.atleast_1d(energies).ravel()
     if not np.isfinite(energy).all():
         raise ValueError("energies: every one must be a finite number of eV")
     return energy
@@ -482,15 +474,15 @@ def _finite(energies: ArrayLike) -> Floats:
 def _incident_energies(stack: Stack, energies: ArrayLike, side: Side) -> Floats:
     if side not in ("left", "right"):
         raise ValueError(f"side is {side!r}: give 'left' or 'right', where the wave comes from")
-    energy, edge = _finite(energies), _lead(stack, side).band_edge
+    energy, edge = _finite(np.asarray(energies, dtype=float)), _lead(stack, side).band_edge
     if (energy <= edge).any():
         raise ValueError(f"energies: the {side} lead is closed below {edge:.9g} eV, ask above it")
     return energy
 
 
-def _require_size(energies: float, places: float) -> None:
-    if energies * places > MOST_VALUES:
+def _require_size(energies: int, places: float) -> None:
+    if places > MOST_PLACES or energies * places > MOST_VALUES:
         raise ValueError(
-            f"energies, positions: {energies:,.0f} times {places:,.0f} values are more than the {MOST_VALUES:,} of one "
-            "call: ask for fewer energies or positions"
+            f"energies, positions, stack: {energies:,} energies at {places:,.0f} positions or layers are more than one "
+            f"call computes, {MOST_PLACES:,} and {MOST_VALUES:,} values: ask for fewer of them"
         )
