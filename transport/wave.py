@@ -1,20 +1,18 @@
 """Waves inside a finite stack: psi(x), local density of states, charge, dwell and phase times.
 
-A wave that comes in from one side is carried from the other side, the far face, where it only goes out, towards its
-source: there it grows, so the growing solution is the wanted one and nothing cancels. Its size is held as a logarithm.
-The state is (psi, psi'/m), as in `propagation.py`; a layer is its own mirror image, so marching leftwards is marching
-rightwards through the reversed list with the sign of psi'/m turned.
+A wave that comes in from one side is carried from the far face, where it only goes out, towards its source: there it
+grows, so nothing cancels; its size is held as a logarithm. The state is (psi, psi'/m), as in `propagation.py`. A layer
+is its own mirror image: marching leftwards is marching rightwards through the reversed list, the sign of psi'/m turned.
 
 Probability. With C = hbar^2/2m0, chi = psi'/m and a dot for d/dE, psi' = m chi and chi' = -(E - V) psi/C give
 
     d/dx (psi* chi. - chi* psi.) = -(|psi|^2 + C m. |chi|^2) / C          (lossless)
     d/dx Im(psi* chi) = -(dephasing/2C) (|psi|^2 + C m. |chi|^2)          (dephasing)
 
-so where the mass depends on energy the density that is counted, stored and absorbed is |psi|^2 + C m. |chi|^2: the
-second part is what the two-band model puts into the valence band. `probability` means this; else it is |psi|^2.
-Dwell time and its bond with the phase times: Hauge and Stoevneng, Rev. Mod. Phys. 61, 917 (1989); Winful,
-Phys. Rev. Lett. 91, 260401 (2003). Local density of states from waves of unit flux: Gasparian, Christen and Buettiker,
-Phys. Rev. A 54, 4022 (1996).
+so what is counted, stored and absorbed is |psi|^2 + C m. |chi|^2, here called probability: |psi|^2, and where the mass
+depends on energy what the two-band model puts into the valence band. Dwell and phase times: Hauge and Stoevneng,
+Rev. Mod. Phys. 61, 917 (1989); Winful, Phys. Rev. Lett. 91, 260401 (2003). Local density of states from waves of unit
+flux: Gasparian, Christen and Buettiker, Phys. Rev. A 54, 4022 (1996).
 """
 
 from __future__ import annotations
@@ -70,8 +68,8 @@ class LocalDensity:
 
 
 def wave(
-    stack: Stack, energies: ArrayLike, side: Side = "left", positions: ArrayLike | None = None,
-    points_per_nm: float = 5.0,
+    stack: Stack, energies: ArrayLike, side: Side = "left",
+    positions: ArrayLike | None = None, points_per_nm: float = 5.0,
 ) -> Wave:
     """The wave that one electron a second, coming from `side`, makes at real energies (eV, shape (n,)).
 
@@ -83,7 +81,7 @@ def wave(
     """
     energy = _incident_energies(stack, energies, side)
     places = _places(stack, positions, points_per_nm, energy.size)
-    march = _scattered(stack, energy, side)
+    march = _incident(stack, energy, side)
     psi, slope = march.scaled(*places.seen_from(march))
     towards = -1.0 if side == "left" else 1.0  # the march runs against the wave's own direction
     return Wave(places.position, energy, psi.T, towards * slope.T, -towards * _current(stack, march, places).T)
@@ -131,13 +129,12 @@ def local_density_of_states(
     for side in get_args(Side):
         open_ = np.flatnonzero(energy > _lead(stack, side).band_edge)
         if open_.size:
-            march = _scattered(stack, energy[open_], side)
+            march = _incident(stack, energy[open_], side)
             row, offset = places.seen_from(march)
             psi, slope = march.scaled(row, offset)
             rate = HBAR2_2M0 * march.numbers[3, row, None]
             density[open_] += (_squared(psi) + (rate * _squared(slope) if rate.any() else 0.0)).T
-    density /= 2 * math.pi * HBAR
-    return LocalDensity(places.position, energy, density)
+    return LocalDensity(places.position, energy, density / (2 * math.pi * HBAR))
 
 
 def charge(stack: Stack, energies: ArrayLike, side: Side = "left") -> Floats:
@@ -145,10 +142,8 @@ def charge(stack: Stack, energies: ArrayLike, side: Side = "left") -> Floats:
 
     For the wave from `side` at energies (eV); layers from the left, deltas left out. Raises as `wave` does.
     """
-    energy = _incident_energies(stack, energies, side)
-    march = _scattered(stack, energy, side)
-    held = march.probability().T
-    held = held[:, ::-1] if side == "left" else held
+    march = _incident(stack, _incident_energies(stack, energies, side), side)
+    held = march.probability().T[:, :: -1 if march.leftwards else 1]
     return np.asarray(held / held.sum(axis=1, keepdims=True))
 
 
@@ -157,8 +152,7 @@ def dwell_time(stack: Stack, energies: ArrayLike, side: Side = "left") -> Floats
 
     With dephasing, dephasing/hbar times this is the share absorbed, 1 - T - R. Raises as `wave` does.
     """
-    energy = _incident_energies(stack, energies, side)
-    march = _scattered(stack, energy, side)
+    march = _incident(stack, _incident_energies(stack, energies, side), side)
     return np.asarray(march.probability().sum(axis=0) * abs(march.amplitude) ** 2)
 
 
@@ -169,25 +163,21 @@ def phase_time(stack: Stack, energies: ArrayLike) -> Floats:
     where the other lead is closed: nothing comes through that had a phase.
     """
     energy = _incident_energies(stack, _incident_energies(stack, energies, "left"), "right")
-    inside = _inside(stack, energy)
+    elements, inside = _written_out(stack, energy.size)[::-1], _inside(stack, energy)
     near, far = (_flux_factor(lead, energy) for lead in (stack.left, stack.right))
-    near_rate, far_rate = (_flux_factor_rate(lead, energy) for lead in (stack.left, stack.right))
-    psi, slope = np.ones(energy.size, dtype=complex), -1j * far
-    psi_rate, slope_rate = np.zeros(energy.size, dtype=complex), -1j * far_rate
-    elements = _written_out(stack, energy.size)[::-1]
+    near_growth, far_growth = (_flux_factor_growth(lead, energy) for lead in (stack.left, stack.right))
+    one = np.ones(energy.size, complex)
+    psi, slope = np.array([one, 0 * one]), -1j * far * np.array([one, far_growth])  # values, and below their rates
     steps = {e: (step := element_transfer(e, inside), _rate(e, step, inside)) for e in dict.fromkeys(elements)}
     for element in elements:
         step, rate = steps[element]
-        psi_rate, slope_rate = (
-            step.a * psi_rate + step.b * slope_rate + rate.a * psi + rate.b * slope,
-            step.c * psi_rate + step.d * slope_rate + rate.c * psi + rate.d * slope,
-        )
+        more, steeper = rate.a * psi[0] + rate.b * slope[0], rate.c * psi[0] + rate.d * slope[0]
         psi, slope = step.a * psi + step.b * slope, step.c * psi + step.d * slope
-        size = abs(psi) + abs(slope)
-        psi, slope, psi_rate, slope_rate = psi / size, slope / size, psi_rate / size, slope_rate / size
-    incident = psi + 1j * slope / near
-    incident_rate = psi_rate + 1j * (slope_rate - slope * near_rate / near) / near
-    return np.asarray(-HBAR * (incident_rate / incident).imag)
+        psi[1], slope[1] = psi[1] + more, slope[1] + steeper
+        size = abs(psi[0]) + abs(slope[0])
+        psi, slope = psi / size, slope / size
+    rate_in = psi[1] + 1j * (slope[1] - slope[0] * near_growth) / near
+    return np.asarray(-HBAR * (rate_in / (psi[0] + 1j * slope[0] / near)).imag)
 
 
 @dataclass(frozen=True, slots=True)
@@ -213,28 +203,24 @@ class _March:
 
     def at(self, row: NDArray[np.int64], offset: Floats) -> tuple[Complex, Complex, Floats]:
         """psi, slope and log (places, n) at distances `offset` (nm) beyond the far face of layers `row`."""
-        shape = (row.size, self.inside.size)
-        psi, slope, log = np.empty(shape, complex), np.empty(shape, complex), self.log[row]
-        span = Span.of(self.inside)
-        for kind, layer in enumerate(self.layers):
-            chosen = np.flatnonzero(self.kind[row] == kind)
-            if not chosen.size:
-                continue
+        psi, slope, log, kinds = self.psi[row], self.slope[row], self.log[row], self.kind[row]
+        for kind in np.unique(kinds):
+            chosen = np.flatnonzero(kinds == kind)
             offsets, which = np.unique(offset[chosen], return_inverse=True)
-            pieces = [
-                element_transfer(replace(layer, thickness=float(s)), self.inside, span) if s > 0 else IDENTITY
-                for s in offsets
-            ]
+            pieces = [self._piece(self.layers[kind], float(s)) for s in offsets]
             a, b, c, more = (
-                np.array([np.broadcast_to(getattr(piece, name), shape[1:]) for piece in pieces])
+                np.array([np.broadcast_to(getattr(piece, name), self.inside.shape) for piece in pieces])
                 for name in ("a", "b", "c", "log_scale")
             )
-            one, two = self.psi[row[chosen]], self.slope[row[chosen]]
+            one, two = psi[chosen], slope[chosen]
             psi[chosen] = a[which] * one + b[which] * two
             slope[chosen] = c[which] * one + a[which] * two
             if more.any():
                 log[chosen] += more[which]
         return psi, slope, log
+
+    def _piece(self, layer: Layer, length: float) -> Transfer:
+        return element_transfer(replace(layer, thickness=length), self.inside) if length > 0 else IDENTITY
 
     def scaled(self, row: NDArray[np.int64], offset: Floats) -> tuple[Complex, Complex]:
         """psi and slope (places, n) of the wave that is wanted."""
@@ -252,11 +238,10 @@ class _March:
         row = np.arange(self.kind.size) if row is None else row
         offset = self.numbers[0, row] if offset is None else offset
         psi, slope, log = self.at(row, offset / 2)
-        edge, mass_there, rate = self.numbers[1:, row, None]
+        edge, mass, rate = self.numbers[1:, row, None]
         kinetic = self.inside - edge
-        mass = mass_there + rate * kinetic
-        wave_number = np.sqrt(kinetic * mass / HBAR2_2M0 + 0j)
-        even, odd, growth = _squared_integrals(wave_number, offset[:, None])
+        mass = mass + rate * kinetic
+        even, odd, growth = _squared_integrals(np.sqrt(kinetic * mass / HBAR2_2M0 + 0j), offset[:, None])
         upper, lower = _squared(psi), _squared(slope)
         total = upper * even + abs(mass) ** 2 * lower * odd
         total += HBAR2_2M0 * rate * (lower * even + abs(kinetic / HBAR2_2M0) ** 2 * upper * odd)
@@ -279,28 +264,23 @@ def _squared_integrals(wave_number: Complex, length: Floats) -> tuple[Floats, Fl
     for n in range(1, 11):
         series += term / math.factorial(2 * n + 1)
         power = power * s
-        term = term * p + power
+        term = term * p + power  # p^n + p^(n-1) s + ... + s^n
     ratio = np.where(near, series * np.exp(-z), (rise - flat) / np.where(near, 1.0, square))
     return length / 2 * (rise + flat), length**3 / 2 * ratio, z
 
 
-def _scattered(stack: Stack, energy: Floats, side: Side) -> _March:
+def _incident(stack: Stack, energy: Floats, side: Side) -> _March:
     """The wave of unit flux from `side`."""
-    march = _outgoing(stack, energy, side)
-    factor = _flux_factor(_lead(stack, side), energy)
+    march, factor = _outgoing(stack, energy, side), _flux_factor(_lead(stack, side), energy)
     incident = (march.psi[-1] + 1j * march.slope[-1] / factor) / 2
     return replace(march, amplitude=np.sqrt(HBAR / (2 * HBAR2_2M0 * factor.real)) / incident)
 
 
 def _outgoing(stack: Stack, energy: Array, side: Side) -> _March:
     """The solution that goes out at the face away from `side`, carried towards `side`."""
-    elements = _written_out(stack, energy.size)
-    inside = _inside(stack, energy)
-    far = stack.right if side == "left" else stack.left
-    ordered = elements[::-1] if side == "left" else elements
-    layers = [element for element in ordered if isinstance(element, Layer)]
-    distinct = {layer: kind for kind, layer in enumerate(dict.fromkeys(layers))}
-    states = []
+    elements, inside = _written_out(stack, energy.size), _inside(stack, energy)
+    far, ordered = (stack.right, elements[::-1]) if side == "left" else (stack.left, elements)
+    states, layers = [], [element for element in ordered if isinstance(element, Layer)]
     psi, slope, log = np.ones(energy.size, complex), -1j * _flux_factor(far, energy), np.zeros(energy.size)
     steps = {element: element_transfer(element, inside) for element in dict.fromkeys(ordered)}
     for element in ordered:
@@ -311,9 +291,10 @@ def _outgoing(stack: Stack, energy: Array, side: Side) -> _March:
         size = abs(psi) + abs(slope)
         psi, slope, log = psi / size, slope / size, log + step.log_scale + np.log(size)
     psis, slopes, logs = (np.array(parts) for parts in zip(*states, (psi, slope, log), strict=True))
-    kind = np.array([distinct[layer] for layer in layers])
-    numbers = np.array([(x.thickness, x.band_edge, x.mass, _mass_rate(x)) for x in distinct]).T[:, kind]
-    return _March(tuple(distinct), kind, numbers, inside, psis, slopes, logs, log, 1.0, side == "left")
+    kinds = {layer: kind for kind, layer in enumerate(dict.fromkeys(layers))}
+    kind = np.array([kinds[layer] for layer in layers])
+    numbers = np.array([(x.thickness, x.band_edge, x.mass, x.mass * x.nonparabolicity) for x in layers]).T
+    return _March(tuple(kinds), kind, numbers, inside, psis, slopes, logs, log, 1.0, side == "left")
 
 
 def _inside(stack: Stack, energy: Array) -> Array:
@@ -325,35 +306,31 @@ def _inside(stack: Stack, energy: Array) -> Array:
 
 def _current(stack: Stack, march: _March, places: _Places) -> Floats:
     """Flux against the march (places, n): what leaves at the far face, and what dephasing takes on the way there."""
-    far = stack.right if march.leftwards else stack.left
-    scale = abs(march.amplitude) ** 2
+    far, scale = stack.right if march.leftwards else stack.left, abs(march.amplitude) ** 2
     leaving = 2 * HBAR2_2M0 / HBAR * _flux_factor(far, march.inside.real).real
     leaving = leaving * abs(march.psi[0]) ** 2 * np.exp(2 * (march.log[0] - march.reference)) * scale
-    shape = (places.position.size, march.inside.size)
     if not stack.dephasing:
-        return np.broadcast_to(leaving, shape)
+        return np.tile(leaving, (places.position.size, 1))
     row, offset = places.seen_from(march)
-    whole = np.cumsum(march.probability(), axis=0)
-    before = np.where(row[:, None] > 0, whole[row - 1], 0.0)
-    return np.asarray(leaving + stack.dephasing / HBAR * scale * (before + march.probability(row, offset)))
+    held = march.probability()
+    passed = (np.cumsum(held, axis=0) - held)[row] + march.probability(row, offset)
+    return np.asarray(leaving + stack.dephasing / HBAR * scale * passed)
 
 
 def _joined(right_going: _March, left_going: _March) -> tuple[_March, _March, NDArray[np.int64]]:
     """Both outgoing solutions brought to one scale, and the layer (from the left) at whose left face they join.
 
-    They join where the product of the two is largest, which is where the state is: short of it each of them still
-    grows away from its own end and is exact, beyond it rounding grows instead.
+    That is where their product is largest and so the state is: short of it each grows away from its end and is exact,
+    beyond it rounding grows instead.
     """
     rows = np.arange(right_going.kind.size)
     from_right = [part[::-1] for part in right_going.at(rows, right_going.numbers[0])]
     from_left = [left_going.psi[:-1], left_going.slope[:-1], left_going.log[:-1]]
-    size = [np.log(abs(psi) + abs(slope)) + log for psi, slope, log in (from_right, from_left)]
-    join = np.argmax(size[0] + size[1], axis=0)
-    (psi, slope, log), (other, bend, reference) = (
-        [np.take_along_axis(part, join[None], axis=0)[0] for part in parts] for parts in (from_right, from_left)
-    )
-    slope = -slope
-    factor = (other.conj() * psi + bend.conj() * slope) / (abs(other) ** 2 + abs(bend) ** 2)
+    join = np.argmax(sum(np.log(abs(psi) + abs(slope)) + log for psi, slope, log in (from_right, from_left)), axis=0)
+    at = join, np.arange(join.size)
+    psi, slope, log = from_right[0][at], -from_right[1][at], from_right[2][at]
+    other, bend, reference = (part[at] for part in from_left)
+    factor = (other.conj() * psi + bend.conj() * slope) / (_squared(other) + _squared(bend))
     kink = np.hypot(abs(psi - factor * other), abs(slope - factor * bend)) / np.hypot(abs(psi), abs(slope))
     if (kink > _NO_POLE).any():
         lost = right_going.inside[np.argmax(kink)]
@@ -370,19 +347,18 @@ class _Places:
     position: Floats
     layer: NDArray[np.int64]
     offset: Floats
-    thickness: Floats
 
     def seen_from(self, march: _March) -> tuple[NDArray[np.int64], Floats]:
         """Row of the march and distance from that layer's far face."""
         if march.leftwards:
-            return march.kind.size - 1 - self.layer, self.thickness[self.layer] - self.offset
+            row = march.kind.size - 1 - self.layer
+            return row, march.numbers[0, row] - self.offset
         return self.layer, self.offset
 
 
 def _places(stack: Stack, positions: ArrayLike | None, points_per_nm: float, energies: int) -> _Places:
     """The places asked for, after a check that `energies` times their number is not too much."""
-    layers = [element for element in _written_out(stack, energies) if isinstance(element, Layer)]
-    thickness = np.array([layer.thickness for layer in layers])
+    thickness = np.array([e.thickness for e in _written_out(stack, energies) if isinstance(e, Layer)])
     face = np.concatenate([[0.0], np.cumsum(thickness)])
     if positions is not None:
         position = np.atleast_1d(np.asarray(positions, dtype=float)).ravel()
@@ -390,7 +366,7 @@ def _places(stack: Stack, positions: ArrayLike | None, points_per_nm: float, ene
             raise ValueError(f"positions: every one must lie in the stack, from 0 to {face[-1]:.9g} nm")
         _require_size(energies, position.size)
         layer = np.minimum(np.searchsorted(face[1:], position), thickness.size - 1)
-        return _Places(position, layer, np.clip(position - face[layer], 0.0, thickness[layer]), thickness)
+        return _Places(position, layer, np.clip(position - face[layer], 0.0, thickness[layer]))
     if not (math.isfinite(points_per_nm) and points_per_nm > 0):
         raise ValueError(f"points_per_nm is {points_per_nm!r}: give a number above 0")
     count = np.maximum(np.ceil(thickness * points_per_nm - 1e-9), 1)
@@ -399,7 +375,7 @@ def _places(stack: Stack, positions: ArrayLike | None, points_per_nm: float, ene
     layer = np.concatenate([[0], np.repeat(np.arange(thickness.size), count)])
     step = np.arange(1, layer.size) - np.repeat(np.cumsum(count) - count, count)
     offset = np.concatenate([[0.0], thickness[layer[1:]] * (step / count[layer[1:]])])
-    return _Places(face[layer] + offset, layer, offset, thickness)
+    return _Places(face[layer] + offset, layer, offset)
 
 
 def _rate(element: Element, step: Transfer, inside: Array) -> Transfer:
@@ -410,7 +386,7 @@ def _rate(element: Element, step: Transfer, inside: Array) -> Transfer:
     if isinstance(element, Delta):
         return Transfer(0.0, 0.0, 0.0, 0.0)
     kinetic, mass, length = inside - element.band_edge, mass_at(element, inside), element.thickness
-    rate = _mass_rate(element)
+    rate = element.mass * element.nonparabolicity
     x = kinetic * mass * (length * length / HBAR2_2M0)
     growth = (mass + kinetic * rate) * (length * length / HBAR2_2M0)
     sine = step.b / (mass * length)
@@ -420,39 +396,28 @@ def _rate(element: Element, step: Transfer, inside: Array) -> Transfer:
         series = series * small + (-1) ** n * n / math.factorial(2 * n + 1)
     bend = np.where(near, series, (step.a - sine) / (2 * np.where(near, 1.0, x))) * growth
     even = -sine / 2 * growth
-    return Transfer(
-        even, length * (rate * sine + mass * bend), -length / HBAR2_2M0 * (sine + kinetic * bend), even
-    )
+    return Transfer(even, length * (rate * sine + mass * bend), -length / HBAR2_2M0 * (sine + kinetic * bend), even)
 
 
 def _squared(amplitude: Complex) -> Floats:
     return np.asarray(amplitude.real**2 + amplitude.imag**2)
 
 
-def _mass_rate(medium: Layer | Lead) -> float:
-    """dm/dE (m0/eV)."""
-    return medium.mass * medium.nonparabolicity
-
-
 def _flux_factor(lead: Lead, energy: Array) -> Complex:
     """k/m (1/nm per m0) of the wave that goes out into a lead; i kappa/m where it is closed, with m(E) continued."""
     kinetic, mass = energy - lead.band_edge, mass_at(lead, energy)
     if (np.asarray(mass).real <= 0).any():
-        end = lead.band_edge - 1 / lead.nonparabolicity
-        raise ValueError(
-            f"the one-band model ends at {end * 1e3:.6g} meV, where the mass of a lead with band edge "
-            f"{lead.band_edge * 1e3:.6g} meV falls to 0: ask for energies above it"
-        )
+        end = (lead.band_edge - 1 / lead.nonparabolicity) * 1e3
+        raise ValueError(f"the one-band model ends at {end:.6g} meV, where a lead's mass falls to 0: ask above it")
     square = kinetic / (HBAR2_2M0 * mass) + 0j
     closed = square.real < 0
     return np.asarray(np.where(closed, 1j, 1.0) * np.sqrt(np.where(closed, -square, square)))
 
 
-def _flux_factor_rate(lead: Lead, energy: Floats) -> Floats:
-    """d(k/m)/dE of an open lead."""
-    kinetic, mass = energy - lead.band_edge, mass_at(lead, energy)
-    rate = (1 - kinetic * _mass_rate(lead) / mass) / (HBAR2_2M0 * mass)
-    return np.asarray(rate / (2 * _flux_factor(lead, energy).real))
+def _flux_factor_growth(lead: Lead, energy: Floats) -> Floats:
+    """d ln(k/m)/dE (1/eV) of an open lead."""
+    kinetic = energy - lead.band_edge
+    return np.asarray(1 / kinetic - lead.nonparabolicity / (1 + lead.nonparabolicity * kinetic)) / 2
 
 
 def _lead(stack: Stack, side: Side) -> Lead:
@@ -482,7 +447,5 @@ def _incident_energies(stack: Stack, energies: ArrayLike, side: Side) -> Floats:
 
 def _require_size(energies: int, places: float) -> None:
     if places > MOST_PLACES or energies * places > MOST_VALUES:
-        raise ValueError(
-            f"energies, positions, stack: {energies:,} energies at {places:,.0f} positions or layers are more than one "
-            f"call computes, {MOST_PLACES:,} and {MOST_VALUES:,} values: ask for fewer of them"
-        )
+        raise ValueError(f"energies, positions, stack: {energies:,} energies at {places:,.0f} places are more than "
+                         f"{MOST_PLACES:,} places or {MOST_VALUES:,} values: ask for fewer")

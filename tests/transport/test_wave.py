@@ -347,7 +347,7 @@ def test_the_model_ends_where_a_mass_falls_to_0(call: Any) -> None:
 
 def test_the_model_ends_in_a_closed_lead_too() -> None:
     stack = Stack(LEAD, (), PLAIN.cell, 1, (), Lead(2.0, 0.1, 1.0))
-    with pytest.raises(ValueError, match=r"the one-band model ends at 1000 meV, where the mass of a lead"):
+    with pytest.raises(ValueError, match=r"the one-band model ends at 1000 meV, where a lead's mass falls to 0"):
         wave(stack, [0.5])
 
 
@@ -364,9 +364,9 @@ def test_a_spacing_is_above_0(spacing: float) -> None:
 
 
 def test_too_much_is_refused_before_it_is_begun() -> None:
-    with pytest.raises(ValueError, match=r"10,000 energies at 6,401 positions or layers are more .* ask for fewer"):
+    with pytest.raises(ValueError, match=r"10,000 energies at 6,401 places are more than .* ask for fewer"):
         local_density_of_states(PLAIN, np.linspace(0.1, 0.2, 10_000), points_per_nm=100)
-    with pytest.raises(ValueError, match=r"1 energies at 2,000,000 positions or layers"):
+    with pytest.raises(ValueError, match=r"1 energies at 2,000,000 places"):
         wave(PLAIN.with_periods(1_000_000), [0.1])
 
 
