@@ -120,8 +120,8 @@ def local_density_of_states(
 ) -> LocalDensity:
     """Local density of states: probability of the waves of unit flux from both sides, over 2 pi hbar.
 
-    A closed lead sends nothing. With dephasing it is the part that the leads feed. `positions` and errors as for
-    `wave`, except that any finite energy is taken.
+    It is what the leads feed: a closed lead sends nothing, and states bound below both, or what dephasing broadens,
+    are not in it. `positions` and errors as for `wave`, but any finite energy is taken.
     """
     energy = _finite(np.asarray(energies, dtype=float))
     places = _places(stack, positions, points_per_nm, energy.size)
@@ -164,8 +164,8 @@ def phase_time(stack: Stack, energies: ArrayLike) -> Floats:
     """
     energy = _incident_energies(stack, _incident_energies(stack, energies, "left"), "right")
     elements, inside = _written_out(stack, energy.size)[::-1], _inside(stack, energy)
-    near, far = (_flux_factor(lead, energy) for lead in (stack.left, stack.right))
-    near_growth, far_growth = (_flux_factor_growth(lead, energy) for lead in (stack.left, stack.right))
+    (near, near_growth), (far, far_growth) = (
+        (_flux_factor(lead, energy), _flux_factor_growth(lead, energy)) for lead in (stack.left, stack.right))
     one = np.ones(energy.size, complex)
     psi, slope = np.array([one, 0 * one]), -1j * far * np.array([one, far_growth])  # values, and below their rates
     steps = {e: (step := element_transfer(e, inside), _rate(e, step, inside)) for e in dict.fromkeys(elements)}
@@ -311,10 +311,9 @@ def _current(stack: Stack, march: _March, places: _Places) -> Floats:
     leaving = leaving * abs(march.psi[0]) ** 2 * np.exp(2 * (march.log[0] - march.reference)) * scale
     if not stack.dephasing:
         return np.tile(leaving, (places.position.size, 1))
-    row, offset = places.seen_from(march)
-    held = march.probability()
-    passed = (np.cumsum(held, axis=0) - held)[row] + march.probability(row, offset)
-    return np.asarray(leaving + stack.dephasing / HBAR * scale * passed)
+    (row, offset), held = places.seen_from(march), march.probability()
+    held = (np.cumsum(held, axis=0) - held)[row] + march.probability(row, offset)
+    return np.asarray(leaving + stack.dephasing / HBAR * scale * held)
 
 
 def _joined(right_going: _March, left_going: _March) -> tuple[_March, _March, NDArray[np.int64]]:

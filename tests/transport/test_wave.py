@@ -61,9 +61,9 @@ def test_what_comes_out_is_the_spectrum_with_its_phase(name: str, side: Side) ->
     stack = EVERY[name]
     found, curve = wave(stack, ENERGIES, side), spectrum(stack, ENERGIES)
     end, sign, far = (-1, 1, stack.right) if side == "left" else (0, -1, stack.left)
-    assert sign * found.current[:, end] == pytest.approx(curve.transmission, rel=1e-10)
+    assert sign * found.current[:, end] == pytest.approx(curve.transmission, rel=1e-10, abs=0)
     amplitude = found.psi[:, end] * np.sqrt(velocity(far, ENERGIES))
-    assert abs(amplitude) ** 2 == pytest.approx(curve.transmission, rel=1e-10)
+    assert abs(amplitude) ** 2 == pytest.approx(curve.transmission, rel=1e-10, abs=0)
     assert abs(np.angle(amplitude * np.exp(-1j * curve.phase))).max() < 1e-9
 
 
@@ -119,7 +119,7 @@ def test_psi_is_what_a_general_solver_finds(stack: Stack, side: Side) -> None:
         low, high = min(place, end), max(place, end)
         inside = np.flatnonzero((found.position > low + 1e-9) & (found.position < high - 1e-9))
         there = solved.sol(found.position[inside])
-        assert found.density[0, inside] == pytest.approx(abs(there[0]) ** 2, rel=1e-8)
+        assert found.density[0, inside] == pytest.approx(abs(there[0]) ** 2, rel=1e-8, abs=0)
         assert abs(found.psi[0, inside] - there[0]).max() < 1e-8 * abs(there[0]).max()
         assert abs(found.slope[0, inside] - there[1]).max() < 1e-8 * abs(there[1]).max()
         state, place = solved.y[:, -1], end
@@ -159,8 +159,8 @@ def test_positions_cover_both_faces_of_every_layer_with_the_spacing_asked_for() 
 def test_given_positions_and_chosen_ones_agree(side: Side) -> None:
     chosen = wave(LOSSY_KANE, ENERGIES[::20], side)
     given = wave(LOSSY_KANE, ENERGIES[::20], side, positions=chosen.position[::-1])
-    assert given.psi[:, ::-1] == pytest.approx(chosen.psi, rel=1e-9)
-    assert given.current[:, ::-1] == pytest.approx(chosen.current, rel=1e-9)
+    assert given.psi[:, ::-1] == pytest.approx(chosen.psi, rel=1e-9, abs=0)
+    assert given.current[:, ::-1] == pytest.approx(chosen.current, rel=1e-9, abs=0)
 
 
 @pytest.mark.parametrize("stack", [PLAIN.with_periods(500), UNEQUAL.with_periods(500), OPAQUE.with_periods(40)],
@@ -183,10 +183,10 @@ def test_one_barrier_thicker_than_any_exponent_decays_evenly() -> None:
     stack = Stack(LEAD, (), (Layer(900.0, 0.3, 0.092),), 1, (), LEAD)
     found = wave(stack, 0.1, positions=[10.0, 110.0, 300.0, 900.0])
     kappa = np.sqrt(0.2 * 0.092 / HBAR2_2M0)
-    assert np.diff(np.log(found.density[0, :3])) == pytest.approx([-200 * kappa, -380 * kappa], rel=1e-12)
+    assert np.diff(np.log(found.density[0, :3])) == pytest.approx([-200 * kappa, -380 * kappa], rel=1e-12, abs=0)
     assert found.density[0, 3] == 0
     thinner = Stack(LEAD, (), (Layer(90.0, 0.3, 0.092),), 1, (), LEAD)
-    assert dwell_time(stack, 0.1) == pytest.approx(dwell_time(thinner, 0.1), rel=1e-12)
+    assert dwell_time(stack, 0.1) == pytest.approx(dwell_time(thinner, 0.1), rel=1e-12, abs=0)
 
 
 def gauss(stack: Stack) -> tuple[Any, Any, Any]:
@@ -207,9 +207,9 @@ def test_dwell_time_and_charge_are_integrals_of_the_density(name: str, side: Sid
     found = wave(stack, energy, side, positions=at)
     density = found.density + HBAR2_2M0 * rate.ravel() * abs(found.slope) ** 2
     parts = (density.reshape(-1, *at.shape) * weights).sum(axis=2)
-    assert dwell_time(stack, energy, side) == pytest.approx(parts.sum(axis=1), rel=1e-9)
+    assert dwell_time(stack, energy, side) == pytest.approx(parts.sum(axis=1), rel=1e-9, abs=0)
     share = charge(stack, energy, side)
-    assert share == pytest.approx(parts / parts.sum(axis=1, keepdims=True), rel=1e-8)
+    assert share == pytest.approx(parts / parts.sum(axis=1, keepdims=True), rel=1e-8, abs=0)
     assert share.sum(axis=1) == pytest.approx(1, abs=1e-12)
 
 
@@ -232,7 +232,7 @@ def test_dwell_times_are_the_phase_times_without_the_self_interference(name: str
     dwell = dwell_time(stack, ENERGIES) + dwell_time(stack, ENERGIES, "right")
     parts = zip((stack.left, stack.right), (matrix.reflection, matrix.reflection_back), strict=True)
     interference = HBAR * sum(flux_factor_slope(lead, ENERGIES) * r.imag for lead, r in parts)
-    assert dwell == pytest.approx(2 * phase_time(stack, ENERGIES) + interference, rel=1e-5)
+    assert dwell == pytest.approx(2 * phase_time(stack, ENERGIES) + interference, rel=1e-8, abs=0)
 
 
 @every
@@ -241,7 +241,7 @@ def test_the_states_counted_in_the_stack_are_its_dwell_times_over_2_pi_hbar(name
     at, weights, _ = gauss(stack)
     states = local_density_of_states(stack, energy, positions=at).density @ weights.ravel()
     expected = (dwell_time(stack, energy) + dwell_time(stack, energy, "right")) / (2 * np.pi * HBAR)
-    assert states == pytest.approx(expected, rel=1e-9)
+    assert states == pytest.approx(expected, rel=1e-9, abs=0)
 
 
 def test_a_closed_right_lead_turns_all_back() -> None:
@@ -260,7 +260,7 @@ def test_below_a_lead_only_the_other_feeds_the_density() -> None:
     density = local_density_of_states(stack, [-0.2, -0.05, 0.05])
     assert (density.density[0] == 0).all()
     lone = wave(stack.reversed(), 0.05)
-    assert density.density[1] == pytest.approx(lone.density[0, ::-1] / (2 * np.pi * HBAR), rel=1e-9)
+    assert density.density[1] == pytest.approx(lone.density[0, ::-1] / (2 * np.pi * HBAR), rel=1e-9, abs=0)
     assert density.density[2].min() > 0
 
 
@@ -269,7 +269,7 @@ def test_a_stack_turned_round_shows_the_same_wave_from_the_other_side(stack: Sta
     shift = stack.right.band_edge
     here, there = wave(stack, ENERGIES, "right"), wave(stack.reversed(), ENERGIES - shift, "left")
     assert stack.length - there.position[::-1] == pytest.approx(here.position, abs=1e-9)
-    assert there.density[:, ::-1] == pytest.approx(here.density, rel=1e-7)
+    assert there.density[:, ::-1] == pytest.approx(here.density, rel=1e-7, abs=0)
 
 
 def test_a_decaying_state_has_unit_norm_and_goes_out_on_both_sides() -> None:
@@ -277,11 +277,11 @@ def test_a_decaying_state_has_unit_norm_and_goes_out_on_both_sides() -> None:
     stack = Stack(LEAD, (wall,), (Layer(5.0, 0.0, 0.067),), 1, (wall,), LEAD)
     energy = pole(stack, 0.08 - 0.0005j)
     found = pole_wave(stack, [energy], points_per_nm=200.0)
-    assert simpson(found.density[0], x=found.position) == pytest.approx(1, rel=1e-9)
+    assert simpson(found.density[0], x=found.position) == pytest.approx(1, rel=1e-9, abs=0)
     outwards = 1j * np.sqrt(energy / (HBAR2_2M0 * 0.067))
-    assert found.slope[0, -1] / found.psi[0, -1] == pytest.approx(outwards, rel=1e-9)
-    assert found.slope[0, 0] / found.psi[0, 0] == pytest.approx(-outwards, rel=1e-9)
-    assert found.density[0] == pytest.approx(found.density[0, ::-1], rel=1e-9)
+    assert found.slope[0, -1] / found.psi[0, -1] == pytest.approx(outwards, rel=1e-9, abs=0)
+    assert found.slope[0, 0] / found.psi[0, 0] == pytest.approx(-outwards, rel=1e-9, abs=0)
+    assert found.density[0] == pytest.approx(found.density[0, ::-1], rel=1e-9, abs=0)
 
 
 def test_a_decaying_state_loses_at_its_faces_what_its_width_says() -> None:
@@ -290,7 +290,7 @@ def test_a_decaying_state_loses_at_its_faces_what_its_width_says() -> None:
                   Lead(-0.02, 0.07))
     energy = pole(stack, 0.085 - 0.001j)
     found = pole_wave(stack, [energy])
-    assert -2 * energy.imag / HBAR == pytest.approx(found.current[0, -1] - found.current[0, 0], rel=1e-9)
+    assert -2 * energy.imag / HBAR == pytest.approx(found.current[0, -1] - found.current[0, 0], rel=1e-9, abs=0)
 
 
 def test_a_long_lived_state_dies_away_on_both_sides() -> None:
@@ -303,7 +303,7 @@ def test_a_long_lived_state_dies_away_on_both_sides() -> None:
         return float(k * np.tan(3 * k) - kappa)
 
     found = pole_wave(stack, [brentq(even, 0.01, 0.08, xtol=1e-18)])
-    assert found.density[0] == pytest.approx(found.density[0, ::-1], rel=1e-6)
+    assert found.density[0] == pytest.approx(found.density[0, ::-1], rel=1e-6, abs=0)
     assert found.density[0, 0] < 1e-33 * found.density.max()
 
 
