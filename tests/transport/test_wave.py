@@ -293,6 +293,18 @@ def test_a_decaying_state_loses_at_its_faces_what_its_width_says() -> None:
     assert -2 * energy.imag / HBAR == pytest.approx(found.current[0, -1] - found.current[0, 0], rel=1e-9, abs=0)
 
 
+@pytest.mark.parametrize("near", [0.0763 - 0.00017j, 0.0872 - 0.00023j])
+def test_a_decaying_state_is_whole_where_its_two_ends_are_joined(near: complex) -> None:
+    """psi and psi'/m just left and just right of every face, in a stack of eight wells."""
+    stack, beside = ALL["closed off"], 1e-9
+    faces = np.cumsum([layer.thickness for layer in stack.cell * 8 if isinstance(layer, Layer)])
+    found = pole_wave(stack, [pole(stack, near)], positions=np.concatenate([faces - beside, faces + beside]))
+    size = abs(found.psi).max() + abs(found.slope).max()
+    for part in (found.psi, found.slope):
+        before, behind = np.split(part[0], 2)
+        assert abs(behind - before).max() < 1e-7 * size
+
+
 def test_a_long_lived_state_dies_away_on_both_sides() -> None:
     """Walls of e^-40, so 1e-34 in density: carried from one end only, the other tail would be rounding."""
     wall = Layer(60.0, 0.3, 0.067)
