@@ -117,7 +117,7 @@ def element_transfer(element: Element, energy: Array, span: Span | None = None) 
     reach = max(abs(span.low - element.band_edge), abs(span.high - element.band_edge)) + span.imaginary
     heaviest = mass if isinstance(mass, float) else float(np.max(abs(mass), initial=0.0))
     largest = reach * heaviest * element.thickness * length if energy.size else 0.0
-    if largest > OPAQUE**2 and span.low < element.band_edge:
+    if largest > OPAQUE**2 and (span.low < element.band_edge or span.imaginary):
         cosine, sine, log_scale = _opaque(kinetic * (mass * element.thickness * length))
         return Transfer(cosine, sine * (mass * element.thickness), kinetic * sine * -length, cosine, log_scale)
     near = _COMPLEX_REACH if energy.dtype.kind == "c" else _REAL_REACH
@@ -190,12 +190,13 @@ def _doubled(z: Array, doublings: int) -> tuple[Array, Array]:
 
 def _opaque(x: Array) -> tuple[Array, Array, NDArray[np.float64]]:
     """cos sqrt(x), sin sqrt(x)/sqrt(x) over exp(log_scale), and log_scale, where exp(sqrt(-x)) may overflow."""
-    thick = x.real < -(OPAQUE**2)
+    decay = np.sqrt(-x + 0j)
+    thick = decay.real > OPAQUE
     thin = np.where(thick, 0, x)
     doublings = max(0, math.ceil(math.log(max(float(abs(thin).max()), 1e-9) / _COMPLEX_REACH, 4)))
     cosine, sine = _doubled(thin * (-4 * 0.25**doublings), doublings)
     sine *= 0.5**doublings
-    decay = np.sqrt(-x[thick] + 0j)
+    decay = decay[thick]
     turn = np.exp(1j * decay.imag) / 2
     log_scale = np.zeros(x.shape)
     log_scale[thick] = decay.real
@@ -211,6 +212,7 @@ def _growth_bound(elements: Sequence[Element], span: Span) -> float:
         if isinstance(element, Delta):
             growth += math.log1p(abs(element.strength) / HBAR2_2M0)
         else:
-            depth = max(0.0, element.band_edge - span.low) * element.mass / HBAR2_2M0
-            growth += 1.0 + math.sqrt(depth) * element.thickness
+            unit = element.mass / HBAR2_2M0
+            decay = math.sqrt(max(0.0, element.band_edge - span.low) * unit) + math.sqrt(span.imaginary * unit / 2)
+            growth += 1.0 + decay * element.thickness
     return growth

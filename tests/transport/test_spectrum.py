@@ -1,10 +1,12 @@
 """Spectra: chosen energies miss nothing, closed leads, shapes, and misuse."""
 
+import mpmath
 import numpy as np
 import pytest
 
+from tests.reference import scattered
 from tests.transport.stacks import ALL, END_WELLS, LEAD, LOSSY, OPAQUE, PLAIN, UNEQUAL, barrier, well
-from transport import Stack, measured_transmission, spectrum, transmission_map
+from transport import Layer, Stack, measured_transmission, spectrum, transmission_map
 from transport.spectrum import MOST_PEAKS
 
 NARROW = Stack(LEAD, (barrier(12.0), well(5.0), barrier(12.0)), (well(5.0),), 1, (), LEAD)
@@ -26,6 +28,20 @@ def test_a_peak_of_a_hundred_millionth_eV_reaches_its_height() -> None:
     assert curve.transmission.max() > 0.999
     half = curve.energy[curve.transmission > 0.5]
     assert 0 < np.ptp(half[:2]) < 1e-6
+
+
+@pytest.mark.parametrize("stack", [
+    Stack(LEAD, (), (Layer(9000.0, 0.1, 0.067),), 1, (), LEAD, dephasing=0.02),
+    Stack(LEAD, (), (Layer(300.0, 0.1, 0.067), well(200.0)), 12, (Layer(300.0, 0.2, 0.067),), LEAD, dephasing=0.3),
+], ids=["one thick layer", "many layers"])
+def test_losses_in_thick_layers_do_not_overflow_above_the_barriers(stack: Stack) -> None:
+    """Against plane waves in 50 digits."""
+    energy = [0.05, 0.15, 0.9]
+    found = spectrum(stack, energy)
+    for place, at in enumerate(energy):
+        expected = scattered(stack, at)
+        assert found.log10_transmission[place] == pytest.approx(float(mpmath.log10(expected.transmission)), rel=1e-9)
+        assert found.reflection[place] == pytest.approx(float(expected.reflection), rel=1e-9)
 
 
 def test_every_peak_of_every_miniband_is_sampled() -> None:

@@ -73,6 +73,7 @@ class Board:
     def show_page(self, wanted: Wanted, found: Pictures) -> Texts:
         """Draw the figures of the page, and of them only what has changed; returns them in words."""
         page, periods = self.periods, wanted.scenario.stack.periods
+        page.reveal()
         page.mark(periods)
         page.dispersion.show_points(found.points, found.at_points, periods)
         if found.emergence is not self._emergence:

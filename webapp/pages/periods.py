@@ -26,6 +26,13 @@ class PeriodsPage:
         self.emergence = EmergenceFigure(axis, minibands, self._marker, drags)
         self.dispersion = DispersionFigure(axis, minibands, drags)
 
+        self.reveal(False)
+
+    def reveal(self, visible: bool = True) -> None:
+        """Let the figures be seen: not before those of the bench are, which a visitor waits for first."""
+        for part in (self.margins, self.emergence, self.dispersion):
+            part.figure.visible = visible
+
     def mark(self, periods: int) -> None:
         """Mark the present number of periods."""
         self._marker.location = periods
