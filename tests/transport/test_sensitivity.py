@@ -58,7 +58,8 @@ def outgoing(stack: Stack, energy: mpmath.mpc) -> mpmath.mpc:
 
 def pole(stack: Stack, guess: complex) -> complex:
     with mpmath.workdps(50):
-        return mpmath.findroot(lambda e: outgoing(stack, e), mpmath.mpc(guess))
+        found: complex = mpmath.findroot(lambda e: outgoing(stack, e), mpmath.mpc(guess))
+        return found
 
 
 def with_element(stack: Stack, place: int, element: Element) -> Stack:
@@ -91,7 +92,7 @@ def _moved_by(element: Element, name: str) -> mpmath.mpf:
 
 
 def _moved(element: Element, name: str, way: int) -> Element:
-    return replace(element, **{name: getattr(element, name) + way * 2.0**-22})  # type: ignore[arg-type]
+    return replace(element, **{name: getattr(element, name) + way * 2.0**-22})
 
 
 def test_a_stack_of_many_opaque_periods_has_finite_derivatives_that_add_up() -> None:
