@@ -34,6 +34,7 @@ _FROM_POLE = 1e-11
 _MOST_STEPS = 60
 _MOST_SPLITS = 6
 _SETTLED = 1e-8  # share of the distance to the next pole: the error is of second order in the step
+_STALLED = 1e-4  # share of that distance within which a step that no longer halves is rounding
 _ABOVE = 1e-13  # eV: no pole lies above the axis by more than rounding
 _BLURRED = 1e-6  # eV: a zero that rounding may shift by more is rounding itself
 _NEIGHBOURS = 24  # poles on either side that deflate
@@ -115,8 +116,18 @@ def resonances(stack: Stack, between: tuple[float, float] | None = None) -> Reso
     logs = [log_widths(still, strip, found.poles) for strip, found in parts]
     left, right = (np.concatenate([np.zeros(0), *(pair[side] for pair in logs)]) for side in (0, 1))
     certificate = PoleCertificate(sum(found.counted for _, found in parts), poles.size,
-                                  tuple(region for _, found in parts for region in found.open_regions))
+                                  _joined([region for _, found in parts for region in found.open_regions]))
     return _ledger(still, (low, high), poles.real.copy(), left, right, certificate)
+
+
+def _joined(regions: list[tuple[float, float]]) -> tuple[tuple[float, float], ...]:
+    """Ascending regions, those that touch made one."""
+    joined: list[tuple[float, float]] = []
+    for low, high in regions:
+        if joined and joined[-1][1] == low:
+            low = joined.pop()[0]
+        joined.append((low, high))
+    return tuple(joined)
 
 
 def _ledger(
@@ -226,7 +237,7 @@ def _polished(stack: Stack, strip: Strip, seeds: Complexes, known: Complexes | N
     poles = np.zeros(0, complex) if known is None else known
     z, (low, high) = seeds.copy(), strip.padded
     settled, reach = np.zeros(z.size, dtype=bool), (high - low) / 4
-    lost = settled.copy()
+    lost, before = settled.copy(), np.full(z.size, np.inf)
     for _ in range(_MOST_STEPS):
         active = np.flatnonzero(~settled)
         if not active.size:
@@ -240,6 +251,8 @@ def _polished(stack: Stack, strip: Strip, seeds: Complexes, known: Complexes | N
         size = np.abs(move)
         z[active] -= move * np.minimum(1.0, reach / np.maximum(size, 1e-300))
         settled[active] = size < np.maximum(_SETTLED * nearest, 4e-16 * np.abs(z[active]))
+        settled[active] |= (size < _STALLED * nearest) & (size > before[active] / 2)
+        before[active] = size
         lost[active] = (abs(z[active].real - (low + high) / 2) > 3 * reach) | (abs(z[active].imag) > 4 * reach)
         lost[active] |= settled[active] & (noise > _BLURRED)
         settled |= lost

@@ -5,7 +5,8 @@ has zeros inside (Delves and Lyness, Math. Comp. 21, 543 (1967); Kravanja and Va
 scattering matrix lies above the real axis, so the edge is drawn well above it, where nothing is narrow: it crosses
 the axis at its two ends only, and a state of 1e-15 eV is counted like any other.
 
-Of the engine only the layer matrix is used: N cells are multiplied out by squaring, not by the closed form.
+Nothing of the engine's arithmetic is used, not even the layer matrix: plane waves are matched from layer to layer,
+each amplitude exact to its own rounding however deep below the axis, and N cells multiplied out by squaring.
 """
 
 from __future__ import annotations
@@ -20,8 +21,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from transport.constants import HBAR2_2M0
-from transport.propagation import element_transfer, mass_at
-from transport.structure import Element, Layer, Lead, Stack
+from transport.propagation import mass_at
+from transport.structure import Delta, Element, Layer, Lead, Stack
 
 Complexes = NDArray[np.complex128]
 Floats = NDArray[np.float64]
@@ -29,7 +30,6 @@ Matrix = NDArray[np.complex128]
 """Shape (2, 2, n)."""
 
 _LARGEST_TURN = math.pi / 3
-_LEAST_SHARE = 1e-12  # of its terms that must be left of f
 _MOST_POINTS = 400_000
 
 
@@ -53,7 +53,7 @@ class Box:
 
 
 def poles_within(stack: Stack, box: Box) -> int | None:
-    """How many poles lie in the box; None where no count can be given: the edge runs through a pole or mere rounding.
+    """How many poles lie in the box; None where no count can be given: the edge runs through a pole.
 
     The edge is sampled until f turns by less than a sixth of a turn from point to point, and then once more at half
     the distance: the count must stay.
@@ -106,31 +106,59 @@ def _optical_phase(stack: Stack, energy: complex) -> complex:
 
 
 def _turned(stack: Stack, box: Box, energy: Complexes) -> Complexes:
-    """f over its size at each point; NaN where its terms cancel so far that rounding is left."""
-    total = _product([_power(_list(stack.cell, energy), stack.periods), _list(stack.entry, energy)])
-    (a, b), (c, d) = _product([_list(stack.exit, energy), total])
-    left, right = (_flux(lead, energy, is_open) for lead, is_open in
+    """f over its size at each point: the wave that comes in on the right of one that only goes out on the left."""
+    media = _Media(energy)
+    left, right = (media.lead(lead, is_open) for lead, is_open in
                    ((stack.left, box.left_open), (stack.right, box.right_open)))
-    parts = (right * a, left * d, 1j * c, -1j * left * right * b)
-    value, terms = sum(parts), sum(abs(part) for part in parts)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        return np.where(abs(value) > _LEAST_SHARE * terms, value / abs(value), np.nan)
+    core = media.flux(next(e for e in stack.cell if isinstance(e, Layer)))
+    cells = _power(media.through(core, stack.cell, core), stack.periods)
+    total = _product([cells, media.through(left, stack.entry, core)])
+    value = right * _product([media.through(core, stack.exit, right), total])[1, 1]
+    with np.errstate(invalid="ignore"):  # no direction at a zero: the edge runs through a pole
+        return np.asarray(value / abs(value), dtype=np.complex128)
 
 
-def _flux(lead: Lead, energy: Complexes, is_open: bool) -> Complexes:
-    square = (energy - lead.band_edge) / (HBAR2_2M0 * mass_at(lead, energy))
-    return np.asarray(np.sqrt(square) if is_open else 1j * np.sqrt(-square))
+class _Media:
+    """Plane waves at given energies: matrices on the amplitudes (onward, back), scaled by any positive number."""
 
+    def __init__(self, energy: Complexes) -> None:
+        self.energy = energy
+        self.one = np.ones_like(energy)
+        self.phases: dict[Layer, Matrix] = {}
 
-def _list(elements: Sequence[Element], energy: Complexes) -> Matrix:
-    """A list of layers multiplied out, scaled by any positive number."""
-    total: Matrix = np.array([[np.ones_like(energy), np.zeros_like(energy)],
-                              [np.zeros_like(energy), np.ones_like(energy)]])
-    for element in elements:
-        step = element_transfer(element, energy)
-        entries = [np.broadcast_to(part, energy.shape) for part in (step.a, step.b, step.c, step.d)]
-        total = _product([np.array(entries).reshape(2, 2, -1), total])
-    return total
+    def lead(self, lead: Lead, is_open: bool) -> Complexes:
+        """k/m of a lead, going out."""
+        square = (self.energy - lead.band_edge) / (HBAR2_2M0 * mass_at(lead, self.energy))
+        return np.asarray(np.sqrt(square) if is_open else 1j * np.sqrt(-square))
+
+    def flux(self, layer: Layer) -> Complexes:
+        """k/m of a layer."""
+        return np.asarray(np.sqrt((self.energy - layer.band_edge) / (HBAR2_2M0 * mass_at(layer, self.energy))))
+
+    def through(self, begin: Complexes, elements: Sequence[Element], end: Complexes) -> Matrix:
+        """A list of layers and deltas between media of k/m `begin` and `end`."""
+        total, here = self._step(begin, begin), begin
+        for element in elements:
+            if isinstance(element, Delta):
+                total = _product([self._kick(element, here), total])
+                continue
+            beyond = self.flux(element)
+            phase = self.phases.setdefault(element, self._phase(element, beyond))
+            total, here = _product([phase, _product([self._step(here, beyond), total])]), beyond
+        return _product([self._step(here, end), total])
+
+    def _step(self, here: Complexes, beyond: Complexes) -> Matrix:
+        ratio = here / beyond
+        return np.array([[1 + ratio, 1 - ratio], [1 - ratio, 1 + ratio]]) / 2
+
+    def _kick(self, delta: Delta, here: Complexes) -> Matrix:
+        turn = delta.strength / HBAR2_2M0 / (2j * here)
+        return np.array([[1 + turn, turn], [-turn, 1 - turn]])
+
+    def _phase(self, layer: Layer, flux: Complexes) -> Matrix:
+        turn = 1j * flux * mass_at(layer, self.energy) * layer.thickness
+        size = abs(turn.real)
+        return np.array([[np.exp(turn - size), 0 * turn], [0 * turn, np.exp(-turn - size)]])
 
 
 def _power(matrix: Matrix, count: int) -> Matrix:
