@@ -34,6 +34,7 @@ class Strip:
     """A range of energy (eV) within which no lead opens: `left_open`, `right_open` hold for the whole of it.
 
     `low_fixed`, `high_fixed`: that end is (a hair beside) a lead's edge, and cannot be moved across it.
+    `around`: the strip with a tenth more at ends that can be moved.
     """
 
     low: float
@@ -42,12 +43,7 @@ class Strip:
     right_open: bool
     low_fixed: bool
     high_fixed: bool
-
-    @property
-    def padded(self) -> tuple[float, float]:
-        """The strip with a tenth more at ends that are no lead's edge."""
-        room = 0.1 * (self.high - self.low)
-        return self.low - (0.0 if self.low_fixed else room), self.high + (0.0 if self.high_fixed else room)
+    around: tuple[float, float]
 
 
 def strips(stack: Stack, low: float, high: float) -> list[Strip]:
@@ -57,10 +53,14 @@ def strips(stack: Stack, low: float, high: float) -> list[Strip]:
     cuts = [begin, *(edge for edge in edges if begin < edge < high), high]
     found = []
     for a, b in pairwise(cuts):
-        room = _ASIDE * (b - a)
-        strip = Strip(a + room * (a in edges), b - room * (b in edges), stack.left.band_edge <= a,
-                      stack.right.band_edge <= a, a in edges, b in edges)
-        found += [strip] if strip.low < strip.high else []
+        if not a < b:
+            continue
+        aside = _ASIDE * (b - a)
+        below, above = a + aside * (a in edges), b - aside * (b in edges)
+        beyond = (max([a - 0.1 * (b - a), *(edge + aside for edge in edges if edge <= a)]),
+                  min([b + 0.1 * (b - a), *(edge - aside for edge in edges if edge >= b)]))
+        found.append(Strip(below, above, stack.left.band_edge <= a, stack.right.band_edge <= a, a in edges, b in edges,
+                           beyond))
     return found
 
 

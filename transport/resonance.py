@@ -8,7 +8,7 @@ compared with an independent count (`winding.py`), and where the two differ the 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Any
 
@@ -32,7 +32,7 @@ MOST_RESONANCES = 5_000
 _FROM_POLE = 1e-11
 """Width (eV) below which T at the real energy cannot be computed in doubles, and its height comes from the pole."""
 _MOST_STEPS = 60
-_MOST_SPLITS = 6
+_MOST_SPLITS = 10
 _SETTLED = 1e-8  # share of the distance to the next pole: the error is of second order in the step
 _STALLED = 1e-4  # share of that distance within which a step that no longer halves is rounding
 _ABOVE = 1e-13  # eV: no pole lies above the axis by more than rounding
@@ -121,11 +121,12 @@ def resonances(stack: Stack, between: tuple[float, float] | None = None) -> Reso
 
 
 def _joined(regions: list[tuple[float, float]]) -> tuple[tuple[float, float], ...]:
-    """Ascending regions, those that touch made one."""
+    """Regions, those that touch made one."""
     joined: list[tuple[float, float]] = []
-    for low, high in regions:
-        if joined and joined[-1][1] == low:
-            low = joined.pop()[0]
+    for low, high in sorted(regions):
+        if joined and joined[-1][1] >= low:
+            low, before = joined.pop()
+            high = max(high, before)
         joined.append((low, high))
     return tuple(joined)
 
@@ -163,29 +164,40 @@ class _Found:
 
 def _certified(stack: Stack, strip: Strip, depth: float) -> _Found:
     """The poles of a strip, down to `depth` (eV) below the axis, with what the count around them says."""
-    poles = _polished(stack, strip, _seeds(stack, strip))
-    return _settled(stack, strip, _box(strip, depth, poles), poles, _MOST_SPLITS)
+    poles = _polished(stack, strip, depth, _seeds(stack, strip))
+    found = _settled(stack, strip, depth, _box(strip, depth, poles), poles, _MOST_SPLITS)
+    return replace(found, poles=found.poles[np.argsort(found.poles.real)])
 
 
-def _settled(stack: Stack, strip: Strip, box: Box, known: Complexes, splits: int) -> _Found:
-    """The poles in a box, once finding and counting agree, or what remains open."""
+def _settled(stack: Stack, strip: Strip, depth: float, box: Box, known: Complexes, splits: int) -> _Found:
+    """The poles in a box of a strip, once finding and counting agree, or what remains open."""
     inside, counted = _inside(known, box), poles_within(stack, box)
     if counted != inside.size and splits:
-        known = _polished(stack, strip, _grid(box), known)
+        known = _polished(stack, strip, depth, _grid(box), known)
         inside = _inside(known, box)
     if counted == inside.size:
         return _Found(inside, counted)
     if not splits:
         return _Found(inside, counted or 0, ((box.low, box.high),))
-    cut = _clear(known.real, (box.low + box.high) / 2, (box.high - box.low) / 4)
-    parts = [_settled(stack, strip, half, known, splits - 1) for half in box.halves(cut)]
+    parts = [_settled(stack, strip, depth, half, known, splits - 1) for half in _halves(box, known)]
     return _Found(np.concatenate([part.poles for part in parts]), sum(part.counted for part in parts),
                   tuple(region for part in parts for region in part.open_regions))
 
 
 def _inside(poles: Complexes, box: Box) -> Complexes:
     kept = (poles.real >= box.low) & (poles.real < box.high) & (poles.imag > -box.depth)
-    return np.asarray(poles[kept])
+    return np.asarray(poles[kept & (poles.imag <= box.height)] if box.height < 0 else poles[kept])
+
+
+def _halves(box: Box, poles: Complexes) -> tuple[Box, Box]:
+    """A box cut across its longer side, clear of the known poles in it."""
+    inside, top = _inside(poles, box), max(0.0, -box.height)
+    wide, deep = box.high - box.low, box.depth - top
+    if wide >= deep:
+        cut = _clear(inside.real, (box.low + box.high) / 2, wide / 4)
+        return replace(box, high=cut), replace(box, low=cut)
+    cut = _clear(-inside.imag, (top + box.depth) / 2, deep / 4)
+    return replace(box, depth=cut), replace(box, height=-cut)
 
 
 def _box(strip: Strip, depth: float, poles: Complexes) -> Box:
@@ -207,7 +219,7 @@ def _clear(values: Floats, target: float, room: float) -> float:
 
 def _seeds(stack: Stack, strip: Strip) -> Complexes:
     """Where poles are to be expected: arg t steps by pi over each, the steeper the narrower it is."""
-    low, high = strip.padded
+    low, high = strip.around
     samples = resolve(stack, np.array([stack.periods]), np.array([low]), np.array([high]), start=33)
     energy, phase = samples.energy, samples.phase
     slope = abs(np.diff(phase)) / np.diff(energy)
@@ -228,15 +240,19 @@ def _seeds(stack: Stack, strip: Strip) -> Complexes:
 
 def _grid(box: Box) -> Complexes:
     """Seeds spread over a box, for what the phase does not tell."""
-    across, down = np.meshgrid(np.linspace(box.low, box.high, 9)[1:-1], -box.depth * np.array([0.05, 0.2, 0.5, 0.8]))
-    return np.asarray((across + 1j * down).ravel())
+    top = max(0.0, -box.height)
+    across, down = np.meshgrid(np.linspace(box.low, box.high, 9)[1:-1],
+                               top + (box.depth - top) * np.array([0.05, 0.2, 0.5, 0.8]))
+    return np.asarray((across - 1j * down).ravel())
 
 
-def _polished(stack: Stack, strip: Strip, seeds: Complexes, known: Complexes | None = None) -> Complexes:
+def _polished(
+    stack: Stack, strip: Strip, depth: float, seeds: Complexes, known: Complexes | None = None
+) -> Complexes:
     """The poles that seeds lead to, besides those already `known`; ascending in energy, `known` ones among them."""
     poles = np.zeros(0, complex) if known is None else known
-    z, (low, high) = seeds.copy(), strip.padded
-    settled, reach = np.zeros(z.size, dtype=bool), (high - low) / 4
+    z, (low, high) = seeds.copy(), strip.around
+    settled, reach = np.zeros(z.size, dtype=bool), max(high - low, depth) / 4
     lost, before = settled.copy(), np.full(z.size, np.inf)
     for _ in range(_MOST_STEPS):
         active = np.flatnonzero(~settled)
@@ -253,7 +269,7 @@ def _polished(stack: Stack, strip: Strip, seeds: Complexes, known: Complexes | N
         settled[active] = size < np.maximum(_SETTLED * nearest, 4e-16 * np.abs(z[active]))
         settled[active] |= (size < _STALLED * nearest) & (size > before[active] / 2)
         before[active] = size
-        lost[active] = (abs(z[active].real - (low + high) / 2) > 3 * reach) | (abs(z[active].imag) > 4 * reach)
+        lost[active] = (abs(z[active].real - (low + high) / 2) > 4 * reach) | (abs(z[active].imag) > 8 * reach)
         lost[active] |= settled[active] & (noise > _BLURRED)
         settled |= lost
     good = settled & ~lost & (z.imag < _ABOVE) & (z.real > low) & (z.real < high)

@@ -14,7 +14,7 @@ from __future__ import annotations
 import cmath
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from itertools import pairwise
 
 import numpy as np
@@ -46,10 +46,6 @@ class Box:
     height: float
     left_open: bool
     right_open: bool
-
-    def halves(self, cut: float) -> tuple[Box, Box]:
-        """The box below and above an energy."""
-        return replace(self, high=cut), replace(self, low=cut)
 
 
 def poles_within(stack: Stack, box: Box) -> int | None:
@@ -149,11 +145,11 @@ class _Media:
 
     def _step(self, here: Complexes, beyond: Complexes) -> Matrix:
         ratio = here / beyond
-        return np.array([[1 + ratio, 1 - ratio], [1 - ratio, 1 + ratio]]) / 2
+        return np.asarray(np.array([[1 + ratio, 1 - ratio], [1 - ratio, 1 + ratio]]) / 2, dtype=np.complex128)
 
     def _kick(self, delta: Delta, here: Complexes) -> Matrix:
         turn = delta.strength / HBAR2_2M0 / (2j * here)
-        return np.array([[1 + turn, turn], [-turn, 1 - turn]])
+        return np.array([[1 + turn, turn], [-turn, 1 - turn]], dtype=np.complex128)
 
     def _phase(self, layer: Layer, flux: Complexes) -> Matrix:
         turn = 1j * flux * mass_at(layer, self.energy) * layer.thickness
