@@ -25,7 +25,7 @@ from numpy.typing import NDArray
 
 from transport.cell import Cell
 from transport.constants import HBAR2_2M0
-from transport.determinant import Complexes, Floats, Strip, determinant, flux_factor
+from transport.determinant import Complexes, Floats, Strip, determinant, flux_factor, newton_step
 from transport.propagation import Transfer, element_transfer, mass_at, transfer
 from transport.structure import Element, Lead, Stack
 
@@ -34,14 +34,16 @@ _STEP = 1e-30
 """Imaginary step (eV) for exact derivatives of analytic functions (Squire and Trapp, SIAM Rev. 40, 110 (1998))."""
 _BARRIER = 2.0
 """cosh(kappa d) from which psi at both faces tells a layer's share."""
-_ROUNDING = 1e-16
-"""Energy (eV) to which a pole's imaginary part is known, give or take."""
+_ROUNDING, _AMPLIFIED = 1e-16, 30.0
+"""Energy (eV) to which a pole is known at best, and how much of what its determinant's terms alone would allow."""
 
 
 def log_widths(stack: Stack, strip: Strip, poles: Complexes) -> tuple[Floats, Floats]:
     """Natural logarithms of both partial widths (eV) of each pole in a strip, ascending; -inf to a closed lead."""
     width, nearest = -2 * poles.imag, _nearest(poles)
-    narrow = ~(width > np.sqrt(_ROUNDING * nearest))  # there either way has lost as many digits
+    _, noise = newton_step(stack, strip, poles, np.maximum(1e-6 * nearest, 1e-13))
+    noise = np.maximum(_ROUNDING, _AMPLIFIED * noise)
+    narrow = ~(width > np.sqrt(noise * nearest))  # there either way has lost as many digits
     left, right = np.zeros(poles.size), np.zeros(poles.size)
     wide = ~narrow
     left[wide], right[wide] = _shared(stack, strip, poles[wide])

@@ -260,7 +260,7 @@ def _polished(
             break
         apart = _apart(np.concatenate([z, poles]), active)
         nearest = np.abs(apart).min(axis=1, initial=reach)
-        newton, noise = newton_step(stack, strip, z[active], np.clip(1e-3 * nearest, 1e-13, 1e-5))
+        newton, noise = newton_step(stack, strip, z[active], np.clip(1e-6 * nearest, 1e-13, 1e-8))
         with np.errstate(divide="ignore", invalid="ignore"):
             move = newton / (1 - newton * (1 / apart).sum(axis=1))
         move = np.where(np.isfinite(move), move, nearest / 2)
