@@ -36,6 +36,8 @@ _BARRIER = 2.0
 """cosh(kappa d) from which psi at both faces tells a layer's share."""
 _ROUNDING, _AMPLIFIED = 1e-16, 30.0
 """Energy (eV) to which a pole is known at best, and how much of what its determinant's terms alone would allow."""
+_DROWNED = 1e-14
+"""Width (eV) below which the imaginary part is never relied upon, however close the next pole."""
 
 
 def log_widths(stack: Stack, strip: Strip, poles: Complexes) -> tuple[Floats, Floats]:
@@ -43,7 +45,7 @@ def log_widths(stack: Stack, strip: Strip, poles: Complexes) -> tuple[Floats, Fl
     width, nearest = -2 * poles.imag, _nearest(poles)
     _, noise = newton_step(stack, strip, poles, np.maximum(1e-6 * nearest, 1e-13))
     noise = np.maximum(_ROUNDING, _AMPLIFIED * noise)
-    narrow = ~(width > np.sqrt(noise * nearest))  # there either way has lost as many digits
+    narrow = ~(width > np.maximum(np.sqrt(noise * nearest), _DROWNED))  # there either way has lost as many digits
     left, right = np.zeros(poles.size), np.zeros(poles.size)
     wide = ~narrow
     left[wide], right[wide] = _shared(stack, strip, poles[wide])

@@ -298,7 +298,7 @@ def _heights(
     value = np.asarray(chain.transmission(chain.denominator(chain.powers(stack.periods))), dtype=float)
     from_pole = (width < _FROM_POLE) & chain.open
     share = np.exp(log_share)
-    return np.where(from_pole, 4 * share * -np.expm1(np.minimum(log_share, 0.0)), np.minimum(value, 1.0)), from_pole
+    return np.where(from_pole, 4 * share * abs(np.expm1(log_share)), np.minimum(value, 1.0)), from_pole
 
 
 def _numbered(stack: Stack, energy: Floats, low: float) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
