@@ -41,7 +41,7 @@ def bound_count(stack: Stack, energy: Floats) -> NDArray[np.int64]:
     left, right = (np.sqrt((lead.band_edge - energy) / (HBAR2_2M0 * mass_at(lead, energy)))
                    for lead in (stack.left, stack.right))
     sign = np.where(b < 0, -1.0, 1.0)
-    determinant = (c + left * a + right * d + left * right * b) * sign
+    determinant = (c + left * d + right * a + left * right * b) * sign
     trace = (a + d + (left + right) * b) * sign
     negative = np.where(determinant < 0, 1, np.where(trace < 0, 2, 0))
     return np.asarray(zeros(chain, stack.periods, powers, rotation(chain)) + negative, dtype=np.int64)

@@ -106,7 +106,7 @@ def _turned(stack: Stack, box: Box, energy: Complexes) -> Complexes:
     media = _Media(energy)
     left, right = (media.lead(lead, is_open) for lead, is_open in
                    ((stack.left, box.left_open), (stack.right, box.right_open)))
-    core = media.flux(next(e for e in stack.cell if isinstance(e, Layer)))
+    core = media.swiftest(stack.cell)
     cells = _power(media.through(core, stack.cell, core), stack.periods)
     total = _product([cells, media.through(left, stack.entry, core)])
     value = right * _product([media.through(core, stack.exit, right), total])[1, 1]
@@ -128,8 +128,14 @@ class _Media:
         return np.asarray(np.sqrt(square) if is_open else 1j * np.sqrt(-square))
 
     def flux(self, layer: Layer) -> Complexes:
-        """k/m of a layer."""
-        return np.asarray(np.sqrt((self.energy - layer.band_edge) / (HBAR2_2M0 * mass_at(layer, self.energy))))
+        """k/m of a layer; at its band edge, where its two waves are one, that of 1e-12 eV above."""
+        kinetic = self.energy - layer.band_edge
+        return np.asarray(np.sqrt(np.where(kinetic == 0, 1e-12, kinetic) / (HBAR2_2M0 * mass_at(layer, self.energy))))
+
+    def swiftest(self, elements: Sequence[Element]) -> Complexes:
+        """k/m of the layer where it is largest at each energy: far from 0, where its waves would be hard to tell."""
+        fluxes = np.array([self.flux(element) for element in elements if isinstance(element, Layer)])
+        return np.asarray(fluxes[abs(fluxes).argmax(axis=0), np.arange(self.energy.size)])
 
     def through(self, begin: Complexes, elements: Sequence[Element], end: Complexes) -> Matrix:
         """A list of layers and deltas between media of k/m `begin` and `end`."""
