@@ -25,6 +25,7 @@ Floats = NDArray[np.float64]
 
 _ASIDE = 1e-9
 """Share of a strip by which it keeps aside of a lead's edge, where f branches and may vanish."""
+_THINNEST = 1e-12  # eV: leads whose edges differ by less open together
 _ROUNDING = 1e-16
 """Share of its terms that a determinant is off."""
 
@@ -53,7 +54,7 @@ def strips(stack: Stack, low: float, high: float) -> list[Strip]:
     cuts = [begin, *(edge for edge in edges if begin < edge < high), high]
     found = []
     for a, b in pairwise(cuts):
-        if not a < b:
+        if b - a < _THINNEST:
             continue
         aside = _ASIDE * (b - a)
         below, above = a + aside * (a in edges), b - aside * (b in edges)

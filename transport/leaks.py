@@ -34,6 +34,7 @@ _STEP = 1e-30
 """Imaginary step (eV) for exact derivatives of analytic functions (Squire and Trapp, SIAM Rev. 40, 110 (1998))."""
 _BARRIER = 2.0
 """cosh(kappa d) from which psi at both faces tells a layer's share."""
+_EPSILON = float(np.finfo(float).eps)
 _ROUNDING, _AMPLIFIED = 1e-16, 30.0
 """Energy (eV) to which a pole is known at best, and how much of what its determinant's terms alone would allow."""
 _DROWNED = 1e-14
@@ -161,8 +162,11 @@ def _last(faces: _Faces) -> State:
 
 
 def _resized(psi: Complexes, slope: Complexes, log: Floats) -> State:
+    """A state brought to size 1; where it cancelled to nothing, rounding is what would be left of it."""
     size = abs(psi) + abs(slope)
-    return psi / size, slope / size, log + np.log(size)
+    gone = size == 0
+    size = np.where(gone, 1.0, size)
+    return np.where(gone, 1.0, psi / size), slope / size, log + np.log(np.where(gone, _EPSILON, size))
 
 
 def _laid(parts: Sequence[NDArray[Any]], energies: int) -> NDArray[Any]:

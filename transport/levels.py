@@ -18,7 +18,7 @@ from transport.constants import HBAR2_2M0
 from transport.determinant import Floats
 from transport.oscillation import first_reaching, rotation, zeros
 from transport.propagation import mass_at
-from transport.structure import Stack
+from transport.structure import Lead, Stack
 
 
 def bound_states(stack: Stack, low: float, high: float) -> Floats:
@@ -38,10 +38,14 @@ def bound_count(stack: Stack, energy: Floats) -> NDArray[np.int64]:
     plain, swing = chain.around
     a, b, c, d = (np.asarray(getattr(plain, name) * powers.first + getattr(swing, name) * powers.second)
                   for name in "abcd")
-    left, right = (np.sqrt((lead.band_edge - energy) / (HBAR2_2M0 * mass_at(lead, energy)))
-                   for lead in (stack.left, stack.right))
+    left, right = closed_lead(stack.left, energy), closed_lead(stack.right, energy)
     sign = np.where(b < 0, -1.0, 1.0)
     determinant = (c + left * d + right * a + left * right * b) * sign
     trace = (a + d + (left + right) * b) * sign
     negative = np.where(determinant < 0, 1, np.where(trace < 0, 2, 0))
     return np.asarray(zeros(chain, stack.periods, powers, rotation(chain)) + negative, dtype=np.int64)
+
+
+def closed_lead(lead: Lead, energy: Floats) -> Floats:
+    """kappa over the mass (1/nm per m0) of a lead at energies below its edge."""
+    return np.asarray(np.sqrt((lead.band_edge - energy) / (HBAR2_2M0 * mass_at(lead, energy))))

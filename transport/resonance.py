@@ -22,7 +22,8 @@ from transport.lattice import default_range, lattice_bands
 from transport.leaks import log_widths
 from transport.levels import bound_states
 from transport.oscillation import rotation
-from transport.sampling import resolve, transmission_phase
+from transport.sampling import transmission_phase
+from transport.seeds import seeds
 from transport.structure import Stack
 from transport.winding import Box, poles_within
 
@@ -35,6 +36,7 @@ _MOST_STEPS = 60
 _MOST_SPLITS = 10
 _SETTLED = 1e-8  # share of the distance to the next pole: the error is of second order in the step
 _STALLED = 1e-4  # share of that distance within which a step that no longer halves is rounding
+_UNTOLD = 1e-14  # eV: poles nearer to each other may not be told apart
 _ABOVE = 1e-13  # eV: no pole lies above the axis by more than rounding
 _BLURRED = 1e-6  # eV: a zero that rounding may shift by more is rounding itself
 _NEIGHBOURS = 24  # poles on either side that deflate
@@ -164,7 +166,7 @@ class _Found:
 
 def _certified(stack: Stack, strip: Strip, depth: float) -> _Found:
     """The poles of a strip, down to `depth` (eV) below the axis, with what the count around them says."""
-    poles = _polished(stack, strip, depth, _seeds(stack, strip))
+    poles = _polished(stack, strip, depth, seeds(stack, strip, MOST_RESONANCES))
     found = _settled(stack, strip, depth, _box(strip, depth, poles), poles, _MOST_SPLITS)
     return replace(found, poles=found.poles[np.argsort(found.poles.real)])
 
@@ -173,7 +175,10 @@ def _settled(stack: Stack, strip: Strip, depth: float, box: Box, known: Complexe
     """The poles in a box of a strip, once finding and counting agree, or what remains open."""
     inside, counted = _inside(known, box), poles_within(stack, box)
     if counted != inside.size and splits:
-        known = _polished(stack, strip, depth, _grid(box), known)
+        if counted is None or counted > inside.size:
+            known = _polished(stack, strip, depth, _grid(box), known)
+        else:
+            known = _without_repeats(known, box, inside.size - counted)
         inside = _inside(known, box)
     if counted == inside.size:
         return _Found(inside, counted)
@@ -182,6 +187,14 @@ def _settled(stack: Stack, strip: Strip, depth: float, box: Box, known: Complexe
     parts = [_settled(stack, strip, depth, half, known, splits - 1) for half in _halves(box, known)]
     return _Found(np.concatenate([part.poles for part in parts]), sum(part.counted for part in parts),
                   tuple(region for part in parts for region in part.open_regions))
+
+
+def _without_repeats(poles: Complexes, box: Box, excess: int) -> Complexes:
+    """The poles without `excess` ones of a box that cannot be told from their neighbour: found from two guesses."""
+    inside = _inside(poles, box)
+    gap = np.abs(np.diff(inside))
+    nearest = np.argsort(gap)[:excess]
+    return np.asarray(poles[~np.isin(poles, inside[nearest[gap[nearest] < _UNTOLD]])])
 
 
 def _inside(poles: Complexes, box: Box) -> Complexes:
@@ -217,29 +230,8 @@ def _clear(values: Floats, target: float, room: float) -> float:
     return float(np.clip(target, low + margin, high - margin))
 
 
-def _seeds(stack: Stack, strip: Strip) -> Complexes:
-    """Where poles are to be expected: arg t steps by pi over each, the steeper the narrower it is."""
-    low, high = strip.around
-    samples = resolve(stack, np.array([stack.periods]), np.array([low]), np.array([high]), start=33)
-    energy, phase = samples.energy, samples.phase
-    slope = abs(np.diff(phase)) / np.diff(energy)
-    lowest = np.flatnonzero((slope[1:-1] <= slope[:-2]) & (slope[1:-1] < slope[2:])) + 1
-    ends = np.concatenate([[0], lowest, [energy.size - 1]])
-    advance = abs(np.diff(phase[ends]))
-    count = np.where(advance > math.pi / 4, np.maximum(1, np.rint(advance / math.pi)), 0).astype(int)
-    if (total := int(count.sum())) > MOST_RESONANCES:
-        raise ValueError(f"between holds some {total:,} resonances, more than the {MOST_RESONANCES:,} that are "
-                         "listed: narrow the range")
-    share = np.concatenate([np.zeros(0), *((np.arange(n) + 0.5) / n for n in count if n)])
-    segment = np.repeat(np.arange(count.size), count)
-    wanted = phase[ends][segment] + share * np.diff(phase[ends])[segment]
-    place = np.clip(np.searchsorted(phase, wanted) - 1, 0, slope.size - 1)
-    within = (wanted - phase[place]) / np.diff(phase)[place]
-    return np.asarray(energy[place] + within * np.diff(energy)[place] - 1j / np.maximum(slope[place], 1e-3))
-
-
 def _grid(box: Box) -> Complexes:
-    """Seeds spread over a box, for what the phase does not tell."""
+    """Guesses spread over a box, for what the phase does not tell."""
     top = max(0.0, -box.height)
     across, down = np.meshgrid(np.linspace(box.low, box.high, 9)[1:-1],
                                top + (box.depth - top) * np.array([0.05, 0.2, 0.5, 0.8]))
@@ -247,11 +239,11 @@ def _grid(box: Box) -> Complexes:
 
 
 def _polished(
-    stack: Stack, strip: Strip, depth: float, seeds: Complexes, known: Complexes | None = None
+    stack: Stack, strip: Strip, depth: float, start: Complexes, known: Complexes | None = None
 ) -> Complexes:
-    """The poles that seeds lead to, besides those already `known`; ascending in energy, `known` ones among them."""
+    """The poles that guesses lead to, besides those already `known`; ascending in energy, `known` ones among them."""
     poles = np.zeros(0, complex) if known is None else known
-    z, (low, high) = seeds.copy(), strip.around
+    z, (low, high) = start.copy(), strip.around
     settled, reach = np.zeros(z.size, dtype=bool), max(high - low, depth) / 4
     lost, before = settled.copy(), np.full(z.size, np.inf)
     for _ in range(_MOST_STEPS):
@@ -268,6 +260,7 @@ def _polished(
         z[active] -= move * np.minimum(1.0, reach / np.maximum(size, 1e-300))
         settled[active] = size < np.maximum(_SETTLED * nearest, 4e-16 * np.abs(z[active]))
         settled[active] |= (size < _STALLED * nearest) & (size > before[active] / 2)
+        settled[active] &= np.abs(newton) < np.maximum(0.1 * nearest, _UNTOLD)  # not merely kept apart by others
         before[active] = size
         lost[active] = (abs(z[active].real - (low + high) / 2) > 4 * reach) | (abs(z[active].imag) > 8 * reach)
         lost[active] |= settled[active] & (noise > _BLURRED)

@@ -130,7 +130,8 @@ class _Media:
     def flux(self, layer: Layer) -> Complexes:
         """k/m of a layer; at its band edge, where its two waves are one, that of 1e-12 eV above."""
         kinetic = self.energy - layer.band_edge
-        return np.asarray(np.sqrt(np.where(kinetic == 0, 1e-12, kinetic) / (HBAR2_2M0 * mass_at(layer, self.energy))))
+        kinetic = np.where(abs(kinetic) < 1e-12, 1e-12, kinetic)
+        return np.asarray(np.sqrt(kinetic / (HBAR2_2M0 * mass_at(layer, self.energy))))
 
     def swiftest(self, elements: Sequence[Element]) -> Complexes:
         """k/m of the layer where it is largest at each energy: far from 0, where its waves would be hard to tell."""
