@@ -75,6 +75,8 @@ class Resonances:
     `log10_width`: finite also where `width` is held at the smallest double. `peak_transmission`: T at E_r; where
     `from_pole`, too narrow for doubles, 4 G_L G_R / (G_L + G_R)^2 instead. `miniband`: index of the band of the
     infinite lattice it lies in (0: in a gap), `number` within it from 1. `bound`: states bound below both leads (eV).
+
+    Resonances nearer to each other than 1e-14 eV are all listed, but doubles cannot tell how they share their widths.
     """
 
     stack: Stack

@@ -17,7 +17,6 @@ from tests.transport.stacks import (
     DELTAS,
     END_WELLS,
     FREE,
-    KANE,
     LEAD,
     LOSSY,
     OPAQUE,
@@ -115,6 +114,15 @@ def test_coupled_narrow_wells_share_their_widths_as_in_fifty_digits() -> None:
         assert float(width) == pytest.approx(float(-2 * z.imag), rel=1e-5)
 
 
+@pytest.mark.parametrize(("thickness", "periods"), [(40.0, 2), (40.0, 3), (50.0, 3), (100.0, 3)])
+def test_wells_closer_in_energy_than_doubles_can_tell_are_all_listed(thickness: float, periods: int) -> None:
+    """Equal wells behind such barriers differ by less than 1e-14 eV; the count knows how many they are."""
+    stack = Stack(LEAD, (), (barrier(thickness), well(5.0)), periods, (barrier(thickness),), LEAD)
+    found = resonances(stack, (0.05, 0.12))
+    assert found.certificate.complete and found.energy.size == periods
+    assert np.ptp(found.energy) < 1e-14 and (found.log10_width < -25).all()
+
+
 def test_a_width_below_the_smallest_double_still_has_a_logarithm_and_a_finite_lifetime() -> None:
     walls = tuple(Layer(90.0, 0.3 + 0.05 * (i % 2), 0.092) for i in range(6))
     stack = Stack(LEAD, walls, (well(5.0),), 1, walls[::-1], LEAD)
@@ -142,8 +150,8 @@ def test_both_ways_to_a_width_agree_where_both_are_exact(thickness: float) -> No
     narrow = found.width.argmin()
     pole = np.array([found.energy[narrow] + 0j])  # no imaginary part: the norm is asked for
     logs = log_widths(stack, strip, pole)
-    assert np.exp(logs[0] + 0) == pytest.approx(found.width_left[narrow], rel=20 * found.width[narrow] + 1e-7)
-    assert np.exp(logs[1] + 0) == pytest.approx(found.width_right[narrow], rel=20 * found.width[narrow] + 1e-7)
+    assert np.exp(logs[0]) == pytest.approx(found.width_left[narrow], rel=20 * found.width[narrow] + 1e-7)
+    assert np.exp(logs[1]) == pytest.approx(found.width_right[narrow], rel=20 * found.width[narrow] + 1e-7)
 
 
 def test_below_a_closed_lead_a_resonance_leaks_to_the_open_one_only() -> None:
@@ -215,10 +223,6 @@ def test_counts_of_parts_add_up_to_the_count_of_the_whole() -> None:
     parts = [count(a, b) for a, b in itertools.pairwise(cuts)]
     assert None not in parts and sum(filter(None, parts)) == count(0.02, 0.32) == found.energy.size
     assert poles_within(PLAIN, Box(0.02, 0.32, 0.15, -1e-7, True, True)) == found.energy.size
-
-
-def test_an_edge_through_a_pole_gives_no_count() -> None:
-    assert poles_within(OPAQUE, Box(0.0818261196555757, 0.2, 0.05, 0.05, True, True)) in (None, 1, 2)
 
 
 def test_peak_heights_are_those_of_the_spectrum() -> None:
@@ -294,11 +298,6 @@ def test_every_random_stack_is_certified_and_each_pole_is_one_in_fifty_digits(st
             z, step = mp.mpc(float(energy), -float(width) / 2), mp.mpf("1e-25")
             f = outgoing(stack, z)
             assert abs(f * step / (outgoing(stack, z + step) - f)) < 1e-12
-
-
-def test_kane_masses_move_the_poles() -> None:
-    plain = Stack(LEAD, (), (barrier(3.0), well(5.0)), 8, (), LEAD)
-    assert resonances(KANE).energy[:7] != pytest.approx(resonances(plain).energy[:7], abs=1e-4)
 
 
 @pytest.mark.parametrize("between", [(0.2, 0.1), (0.1, 0.1), (float("nan"), 0.2), (0.0, float("inf"))])
