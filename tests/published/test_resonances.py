@@ -109,3 +109,14 @@ def test_resonances_of_a_well_below_the_edges_are_its_bound_states() -> None:
     even, odd = k * np.tan(k * width / 2) - kappa, -k / np.tan(k * width / 2) - kappa
     assert found.bound.size == int(np.sqrt(depth * unit) * width / np.pi) + 1
     assert np.minimum(abs(even), abs(odd)) == pytest.approx(0.0, abs=1e-9)
+
+
+def test_two_delta_wells_bind_an_even_and_an_odd_state() -> None:
+    """kappa = g/2 (1 +- exp(-kappa L)), g = strength m / C: textbook formula."""
+    strength, length = 0.3, 2.0
+    stack = Stack(PLAIN_MASS, (Delta(-strength),), (Layer(length / 2, 0.0, 1.0),), 2, (Delta(-strength),), PLAIN_MASS)
+    found = resonances(stack, (-3.0, 0.0))
+    g = strength / HBAR2_2M0
+    kappa = np.sqrt(-found.bound / HBAR2_2M0)
+    assert found.bound.size == 2
+    assert kappa == pytest.approx(g / 2 * (1 + np.array([1, -1]) * np.exp(-kappa * length)), rel=1e-12, abs=0)

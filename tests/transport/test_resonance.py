@@ -141,6 +141,24 @@ def test_partial_widths_tell_which_barrier_is_the_thinner() -> None:
     assert turned.width_left[0] == pytest.approx(found.width_right[0], rel=1e-9, abs=0)
 
 
+@pytest.mark.parametrize("turned", [False, True])
+def test_what_leaks_through_a_wall_much_the_thicker_keeps_its_digits(turned: bool) -> None:
+    """A width of about 1 meV of which 1e-12 goes one way: |psi|^2 at both faces in 50 digits, at the pole."""
+    stack = Stack(LEAD, (barrier(25.0),), (well(5.0),), 1, (barrier(2.5),), LEAD)
+    found = resonances(stack.reversed() if turned else stack, (0.05, 0.1))
+    less, more = (found.width_right, found.width_left) if turned else (found.width_left, found.width_right)
+    z = exact(stack, float(found.energy[0]), float(found.width[0]))
+    with mp.workdps(50):
+        psi, slope = mp.mpc(1), -1j * mp.sqrt(z / (mp.mpf(HBAR2_2M0) * mp.mpf(0.067)))
+        for layer in (barrier(25.0), well(5.0), barrier(2.5)):
+            k = mp.sqrt((z - layer.band_edge) * layer.mass / mp.mpf(HBAR2_2M0))
+            turn, m = k * layer.thickness, mp.mpf(layer.mass)
+            psi, slope = (mp.cos(turn) * psi + m * mp.sin(turn) / k * slope,
+                          -k / m * mp.sin(turn) * psi + mp.cos(turn) * slope)
+        ratio = float(1 / abs(psi) ** 2)
+    assert less[0] / more[0] == pytest.approx(ratio, rel=1e-8, abs=0) and ratio < 1e-10
+
+
 @pytest.mark.parametrize("thickness", [4.0, 8.0, 14.0])
 def test_both_ways_to_a_width_agree_where_both_are_exact(thickness: float) -> None:
     """Flux over norm at the real energy is off by the order of the width alone (physics of narrow resonances)."""
