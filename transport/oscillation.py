@@ -19,7 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from transport.cell import Powers
-from transport.chain import Chain
+from transport.chain import Chain, argument
 from transport.constants import HBAR2_2M0
 from transport.propagation import element_transfer, mass_at
 from transport.structure import Delta, Element
@@ -38,7 +38,7 @@ class PhasePoint:
     @property
     def upward(self) -> Any:
         """Whether psi is positive just to the right of this point."""
-        return np.where(np.asarray(self.psi) == 0, self.slope, self.psi) > 0
+        return (np.asarray(self.psi) > 0) | ((np.asarray(self.psi) == 0) & (np.asarray(self.slope) > 0))
 
 
 WALL = PhasePoint(0, 0.0, 1.0)
@@ -66,11 +66,9 @@ def _through_one(element: Element, energy: Floats, start: PhasePoint) -> PhasePo
     end = PhasePoint(start.zeros, psi / size, slope / size)
     mass = mass_at(element, energy)
     wave = np.sqrt(np.maximum((energy - element.band_edge) * mass / HBAR2_2M0, 0.0))
-    upward = start.upward
-    sign = np.where(upward, 1.0, -1.0)
-    begun = np.arctan2(sign * start.psi * wave, sign * mass * start.slope)
+    begun = np.arctan2(start.psi * wave, mass * start.slope) % np.pi
     turns = np.where(wave > 0, (begun + wave * element.thickness) / np.pi, 0.5)
-    return PhasePoint(start.zeros + _of_parity(turns, upward != end.upward), end.psi, end.slope)
+    return PhasePoint(start.zeros + _of_parity(turns, start.upward != end.upward), end.psi, end.slope)
 
 
 def _of_parity(turns: Any, odd: Any) -> Any:
@@ -123,14 +121,13 @@ def rotation(chain: Chain) -> Rotation:
     """Lifted Bloch phase of the chain's cell (real energies)."""
     cell = chain.cell
     passing = cell.sine_squared > 0
-    upward = PhasePoint(0, cell.swing.b, cell.half_trace - cell.swing.a).upward
+    upward = PhasePoint(0, cell.matrix.b, cell.matrix.d).upward
     counted = dirichlet_count(chain.stack.cell, chain.energy, upward)
-    behind = upward != (cell.half_trace > 0)  # in a gap: the first cell turns psi = 0 back, and is one zero short
+    facing = np.where(upward, cell.half_trace, -cell.half_trace)  # cos of the Bloch phase beyond the half turns counted
+    behind = np.signbit(facing)  # in a gap: the first cell turns psi = 0 back, and is one zero short
     turns, offset = (counted + behind).astype(float), 0.5 - behind
     inside = np.flatnonzero(passing)
-    sine = np.copysign(np.sqrt(cell.sine_squared[inside]), upward[inside] - 0.5)
-    phase = np.arctan2(sine, cell.half_trace[inside]) / np.pi
-    turns[inside] = phase + 2 * np.rint((counted[inside] + 0.5 - phase) / 2)
+    turns[inside] = counted[inside] + argument(facing[inside], np.sqrt(cell.sine_squared[inside])) / np.pi
     offset[inside] = 0.0
     return Rotation(passing, turns, offset)
 
