@@ -32,7 +32,7 @@ from transport.structure import Lead, Stack
 _SIXTEEN = np.array(16.0)
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Amplitude:
     """(even + i odd) exp(log_scale): real parts for a lossless stack, complex ones with dephasing.
 
@@ -56,7 +56,7 @@ class Amplitude:
             return np.angle(self.value)
         return argument(self.even, self.odd)
 
-    @property
+    @cached_property
     def squared(self) -> Any:
         """|even + i odd|^2, without the scales."""
         if np.iscomplexobj(self.even) or np.iscomplexobj(self.odd):
