@@ -77,8 +77,12 @@ class Cell:
 
     @cached_property
     def size(self) -> tuple[Array, float]:
-        """|h| at each energy, and its largest value."""
-        size = abs(self.half_trace)
+        """cosh of the decay per cell (in a gap |h|; in a band 1, or |h| if real) at each energy, and its largest value.
+
+        Complex h with foci +-1 lies on the ellipse |h + 1| + |h - 1| = 2 cosh(Im phi): absorption may outgrow |h|.
+        """
+        half = self.half_trace
+        size = (abs(half + 1) + abs(half - 1)) / 2 if half.dtype.kind == "c" else abs(half)
         return size, float(size.max()) if size.size else 0.0
 
     def powers(self, periods: Any) -> Powers:

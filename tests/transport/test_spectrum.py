@@ -33,10 +33,11 @@ def test_a_peak_of_a_hundred_millionth_eV_reaches_its_height() -> None:
 @pytest.mark.parametrize("stack", [
     Stack(LEAD, (), (Layer(9000.0, 0.1, 0.067),), 1, (), LEAD, dephasing=0.02),
     Stack(LEAD, (), (Layer(300.0, 0.1, 0.067), well(200.0)), 12, (Layer(300.0, 0.2, 0.067),), LEAD, dephasing=0.3),
-], ids=["one thick layer", "many layers"])
-def test_losses_in_thick_layers_do_not_overflow_above_the_barriers(stack: Stack) -> None:
+    Stack(LEAD, (), (barrier(3.0), well(5.0)), 1000, (), LEAD, dephasing=0.1),
+], ids=["one thick layer", "many layers", "many periods"])
+def test_losses_in_thick_layers_and_many_periods_do_not_overflow_in_bands(stack: Stack) -> None:
     """Against plane waves in 50 digits."""
-    energy = [0.05, 0.15, 0.9]
+    energy = [0.05, 0.15, 0.32, 0.9]
     found = spectrum(stack, energy)
     for place, at in enumerate(energy):
         expected = scattered(stack, at)
