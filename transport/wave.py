@@ -18,15 +18,17 @@ flux: Gasparian, Christen and Buettiker, Phys. Rev. A 54, 4022 (1996).
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any, Literal, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from transport.cell import Cell
 from transport.constants import HBAR, HBAR2_2M0
 from transport.oscillation import Floats
-from transport.propagation import IDENTITY, Array, Span, Transfer, element_transfer, mass_at, require_model
+from transport.propagation import IDENTITY, Array, Span, Transfer, element_transfer, mass_at, require_model, transfer
 from transport.structure import Delta, Element, Layer, Lead, Stack
 
 Complex = NDArray[np.complex128]
@@ -35,6 +37,7 @@ Side = Literal["left", "right"]
 MOST_VALUES, MOST_PLACES = 10_000_000, 100_000
 """Values (energies times places) that one call computes at most, and places (positions, or layers) at most."""
 
+_REACHED = 0.05  # difference, over the size of the wave, between the closed form and a step across one layer
 _NO_POLE = 1e-3  # kink, as an angle, at which two outgoing waves are no longer one
 
 
@@ -93,25 +96,27 @@ def pole_wave(
     """The decaying state of a resonance at complex energies (eV, shape (n,)): waves go out of the stack only.
 
     Carried from both ends and joined where it is largest, so that a long-lived state dies away on both sides. Its
-    probability within the stack is 1; `psi` is in nm^-1/2 and real where it is joined. Raises ValueError as `wave`
-    does, and where the two ends do not join: the energy is no pole.
+    probability within the stack is 1, each layer's taken from the end that gives the less of it, for rounding only
+    ever adds a wave that grows; `psi` is in nm^-1/2 and real where it is joined. Raises ValueError as `wave` does, and
+    where the two ends do not join: the energy is no pole.
     """
     energy = _finite(np.asarray(energies, dtype=complex))
     places = _places(stack, positions, points_per_nm, energy.size)
     right_going, left_going, join = _joined(_outgoing(stack, energy, "left"), _outgoing(stack, energy, "right"))
     count = right_going.kind.size
     psi = slope = np.zeros((places.position.size, energy.size), dtype=np.complex128)
-    norm = np.zeros(energy.size)
+    held = np.full((count, energy.size), np.inf)
     for march, last, towards in ((right_going, count - join, -1.0), (left_going, join, 1.0)):
         row, offset = places.seen_from(march)
-        with np.errstate(over="ignore", invalid="ignore"):  # beyond the join, where it is left out
-            held = march.probability() * abs(march.amplitude) ** 2
+        with np.errstate(over="ignore", invalid="ignore"):  # far beyond the join, where it is left out
+            seen = march.probability() * abs(march.amplitude) ** 2
             one, two = march.scaled(row, offset)
-        norm += np.where(np.arange(count)[:, None] < last, held, 0.0).sum(axis=0)
+        held = np.fmin(held, seen[::-1] if march.leftwards else seen)
         mine = row[:, None] < last
         psi = np.where(mine, one, psi)
         slope = np.where(mine, towards * two, slope)
-    psi, slope = (psi / np.sqrt(norm)).T, (slope / np.sqrt(norm)).T
+    norm = np.sqrt(held.sum(axis=0))
+    psi, slope = (psi / norm).T, (slope / norm).T
     return Wave(places.position, energy, psi, slope, 2 * HBAR2_2M0 / HBAR * (psi.conj() * slope).imag)
 
 
@@ -277,24 +282,72 @@ def _incident(stack: Stack, energy: Floats, side: Side) -> _March:
 
 
 def _outgoing(stack: Stack, energy: Array, side: Side) -> _March:
-    """The solution that goes out at the face away from `side`, carried towards `side`."""
-    elements, inside = _written_out(stack, energy.size), _inside(stack, energy)
-    far, ordered = (stack.right, elements[::-1]) if side == "left" else (stack.left, elements)
-    states, layers = [], [element for element in ordered if isinstance(element, Layer)]
-    psi, slope, log = np.ones(energy.size, complex), -1j * _flux_factor(far, energy), np.zeros(energy.size)
-    steps = {element: element_transfer(element, inside) for element in dict.fromkeys(ordered)}
-    for element in ordered:
-        if isinstance(element, Layer):
-            states.append((psi, slope, log))
-        step = steps[element]
-        psi, slope = step.a * psi + step.b * slope, step.c * psi + step.d * slope
-        size = abs(psi) + abs(slope)
-        psi, slope, log = psi / size, slope / size, log + step.log_scale + np.log(size)
-    psis, slopes, logs = (np.array(parts) for parts in zip(*states, (psi, slope, log), strict=True))
+    """The solution that goes out at the face away from `side`, carried towards `side`.
+
+    The cells are passed in closed form (`cell.py`), so that a chain of opaque cells costs no digits.
+    """
+    _require_size(energy.size, len(stack.entry) + len(stack.cell) * stack.periods + len(stack.exit))
+    inside = _inside(stack, energy)
+    if side == "left":
+        far, first, cell, last = stack.right, stack.exit[::-1], stack.cell[::-1], stack.entry[::-1]
+    else:
+        far, first, cell, last = stack.left, stack.entry, stack.cell, stack.exit
+    steps = {element: element_transfer(element, inside) for element in dict.fromkeys((*first, *cell, *last))}
+    one = np.ones((1, energy.size), complex)
+    before, start = _carried((one, -1j * _flux_factor(far, energy) * one, np.zeros(one.shape)), first, steps)
+    psis, slopes, logs = _at_cells(start, cell, inside, stack.periods + 1)
+    within, _ = _carried((psis[:-1], slopes[:-1], logs[:-1]), cell, steps)
+    after, end = _carried((psis[-1:], slopes[-1:], logs[-1:]), last, steps)
+    psi, slope, log = (np.concatenate([*(_by_cell(part[k], energy.size) for part in (before, within, after)), end[k]])
+                       for k in range(3))
+    layers = [e for e in (*first, *cell * stack.periods, *last) if isinstance(e, Layer)]
     kinds = {layer: kind for kind, layer in enumerate(dict.fromkeys(layers))}
     kind = np.array([kinds[layer] for layer in layers])
     numbers = np.array([(x.thickness, x.band_edge, x.mass, x.mass * x.nonparabolicity) for x in layers]).T
-    return _March(tuple(kinds), kind, numbers, inside, psis, slopes, logs, log, 1.0, side == "left")
+    return _March(tuple(kinds), kind, numbers, inside, psi, slope, log, log[-1], 1.0, side == "left")
+
+
+State = tuple[Complex, Complex, Floats]
+"""psi and slope over exp(log), and log: shape (cells, n)."""
+
+
+def _carried(state: State, elements: Sequence[Element], steps: Mapping[Element, Transfer]) -> tuple[list[Any], State]:
+    """States at the far faces of a list's layers (three lists, a layer each), and the one behind it."""
+    faces: list[Any] = [[], [], []]
+    for element in elements:
+        if isinstance(element, Layer):
+            for face, part in zip(faces, state, strict=True):
+                face.append(part)
+        psi, slope, log = state
+        step = steps[element]
+        state = _resized(step.a * psi + step.b * slope, step.c * psi + step.d * slope, log + step.log_scale)
+    return faces, state
+
+
+def _resized(psi: Complex, slope: Complex, log: Floats) -> State:
+    size = abs(psi) + abs(slope)
+    return psi / size, slope / size, log + np.log(size)
+
+
+def _at_cells(state: State, elements: tuple[Element, ...], inside: Array, count: int) -> State:
+    """The states in front of `count` cells, from the one in front of the first: M^j = T_j + U_(j-1) (M - h)."""
+    cell = Cell.of(transfer(elements, inside))
+    swing, powers = cell.swing, cell.powers(np.arange(1, count)[:, None])
+    psi, slope, log = state
+    across, along = swing.a * psi + swing.b * slope, swing.c * psi + swing.d * slope
+    growth = np.zeros(powers.first.shape)
+    if powers.deep is not None:
+        growth[powers.deep] = powers.growth
+    later = _resized(psi * powers.first + across * powers.second, slope * powers.first + along * powers.second,
+                     log + growth - math.log(2))
+    return tuple(np.concatenate(pair) for pair in zip(state, later, strict=True))  # type: ignore[return-value]
+
+
+def _by_cell(faces: list[Any], energies: int) -> Any:
+    """Faces of every layer, cell after cell: from a list over layers of (cells, n) to (cells x layers, n)."""
+    if not faces:
+        return np.zeros((0, energies))
+    return np.stack(faces, axis=1).reshape(len(faces) * faces[0].shape[0], energies)
 
 
 def _inside(stack: Stack, energy: Array) -> Array:
@@ -320,12 +373,15 @@ def _joined(right_going: _March, left_going: _March) -> tuple[_March, _March, ND
     """Both outgoing solutions brought to one scale, and the layer (from the left) at whose left face they join.
 
     That is where their product is largest and so the state is: short of it each grows away from its end and is exact,
-    beyond it rounding grows instead.
+    beyond it rounding grows instead. Not at a face that a very opaque layer keeps from being reached layer by layer.
     """
     rows = np.arange(right_going.kind.size)
     from_right = [part[::-1] for part in right_going.at(rows, right_going.numbers[0])]
     from_left = [left_going.psi[:-1], left_going.slope[:-1], left_going.log[:-1]]
-    join = np.argmax(sum(np.log(abs(psi) + abs(slope)) + log for psi, slope, log in (from_right, from_left)), axis=0)
+    stored = right_going.psi[:0:-1] * np.exp(np.minimum(right_going.log[:0:-1] - from_right[2], 50.0))
+    size = abs(from_right[0]) + abs(from_right[1])
+    weight = sum(np.log(abs(psi) + abs(slope)) + log for psi, slope, log in (from_right, from_left))
+    join = np.argmax(np.where(abs(stored - from_right[0]) < _REACHED * size, weight, -np.inf), axis=0)
     at = join, np.arange(join.size)
     psi, slope, log = from_right[0][at], -from_right[1][at], from_right[2][at]
     other, bend, reference = (part[at] for part in from_left)
