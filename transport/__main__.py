@@ -15,11 +15,15 @@ from transport import report
 from transport.allowance import verdict_range
 from transport.lattice import default_range, lattice_bands, lowest_energy
 from transport.matching import matched_ends
+from transport.measured import measured_peaks, read_peaks
 from transport.nearest import MOST_MONOLAYERS, nearest_stacks
 from transport.parameters import PARAMETERS
+from transport.peaks import FIGURES, compare_peaks, fit_peaks
 from transport.periods import no_progress, period_verdict
-from transport.scenario import Scenario, load_scenario, save_scenario
+from transport.resonance import resonances
+from transport.scenario import Scenario, load_scenario, read_text, save_scenario
 from transport.spectrum import Spectrum, spectrum
+from transport.structure import Stack
 
 Handler = Callable[[Scenario, argparse.Namespace], str]
 
@@ -29,7 +33,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
     options = _parser().parse_args(arguments)
     handler: Handler = options.handler
     try:
-        print(handler(load_scenario(options.scenario), options))
+        answer = handler(load_scenario(options.scenario), options)
+        print(_printable(answer))
         sys.stdout.flush()
     except ValueError as error:
         print(error, file=sys.stderr)
@@ -37,10 +42,20 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 1
+    except OSError as error:
+        print(f"the answer cannot be written ({error.strerror}); choose another place for it", file=sys.stderr)
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 1
     except KeyboardInterrupt:
         print("stopped", file=sys.stderr)
         return 1
     return 0
+
+
+def _printable(text: str) -> str:
+    """The text as the terminal's encoding has it; what that lacks is written as an escape."""
+    encoding = sys.stdout.encoding or "utf-8"
+    return text.encode(encoding, "backslashreplace").decode(encoding)
 
 
 class _Parser(argparse.ArgumentParser):
@@ -58,7 +73,8 @@ def _parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(title="commands", required=True, metavar="COMMAND")
     _command(commands, "check", _check, "say whether a scenario is sound, with its warnings")
     command = _command(commands, "spectrum", _spectrum, "transmission and reflection over energy")
-    command.add_argument("--energies-meV", type=_numbers, metavar="LIST", help="energies, such as 10,20.5")
+    command.add_argument("--energies-meV", type=_numbers, metavar="LIST",
+                         help="energies, such as 10,20.5 (--energies-meV=-50,10 where the first is negative)")
     command.add_argument("--from-meV", type=_number, metavar="A", help="start of the range (default: lowest lead edge)")
     command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
     command.add_argument("--points", type=_whole("points"), metavar="N",
@@ -80,6 +96,15 @@ def _parser() -> argparse.ArgumentParser:
     command.add_argument("--monolayers", type=_whole("remedy_monolayers"), metavar="N",
                          help="by how many monolayers a layer of the cell may change (default: 3)")
     command.add_argument("--save", metavar="FILE", help="write the nearest stack that meets the target to a new file")
+    command = _command(commands, "resonances", _resonances, "every resonance, certified")
+    command.add_argument("--from-meV", type=_number, metavar="A", help="start of the range (default: lowest lead edge)")
+    command.add_argument("--to-meV", type=_number, metavar="B", help="end (default: a tenth above the highest barrier)")
+    command.add_argument("--periods", type=_whole("periods"), metavar="N", help="periods (default: the file's)")
+    command = _command(commands, "peaks", _peaks, "measured peaks beside computed resonances, and a fit")
+    command.add_argument("--measured", metavar="FILE", help="CSV of peaks: energy_meV or bias_V, width_meV, "
+                         "uncertainty_meV (default: the scenario's [measured])")
+    command.add_argument("--fit", metavar="LIST", type=lambda text: text.split(","),
+                         help=f"figures to fit, out of {', '.join(FIGURES)}")
     _command(commands, "layers", _layers, "the grower's sheet")
     return parser
 
@@ -138,14 +163,20 @@ def _asked_spectrum(scenario: Scenario, options: argparse.Namespace) -> Spectrum
         if (options.from_meV, options.to_meV, options.points) != (None, None, None):
             raise ValueError("--energies-meV: give either a list, or a range with --from-meV, --to-meV, --points")
         return spectrum(stack, np.array(options.energies_meV) / 1e3)
+    low, high = _range(stack, options)
+    if options.points is not None:
+        return spectrum(stack, np.linspace(low, high, options.points))
+    return spectrum(stack, between=(low, high))
+
+
+def _range(stack: Stack, options: argparse.Namespace) -> tuple[float, float]:
+    """The range asked for (eV); an end left out is the stack's own."""
     low, high = default_range(stack)
     low = low if options.from_meV is None else options.from_meV / 1e3
     high = high if options.to_meV is None else options.to_meV / 1e3
     if not low < high:
         raise ValueError(f"--from-meV, --to-meV: {low * 1e3:g} to {high * 1e3:g} is no range, give the lower end first")
-    if options.points is not None:
-        return spectrum(stack, np.linspace(low, high, options.points))
-    return spectrum(stack, between=(low, high))
+    return low, high
 
 
 def _bands(scenario: Scenario, options: argparse.Namespace) -> str:
@@ -178,6 +209,22 @@ def _remedy(scenario: Scenario, options: argparse.Namespace) -> str:
     found = nearest_stacks(scenario, options.monolayers or MOST_MONOLAYERS, _progress())
     _save([proposal.scenario for proposal in found.proposals], options.save)
     return report.to_json(report.remedy_record(found)) if options.json else report.remedy_text(found)
+
+
+def _resonances(scenario: Scenario, options: argparse.Namespace) -> str:
+    stack = scenario.stack if options.periods is None else scenario.stack.with_periods(options.periods)
+    found = resonances(stack, _range(stack, options))
+    return report.to_json(report.resonances_record(found)) if options.json else report.resonances_text(found)
+
+
+def _peaks(scenario: Scenario, options: argparse.Namespace) -> str:
+    record = scenario.document.measured
+    if options.measured is not None:
+        record = read_peaks(read_text(options.measured), record.lever_arm if record else None)
+    measured = measured_peaks(record) if record else None
+    compared = compare_peaks(scenario, measured)
+    fit = fit_peaks(scenario, options.fit, measured, _progress()) if options.fit else None
+    return report.to_json(report.peaks_record(compared, fit)) if options.json else report.peaks_text(compared, fit)
 
 
 def _save(proposals: Sequence[Scenario], path: str | None) -> None:

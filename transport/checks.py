@@ -11,6 +11,7 @@ from transport.document import (
     GrowthRecord,
     LayerRecord,
     LeadRecord,
+    MeasuredRecord,
     Record,
     StackRecord,
     TargetRecord,
@@ -50,6 +51,8 @@ def check_document(document: Document) -> None:
         _check_target(document.target)
     if document.growth is not None:
         _check_growth(document.growth)
+    if document.measured is not None:
+        check_measured(document.measured)
 
 
 def written_out(key: str, records: tuple[LayerRecord, ...]) -> Iterator[tuple[str, LayerRecord]]:
@@ -190,6 +193,19 @@ def _check_growth(growth: GrowthRecord) -> None:
     refuse_unless(any((growth.offset_percent, growth.mass_percent, growth.monolayer_error)), "growth",
                   "leaves no range, all its figures are 0; give offset_percent, mass_percent or monolayer_error, "
                   "or take it out")
+
+
+def check_measured(measured: MeasuredRecord) -> None:
+    """Raise ScenarioError unless every measured peak has a place, and its values are within their limits."""
+    _check_numbers("measured", measured)
+    _check_count("measured.peaks", "file_peaks", len(measured.peaks), "lists", "peaks")
+    for index, peak in enumerate(measured.peaks):
+        key = f"measured.peaks[{index}]"
+        _check_numbers(key, peak)
+        refuse_unless(peak.energy_meV is not None or peak.bias_V is not None, key,
+                      "has no place; give energy_meV, or bias_V")
+        refuse_unless(peak.energy_meV is None or peak.bias_V is None, f"{key}.bias_V",
+                      "stands beside energy_meV; keep one of them")
 
 
 def _check_target(target: TargetRecord) -> None:

@@ -135,6 +135,22 @@ class GrowthRecord(Record, frozen=True):
     monolayer_error: int = int(default("monolayer_error"))
 
 
+class PeakRecord(Record, frozen=True):
+    """A measured peak: where it was seen, by energy or by bias, and how sure that is."""
+
+    energy_meV: float | None = None
+    bias_V: float | None = None
+    width_meV: float | None = None
+    uncertainty_meV: float | None = None
+
+
+class MeasuredRecord(Record, frozen=True):
+    """Peaks of an experiment; `lever_arm`: the share of a bias dropped before the resonance."""
+
+    peaks: tuple[PeakRecord, ...] = ()
+    lever_arm: float = default("lever_arm")
+
+
 class UserMaterial(Record, frozen=True):
     """A material the scenario defines as [materials.NAME]."""
 
@@ -157,6 +173,7 @@ class Document(Record, frozen=True, kw_only=True):
     stack: StackRecord
     target: TargetRecord | None = None
     growth: GrowthRecord | None = None
+    measured: MeasuredRecord | None = None
     materials: tuple[UserMaterial, ...] = ()
 
 
@@ -222,7 +239,8 @@ _TABLES: Mapping[str, tuple[type[Record], str]] = {
     "entry": (LayerRecord, "a layer"), "cell": (LayerRecord, "a layer"), "exit": (LayerRecord, "a layer"),
     "layers": (LayerRecord, "a layer"), "ends": (EndsRecord, "[stack.ends]"),
     "left_cells": (EndCellRecord, "an end cell"), "right_cells": (EndCellRecord, "an end cell"),
-    "growth": (GrowthRecord, "[growth]"), "target": (TargetRecord, "[target]"),
+    "growth": (GrowthRecord, "[growth]"), "measured": (MeasuredRecord, "[measured]"), "peaks": (PeakRecord, "a peak"),
+    "target": (TargetRecord, "[target]"),
     "windows": (WindowRecord, "a window"), "materials": (UserMaterial, "a material"),
 }
 _TYPES = {"float": "a number", "int": "a whole number", "str": "text in quotes", "bool": "true or false",

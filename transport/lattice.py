@@ -16,7 +16,7 @@ from numpy.typing import ArrayLike, NDArray
 from transport.chain import Chain
 from transport.constants import HBAR, HBAR2_2M0
 from transport.oscillation import Floats, first_reaching, rotation
-from transport.propagation import transfer
+from transport.propagation import model_end, transfer
 from transport.structure import Layer, Stack
 
 MOST_BANDS = 20_000
@@ -185,8 +185,10 @@ def _edges(stack: Stack, indices: NDArray[np.int64], low: float, high: float) ->
     """Bottom and top of each band: where the label first reaches 2j - 1, and 2j."""
     reach = high - low
     start, end = low, high
+    floor = model_end(stack.cell)
     while _label(stack, np.array([start]))[0] >= 2 * indices[0] - 1:
-        start -= reach
+        # Towards the end of the one-band model, if there is one, but never beyond it.
+        start = max(start - reach, floor + (start - floor) / 4) if math.isfinite(floor) else start - reach
         reach *= 2
     reach = high - low
     while _label(stack, np.array([end]))[0] < 2 * indices[-1]:

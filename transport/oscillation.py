@@ -103,7 +103,7 @@ def dirichlet_count(elements: Sequence[Element], energy: Floats, upward: NDArray
         order, result = np.argsort(energy), np.empty(energy.size, dtype=np.int64)
         result[order] = dirichlet_count(elements, energy[order], upward[order])
         return result
-    first, last = (int(count) for count in through(elements, energy[[0, -1]]).zeros)
+    first, last = (int(count) for count in np.broadcast_to(through(elements, energy[[0, -1]]).zeros, 2))
     turned = upward[1:] != upward[:-1]
     if np.count_nonzero(turned) != last - first:
         return np.asarray(through(elements, energy).zeros, dtype=np.int64)

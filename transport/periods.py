@@ -141,7 +141,7 @@ def histories(
             question.stack, window, counts, question.resolution, _part(progress, place * share, share))
         margin = 10 * (values.log10 - math.log10(window.transmission))
         margin = np.where(abs(margin) < _ROUNDING, 0.0, margin)
-        margin = -margin if window.kind == "block" else margin
+        margin = 0.0 - margin if window.kind == "block" else margin
         found.append(WindowHistory(window, values.log10, values.energy, margin))
     return tuple(found)
 

@@ -137,6 +137,12 @@ def mass_at(medium: Layer | Lead, energy: Array) -> Any:
     return medium.mass * (1 + medium.nonparabolicity * (energy - medium.band_edge))
 
 
+def model_end(elements: Sequence[Element]) -> float:
+    """The energy (eV) at and below which some layer's mass would not be above 0; -inf where masses are constant."""
+    return max((e.band_edge - 1 / e.nonparabolicity for e in elements if isinstance(e, Layer) and e.nonparabolicity),
+               default=-math.inf)
+
+
 def require_model(elements: Sequence[Element], span: Span) -> None:
     """Raise ValueError if some layer's mass would not be above 0: there the model ends, and bands found were false."""
     ends = {e.band_edge - 1 / e.nonparabolicity: e for e in elements if isinstance(e, Layer) and e.nonparabolicity}

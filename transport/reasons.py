@@ -47,7 +47,7 @@ def _cause(stack: Stack, record: WindowHistory, resolution: float) -> str:
     window = record.window
     if window.kind == "block":
         return _block_cause(stack, record)
-    if window.bottom < threshold(stack) and window.measure == "minimum":
+    if window.bottom < threshold(stack) and window.measure == "minimum" and not resolution:
         return (
             f"{_name(window)} reaches below the lead edge at {_meV(threshold(stack))}, where nothing passes: "
             f"begin the window above it"

@@ -16,7 +16,9 @@ from transport.lattice import Bands
 from transport.matching import MatchedEnds
 from transport.measuring import measured_transmission
 from transport.nearest import NearestStacks, Remedy
+from transport.peaks import FIGURES, PeakComparison, PeakFit
 from transport.periods import Verdict
+from transport.resonance import Resonances
 from transport.scenario import Scenario, format_scenario
 from transport.spectrum import Spectrum
 
@@ -142,6 +144,53 @@ def _plain(ends: EndsRecord) -> Record:
     return {key: value for key, value in msgspec.to_builtins(ends).items() if value is not None}
 
 
+def resonances_record(found: Resonances) -> Record:
+    """The ledger: every resonance, the bound states, and the certificate."""
+    certificate = found.certificate
+    return {
+        "resonances": [
+            {"index": int(found.index[i]), "energy_meV": found.energy[i] * 1e3, "width_meV": found.width[i] * 1e3,
+             "lifetime_ps": found.lifetime[i] * 1e12, "peak_transmission": found.peak_transmission[i],
+             "width_left_meV": found.width_left[i] * 1e3, "width_right_meV": found.width_right[i] * 1e3,
+             "miniband": int(found.miniband[i]), "number": int(found.number[i]), "from_pole": bool(found.from_pole[i])}
+            for i in range(found.energy.size)
+        ],
+        "bound_meV": found.bound * 1e3,
+        "certificate": {"complete": certificate.complete, "counted": certificate.counted, "found": certificate.found,
+                        "sentence": certificate.sentence},
+    }
+
+
+def peaks_record(compared: PeakComparison, fit: PeakFit | None) -> Record:
+    """Measured peaks beside their resonances, and what a fit of some figures makes of them."""
+    measured, found = compared.measured, compared.resonances
+    rows = []
+    for place, partner in enumerate(compared.pairs):
+        paired = partner >= 0
+        rows.append({
+            "measured_meV": measured.energy[place] * 1e3, "measured_width_meV": measured.width[place] * 1e3,
+            "uncertainty_meV": measured.uncertainty[place] * 1e3,
+            "resonance": int(found.index[partner]) if paired else None,
+            "energy_meV": found.energy[partner] * 1e3 if paired else None,
+            "width_meV": found.width[partner] * 1e3 if paired else None,
+            "deviation_meV": compared.deviation[place] * 1e3,
+        })
+    record: Record = {"peaks": rows, "rms_meV": compared.rms * 1e3,
+                      "certificate": {"complete": found.certificate.complete, "counted": found.certificate.counted}}
+    return record if fit is None else record | {"fit": fit_record(fit)}
+
+
+def fit_record(fit: PeakFit) -> Record:
+    """The fitted figures with standard errors, in the units of their names."""
+    figures = {}
+    for place, name in enumerate(fit.figures):
+        factor, unit = (1.0, "nm") if FIGURES[name] == "nm" else (1e3, "meV")
+        figures[f"{name}_{unit}"] = {"change": fit.values[place] * factor, "error": fit.errors[place] * factor}
+    return {"figures": figures, "rms_before_meV": fit.before.rms * 1e3, "rms_after_meV": fit.after.rms * 1e3,
+            "correlation": fit.correlation, "warnings": list(fit.warnings),
+            "scenario": None if fit.scenario is None else format_scenario(fit.scenario)}
+
+
 def layers_record(scenario: Scenario) -> Record:
     """The grower's sheet, from the left lead's side."""
     return {
@@ -225,6 +274,30 @@ def remedy_text(found: NearestStacks) -> str:
     lines = table(("periods", "margin_dB", "length_nm"), rows).split("\n") if rows else []
     words = ["change", *(p.words for p in found.proposals)]
     return "\n".join([found.sentence, *(f"{line}  {what}" for line, what in zip(lines, words, strict=False))])
+
+
+def resonances_text(found: Resonances) -> str:
+    """The ledger as a table, with its certificate in words."""
+    rows = [(int(found.index[i]), found.energy[i] * 1e3, found.width[i] * 1e3, found.lifetime[i] * 1e12,
+             found.peak_transmission[i], f"{found.miniband[i]}.{found.number[i]}" if found.miniband[i] else "gap")
+            for i in range(found.energy.size)]
+    lines = [table(("resonance", "energy_meV", "width_meV", "lifetime_ps", "peak_transmission", "miniband"), rows)]
+    if found.bound.size:
+        lines.append("bound below both leads (meV): " + ", ".join(f"{e * 1e3:.6g}" for e in found.bound))
+    return "\n".join([*lines, found.certificate.sentence])
+
+
+def peaks_text(compared: PeakComparison, fit: PeakFit | None) -> str:
+    """Measured peaks beside their resonances as a table, and the fit in words."""
+    record = peaks_record(compared, fit)
+    columns = ("measured_meV", "resonance", "energy_meV", "deviation_meV", "measured_width_meV", "width_meV")
+    lines = [table(columns, [[row[name] for name in columns] for row in record["peaks"]]),
+             f"root mean square deviation {record['rms_meV']:.4g} meV"]
+    if fit is not None:
+        lines += [f"{name.rpartition('_')[0]} {value['change']:+.4g} \N{PLUS-MINUS SIGN} {value['error']:.2g} "
+                  f"{name.rpartition('_')[2]}" for name, value in record["fit"]["figures"].items()]
+        lines += [f"root mean square deviation after the fit {record['fit']['rms_after_meV']:.4g} meV", *fit.warnings]
+    return "\n".join(lines)
 
 
 def layers_text(scenario: Scenario) -> str:

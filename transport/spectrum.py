@@ -170,7 +170,7 @@ def _both(stack: Stack, energy: Floats) -> tuple[Floats, Floats]:
 
 def _enveloped(stack: Stack, low: float, begin: float, high: float, peaks: int) -> Spectrum:
     """T at evenly spaced energies with the envelope's two sides, for more peaks than can be drawn."""
-    energy = np.concatenate([[low], np.linspace(begin, high, 20_001)])
+    energy = np.unique(np.concatenate([[low], np.linspace(begin, high, 20_001)]))
     note = (
         f"{peaks:,} peaks lie in this range, more than the {MOST_PEAKS:,} that are resolved one by one: "
         "the envelope's two sides are given, between which T swings"

@@ -36,7 +36,7 @@ def window_values(
     stack: Stack, window: Window, counts: NDArray[np.int64], resolution: float, progress: Callable[[float], None]
 ) -> Values:
     """The window's minimum, maximum or mean of T (or of what a beam of `resolution`, eV FWHM, would measure)."""
-    if window.top <= threshold(stack):
+    if window.top <= threshold(stack) and not resolution:
         nothing = np.full(counts.size, -np.inf)
         return Values(nothing, np.full(counts.size, np.nan))
     pieces = []

@@ -192,3 +192,37 @@ def test_wrong_options_of_the_remedies_are_one_sentence(
     with contextlib.suppress(SystemExit):
         assert main([command, passing, *rest]) == 2
     assert capsys.readouterr().err.startswith(sentence)
+
+
+def test_resonances_come_with_their_certificate(scenario: str, capsys: pytest.CaptureFixture[str]) -> None:
+    found = answer(capsys, "resonances", scenario, "--to-meV", "150", "--periods", "6")
+    assert {"energy_meV", "width_meV", "lifetime_ps", "peak_transmission"} <= set(found["resonances"][0])
+    assert found["certificate"]["complete"] is True
+    assert found["certificate"]["counted"] == len(found["resonances"]) == 6
+
+
+def test_measured_peaks_are_paired_and_fitted(
+    scenario: str, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    table = tmp_path / "peaks.csv"
+    table.write_text("energy_meV,uncertainty_meV\n74.2,0.2\n79.0,0.2\n")
+    found = answer(capsys, "peaks", scenario, "--measured", str(table), "--fit", "shift")
+    assert [row["resonance"] for row in found["peaks"]] == sorted(row["resonance"] for row in found["peaks"])
+    assert found["fit"]["rms_after_meV"] <= found["rms_meV"]
+    assert set(found["fit"]["figures"]) == {"shift_meV"}
+    assert main(["peaks", scenario]) == 2
+    assert capsys.readouterr().err.startswith("measured.peaks: is missing or empty")
+
+
+def test_an_answer_that_cannot_be_written_is_one_sentence() -> None:
+    command = [sys.executable, "-m", "transport", "bands", "scenarios/heron-gate.toml"]
+    with open("/dev/full", "w") as full:
+        run = subprocess.run(command, stdout=full, stderr=subprocess.PIPE, text=True, check=False)
+    assert run.returncode == 1
+    assert run.stderr.startswith("the answer cannot be written") and run.stderr.count("\n") == 1
+
+
+def test_a_terminal_without_the_letters_still_gets_an_answer() -> None:
+    command = [sys.executable, "-m", "transport", "periods", "scenarios/heron-gate.toml"]
+    run = subprocess.run(command, capture_output=True, text=True, env={"PYTHONIOENCODING": "ascii"}, check=True)
+    assert run.stdout.startswith("Fewest periods: 10. Limiting: block 95\\u2013170 meV")

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from tests.transport.stacks import ALL, CLOSED_OFF, FREE, KANE, LEAD, LOSSY, OPAQUE, PLAIN, barrier, well
-from transport import Delta, Layer, Stack, bloch, certify, lattice_bands
+from transport import Delta, Layer, Lead, Stack, bloch, certify, lattice_bands
 from transport.constants import HBAR, HBAR2_2M0
 
 UNRESOLVABLE = Stack(LEAD, (), (barrier(300.0), well(5.0)), 3, (), LEAD)
@@ -119,3 +119,12 @@ def test_end_layers_do_not_end_the_lattices_model() -> None:
     assert lattice_bands(ended, between=(0.0, 1.5)).bands == lattice_bands(
         Stack(LEAD, (), deep, 1, (), LEAD), between=(0.0, 1.5)
     ).bands
+
+
+def test_a_band_astride_a_range_is_found_above_the_end_of_the_model() -> None:
+    """The range begins inside a band, and not far below it the masses would vanish."""
+    stack = Stack(Lead(0.0, 0.067), (), (Layer(2.0, 0.3, 0.09, 3.0), Layer(6.0, 0.0, 0.067, 0.64)), 5, (),
+                  Lead(0.0, 0.067))
+    whole = lattice_bands(stack, (0.0, 0.25)).bands
+    found = lattice_bands(stack, (0.06, 0.2)).bands
+    assert [(b.bottom, b.top) for b in found] == [pytest.approx((b.bottom, b.top), abs=1e-12) for b in whole[:2]]

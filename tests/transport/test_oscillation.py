@@ -5,7 +5,7 @@ import pytest
 from scipy.linalg import eigvalsh_tridiagonal
 
 from tests.transport.stacks import ALL, CLOSED_OFF, LEAD, PLAIN, barrier, well
-from transport import Layer, Stack
+from transport import Delta, Layer, Stack
 from transport.chain import Chain
 from transport.constants import HBAR2_2M0
 from transport.oscillation import first_reaching, rotation, through, zeros
@@ -72,3 +72,10 @@ def test_first_reaching_finds_every_step_of_a_staircase_to_the_last_bit() -> Non
 def test_an_empty_list_of_layers_leaves_the_phase_point_where_it_was() -> None:
     assert through((), np.array([0.1])).zeros == 0
     assert zeros(Chain(Stack(LEAD, (), (well(5.0),), 1, (), LEAD), np.array([1e-3])), 1).tolist() == [0]
+
+
+def test_an_entry_of_deltas_alone_is_counted_at_many_energies() -> None:
+    stack = Stack(LEAD, (Delta(0.3),), PLAIN.cell, 5, (), LEAD)
+    chain = Chain(stack, np.linspace(0.01, 0.4, 1000))
+    few = [zeros(Chain(stack, part), 5) for part in np.split(chain.energy, 10)]
+    assert np.array_equal(zeros(chain, 5), np.concatenate(few))

@@ -12,7 +12,7 @@ from transport.parameters import PARAMETERS, Parameter, default
 
 RECORDS = [document.Conditions, document.LeadRecord, document.LayerRecord, document.StackRecord, document.WindowRecord,
            document.TargetRecord, document.UserMaterial, document.EndsRecord, document.EndCellRecord,
-           document.GrowthRecord]
+           document.GrowthRecord, document.MeasuredRecord, document.PeakRecord]
 
 
 @pytest.mark.parametrize("record", RECORDS)

@@ -7,6 +7,8 @@ import pytest
 
 from tests.transport.stacks import CLOSED_OFF, END_WELLS, FREE, LEAD, LOSSY, PLAIN, UNEQUAL, barrier, well
 from transport import (
+    Layer,
+    Lead,
     Stack,
     Target,
     Verdict,
@@ -211,3 +213,12 @@ def test_a_verdict_needs_windows_and_at_least_one_period() -> None:
 def test_the_periods_of_the_stack_itself_do_not_matter() -> None:
     window = passing(0.075, 0.09, 0.3)
     assert verdict(PLAIN, window) == verdict(replace(PLAIN, periods=3), window)
+
+
+def test_a_beam_sees_above_a_lead_edge_from_a_window_below_it() -> None:
+    """The window lies wholly below the right lead's edge, and the beam is wide: what is measured decides."""
+    stack = Stack(LEAD, (), (Layer(5.0, 0.05, 0.067),), 1, (), Lead(0.05, 0.067))
+    found = verdict(stack, blocking(0.03, 0.049, 1e-3), most=2, resolution=0.03)
+    expected = measured_transmission(stack, [0.049], 0.03)[0]
+    assert found.fewest is None
+    assert found.per_period[0].values[0] == pytest.approx(expected, rel=1e-6)

@@ -41,7 +41,19 @@ WRONG_FILES = {
     "unknown section": (
         "[target]", "[cooling]\nrate = 1\n[target]",
         "cooling: is not a key of a scenario; known here: format, title, note, conditions, leads, stack, "
-        "target, growth, materials",
+        "target, growth, measured, materials",
+    ),
+    "a peak without a place": (
+        "[target]", "[measured]\npeaks = [ { width_meV = 1 } ]\n[target]",
+        "measured.peaks[0]: has no place; give energy_meV, or bias_V",
+    ),
+    "a peak in two places": (
+        "[target]", "[measured]\npeaks = [ { energy_meV = 1, bias_V = 1 } ]\n[target]",
+        "measured.peaks[0].bias_V: stands beside energy_meV; keep one of them",
+    ),
+    "no lever arm": (
+        "[target]", "[measured]\nlever_arm = 0\n[target]",
+        "measured.lever_arm: must be above 0 and at most 1, but is 0.0",
     ),
     "growth out of limits": (
         "[target]", "[growth]\nmass_percent = 51\n[target]",
