@@ -113,6 +113,11 @@ def measured_limit(stack: Stack, low: float, high: float, resolution: float) -> 
     return Measured(np.concatenate(nodes), np.concatenate(weights), sigma)
 
 
+def touches_miniband(stack: Stack, window: Window) -> bool:
+    """Whether any part of the window lies in a miniband."""
+    return bool(_inside(stack, window))
+
+
 def _inside(stack: Stack, window: Window) -> tuple[Miniband, ...]:
     found = minibands(stack, window.bottom, window.top)
     return tuple(b for b in found if min(b.top, window.top) > max(b.bottom, window.bottom))

@@ -63,6 +63,7 @@ def _through_one(element: Element, energy: Floats, start: PhasePoint) -> PhasePo
     step = element_transfer(element, energy)
     psi, slope = step.a * start.psi + step.b * start.slope, step.c * start.psi + step.d * start.slope
     size = np.hypot(psi, slope)
+    size = np.where(size > 0, size, 1.0)  # both parts may cancel behind a very opaque layer
     end = PhasePoint(start.zeros, psi / size, slope / size)
     mass = mass_at(element, energy)
     wave = np.sqrt(np.maximum((energy - element.band_edge) * mass / HBAR2_2M0, 0.0))

@@ -10,7 +10,7 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
-from transport.floor import Floor, mean_limit, measured_limit, ripple_floor
+from transport.floor import Floor, mean_limit, measured_limit, ripple_floor, touches_miniband
 from transport.reasons import WindowHistory, counts_in_words, why_not
 from transport.structure import Stack, Target, Window
 from transport.windows import window_values
@@ -174,7 +174,7 @@ def pass_limit(stack: Stack, window: Window, resolution: float) -> Floor | None:
             return Floor(limit.mean(window.bottom, window.top), math.nan)
         return Floor(*limit.extremum(window.bottom, window.top, largest=False))
     if window.measure == "mean":
-        return Floor(mean_limit(stack, window), math.nan)
+        return Floor(mean_limit(stack, window), math.nan) if touches_miniband(stack, window) else None
     return ripple_floor(stack, window)
 
 

@@ -62,7 +62,10 @@ def resolve(
             return samples
         where = np.flatnonzero(coarse)
         parts = np.clip(np.ceil(advance[where] / PHASE_STEP), 2, _MOST_PARTS).astype(np.int64)
-        samples = _refined(stack, periods, samples, where, parts)
+        finer = _refined(stack, periods, samples, where, parts)
+        if finer.energy.size == samples.energy.size:  # only doubles that are there already lie between
+            return samples
+        samples = finer
 
 
 def _refined(
@@ -73,6 +76,7 @@ def _refined(
     step = np.arange(added.size) - np.repeat(np.cumsum(parts - 1) - (parts - 1), parts - 1) + 1
     share = step / np.repeat(parts, parts - 1)
     energy = samples.energy[added] * (1 - share) + samples.energy[added + 1] * share
+    energy = np.clip(energy, samples.energy[added], samples.energy[added + 1])  # rounding may step outside
     row = samples.row[added]
     phase = transmission_phase(stack, energy, periods[row])
     return merged(samples, row, energy, phase)
