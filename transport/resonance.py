@@ -254,7 +254,8 @@ def _polished(
             break
         apart = _apart(np.concatenate([z, poles]), active)
         nearest = np.abs(apart).min(axis=1, initial=reach)
-        newton, noise = newton_step(stack, strip, z[active], np.clip(1e-6 * nearest, 1e-13, 1e-8))
+        step = np.clip(1e-6 * nearest, 1e-13, 1e-8)
+        newton, noise = newton_step(stack, strip, z[active], step)
         with np.errstate(divide="ignore", invalid="ignore"):
             move = newton / (1 - newton * (1 / apart).sum(axis=1))
         move = np.where(np.isfinite(move), move, nearest / 2)
@@ -265,7 +266,9 @@ def _polished(
         settled[active] &= np.abs(newton) < np.maximum(0.1 * nearest, _UNTOLD)  # not merely kept apart by others
         before[active] = size
         lost[active] = (abs(z[active].real - (low + high) / 2) > 4 * reach) | (abs(z[active].imag) > 8 * reach)
-        lost[active] |= settled[active] & (noise > _BLURRED)
+        # Deep below the axis of a stack that reflects next to nothing, even the slope is only rounding over the step.
+        blurred = (noise > _BLURRED) | ((noise > 0.1 * step) & (abs(z[active].imag) > 0.01 * reach))
+        lost[active] |= settled[active] & blurred
         settled |= lost
     good = settled & ~lost & (z.imag < _ABOVE) & (z.real > low) & (z.real < high)
     found = np.concatenate([poles, z[good]])
