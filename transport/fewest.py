@@ -27,7 +27,7 @@ class Asked:
     """A question for the engine: a stack at any number of periods, its target, the beam's resolution (eV FWHM)."""
 
     stack: Stack
-    target: Target
+    target: Target | None
     resolution: float
 
 

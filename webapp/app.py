@@ -15,6 +15,7 @@ from panel.io.document import hold
 
 from transport import Verdict
 from transport.document import GrowthRecord
+from transport.fewest import Asked
 from webapp import messages as say
 from webapp.bench import Bench
 from webapp.editor import Rail
@@ -25,7 +26,7 @@ from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
 from webapp.ranges import Ranges
 from webapp.remedies import Remedies
-from webapp.results import Band, Question, Span, most_periods, natural_span, question
+from webapp.results import Band, Span, most_periods, natural_span, question
 from webapp.theme import LIGHT, PALETTES, css_variables
 from webapp.wire import Wire
 from webapp.work import Pictures, Wanted, pictures, verdict
@@ -45,7 +46,7 @@ class Session:
         self._document, self._bench = document, bench
         self._palette = LIGHT
         self._seq, self._version, self._share = 0, 0, 0.0
-        self._question: Question | None = None
+        self._question: Asked | None = None
         self._verdict: Verdict | None = None
         self._verdict_state = "none"
         self._range: dict[str, str] | None = None
@@ -268,20 +269,20 @@ class Session:
         self.board.clear()
         self.wire.tell(pictured={"version": wanted.version, "fault": in_words(error)})
 
-    def _ask_verdict(self, asked: Question) -> None:
+    def _ask_verdict(self, asked: Asked) -> None:
         self._question, self._share, self._verdict_state = asked, 0.0, "working"
         self._ranges.forget()
         self._tell_verdict()
         self._verdicts.ask(asked)
         asyncio.get_running_loop().create_task(self._watch(asked))
 
-    def _work_out(self, asked: Question, stop: Stop) -> Verdict | None:
+    def _work_out(self, asked: Asked, stop: Stop) -> Verdict | None:
         return verdict(asked, stop, self._progress)
 
     def _progress(self, share: float) -> None:
         self._share = share
 
-    async def _watch(self, asked: Question) -> None:
+    async def _watch(self, asked: Asked) -> None:
         """While a verdict takes long: say how far it is, and take the old margins off the screen."""
         await asyncio.sleep(_SLOW)
         while self._verdict_state == "working" and self._question == asked:
@@ -293,7 +294,7 @@ class Session:
             self.board.periods.margins.show(None)
             self._tell_verdict()
 
-    def _show_verdict(self, asked: Question, found: Verdict | None) -> None:
+    def _show_verdict(self, asked: Asked, found: Verdict | None) -> None:
         if asked != self._question:
             return
         self._verdict, self._verdict_state = found, "known"
@@ -306,7 +307,7 @@ class Session:
         self._ranges.forget()
         self._ranges.ask(self._bench.scenario)
 
-    def _fail_verdict(self, asked: Question, error: Exception) -> None:
+    def _fail_verdict(self, asked: Asked, error: Exception) -> None:
         self._verdict, self._verdict_state = None, "none"
         self.board.periods.margins.show(None)
         self.wire.tell(verdict={"state": "fault", "sentence": in_words(error), "present": "", "legend": []})

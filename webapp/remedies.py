@@ -7,10 +7,11 @@ from collections.abc import Callable
 from typing import Any, Literal
 
 from transport import Scenario
+from transport.fewest import Asked
 from webapp.latest import Latest, Stop
 from webapp.messages import in_words
 from webapp.pages.remedies import Proposal, remedies_view
-from webapp.results import Question, question
+from webapp.results import question
 from webapp.work import Search, proposals
 
 _POLL = 0.2
@@ -26,7 +27,7 @@ class Remedies:
         self._tell, self._later = tell, later
         self._state, self._sentence, self._share = "none", "", 0.0
         self._proposals: tuple[Proposal, ...] = ()
-        self._about: list[Question] = []
+        self._about: list[Asked] = []
         self._search = Latest(self._work, later(self._show), later(self._fail), interrupts=True)
 
     def look(self, scenario: Scenario, what: Literal["ends", "nearest"], whole: bool) -> None:
@@ -37,7 +38,7 @@ class Remedies:
         self._draw()
         asyncio.get_running_loop().create_task(self._watch())
 
-    def follow(self, asked: Question) -> None:
+    def follow(self, asked: Asked) -> None:
         """Keep the list as long as the bench shows the stack it is for, or one of its proposals."""
         if asked not in self._about + [question(proposal.scenario) for proposal in self._proposals]:
             self.forget()

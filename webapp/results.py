@@ -27,6 +27,7 @@ from transport import (
     spectrum,
     transmission_map,
 )
+from transport.fewest import Asked
 from transport.parameters import PARAMETERS, default
 from transport.structure import Layer
 
@@ -47,18 +48,9 @@ _PER_BAND, _PER_SPAN = 512, 512
 _LOWEST_DECADE = -330.0
 
 
-@dataclass(frozen=True, slots=True)
-class Question:
-    """What a verdict is about: everything but the present number of periods."""
-
-    stack: Stack
-    target: Target | None
-    resolution: float
-
-
-def question(scenario: Scenario) -> Question:
+def question(scenario: Scenario) -> Asked:
     """The question a scenario asks, whatever its present number of periods."""
-    return Question(scenario.stack.with_periods(1), scenario.target, scenario.resolution)
+    return Asked(scenario.stack.with_periods(1), scenario.target, scenario.resolution)
 
 
 def most_periods(target: Target | None) -> int:
@@ -66,7 +58,7 @@ def most_periods(target: Target | None) -> int:
     return target.most_periods if target else int(default("most_periods"))
 
 
-def natural_span(question: Question) -> Span:
+def natural_span(question: Asked) -> Span:
     """The energies worth seeing (eV): the barriers and the target's windows with some room, never cut short."""
     low, high = default_range(question.stack)
     windows = question.target.windows if question.target else ()

@@ -20,6 +20,7 @@ from transport import (
     spectrum,
     verdict_range,
 )
+from transport.fewest import Asked
 from transport.periods import no_progress
 from webapp.latest import Stop
 from webapp.pages.remedies import Proposal, of_ends, of_stacks
@@ -30,7 +31,6 @@ from webapp.results import (
     Lattice,
     Passage,
     Points,
-    Question,
     Span,
     drawn_profile,
     emergence,
@@ -81,7 +81,7 @@ def pictures(wanted: Wanted, stop: Stop) -> Pictures:
     )
 
 
-def verdict(asked: Question, stop: Stop, progress: Callable[[float], None]) -> Verdict | None:
+def verdict(asked: Asked, stop: Stop, progress: Callable[[float], None]) -> Verdict | None:
     """Work out the verdict; None where no window is asked. Raises Stopped, and ValueError where the model ends."""
     if asked.target is None or not asked.target.windows:
         return None
