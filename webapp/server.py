@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from asyncio import AbstractEventLoop
 from pathlib import Path
 from typing import Any
 
 import panel as pn
 from bokeh.server.urls import per_app_patterns
+from tornado.websocket import WebSocketClosedError
 
 from webapp.app import session
 from webapp.files import Folder
@@ -19,12 +21,20 @@ UNUSED_SESSION_S = 15
 def server(folder: Folder, host: str, port: int, show: bool = False) -> Any:
     """A server of the page, not started yet; `show` opens a browser. Raises OSError where it cannot listen."""
     _send_at_once()
-    return pn.serve(
+    served = pn.serve(
         # A function of its own, because Panel takes nothing else that can be called.
         {"/": lambda: session(folder)}, address=host, port=port, show=show, start=False, title="Colonnade",
         verbose=False, liveness=True, static_dirs={"assets": str(_ASSETS)},
         unused_session_lifetime_milliseconds=UNUSED_SESSION_S * 1000,
     )
+    served.io_loop.asyncio_loop.set_exception_handler(unexpected_only)
+    return served
+
+
+def unexpected_only(loop: AbstractEventLoop, context: dict[str, Any]) -> None:
+    """Log what went wrong in a task, except that a browser left while a message was on its way: that is no fault."""
+    if not isinstance(context.get("exception"), WebSocketClosedError):
+        loop.default_exception_handler(context)
 
 
 def _send_at_once() -> None:
