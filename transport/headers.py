@@ -65,7 +65,8 @@ def read_columns(headers: Sequence[str], unit: Unit | None) -> tuple[tuple[Colum
         elif header.strip() and header.strip() not in COLUMNS:
             unused.append(header.strip())
     for column in found:
-        twin = next((c for c in found if (c.meaning, c.unit) == (column.meaning, column.unit) and c is not column), None)
+        same = (column.meaning, column.unit)
+        twin = next((c for c in found if (c.meaning, c.unit) == same and c is not column), None)
         if twin is not None:
             raise ScenarioError("sheet", f"has two columns for the same, {shown(column.header)} and "
                                 f"{shown(twin.header)}; keep one of them")

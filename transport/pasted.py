@@ -68,13 +68,15 @@ def read_layer_sheet(text: str, unit: Unit | None = None, materials: Iterable[st
     refuse_unless(bool(lines), "sheet", "is empty; begin it with a line of headers such as material,x,thickness_nm")
     separator = next((mark for mark in "\t;," if mark in lines[0][1]), ",")
     headers = _cells(lines[0][1], separator)
-    refuse_unless(len(headers) <= _MOST_COLUMNS, "sheet", f"has more than {_MOST_COLUMNS} columns; cut it to its layers")
+    refuse_unless(len(headers) <= _MOST_COLUMNS, "sheet",
+                  f"has more than {_MOST_COLUMNS} columns; cut it to its layers")
     refuse_unless(len(lines) - 1 <= MOST_LAYERS, "sheet",
                   f"lists {len(lines) - 1:,} layers; at most {MOST_LAYERS:,} are read")
     refuse_unless(len(lines) > 1, "sheet", "has headers but no layer; add a row for each")
     columns, unused = read_columns(headers, unit)
     reader = _Reader(columns, len(headers), separator, tuple(materials))
-    layers, faults = [], []
+    layers: list[PastedLayer] = []
+    faults: list[str] = []
     for number, line in lines[1:]:
         try:
             layers += reader.layers(number, line)
@@ -164,29 +166,31 @@ class _Reader:
     def _layer(self, row: _Row) -> LayerRecord:
         if strength := row.column("delta_eV_nm"):
             return LayerRecord(delta_eV_nm=self._limited(row, strength, "delta_eV_nm"))
-        thickness = self._thickness(row)
+        thickness, monolayers = self._thickness(row)
         if text := row.text("material"):
             column = row.column("material")
             assert column is not None
             name, share = self._material(row.key(column), text)
-            return LayerRecord(material=name, x=self._x(row, name, share), **thickness)
+            share_used = self._x(row, name, share)
+            return LayerRecord(material=name, x=share_used, thickness_nm=thickness, monolayers=monolayers)
         edge, mass = row.column("band_edge_eV"), row.column("mass")
         if edge is None or mass is None:
             raise ScenarioError(row.key("material"), "is missing; give one, or columns band_edge_eV and mass")
-        refuse_unless("thickness_nm" in thickness, row.key("thickness"),
+        refuse_unless(thickness is not None, row.key("thickness"),
                       "is in monolayers, but no material says how thick one is; give it in nm")
         bend = row.column("nonparabolicity_per_eV")
         return LayerRecord(
             band_edge_eV=self._limited(row, edge, "band_edge_eV"), mass=self._limited(row, mass, "mass"),
             nonparabolicity_per_eV=(self._limited(row, bend, "nonparabolicity_per_eV") or None) if bend else None,
-            **thickness)
+            thickness_nm=thickness)
 
     def _limited(self, row: _Row, column: Column, name: str) -> float:
         value = row.number_in(column)
         check_limits(row.key(column), name, value)
         return value
 
-    def _thickness(self, row: _Row) -> dict[str, float]:
+    def _thickness(self, row: _Row) -> tuple[float | None, float | None]:
+        """Thickness in nm or in monolayers."""
         column = row.column("thickness")
         if column is None:
             raise ScenarioError(row.key("thickness"), "is missing; give the layer one")
@@ -195,7 +199,7 @@ class _Reader:
         value = given / 10 if column.unit == "angstrom" else given
         limits = PARAMETERS[name]
         refuse_unless(limits.admits(value), row.key(column), f"{limits.requirement}, but is {given:g} {column.unit}")
-        return {name: value}
+        return (None, value) if column.unit == "monolayers" else (value, None)
 
     def _material(self, key: str, text: str) -> tuple[str, tuple[str, float] | None]:
         """The name of a material and, where the text is a formula, the share of its first element."""

@@ -48,7 +48,8 @@ def grown_layers(scenario: Scenario, rates: Rates | None = None) -> tuple[GrownL
 
     Raises ValueError for a rate that is not above 0, and where a material has none.
     """
-    stack, height, found = scenario.stack, 0.0, []
+    stack, height = scenario.stack, 0.0
+    found: list[GrownLayer] = []
     for row in scenario.sheet:
         if row.where not in ("entry", "cell", "exit"):
             continue
