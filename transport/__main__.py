@@ -7,14 +7,12 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from dataclasses import replace
-from pathlib import Path
 from typing import NoReturn
 
 import numpy as np
 
 from transport import report
 from transport.allowance import verdict_range
-from transport.handoff import provenance, sheet_csv
 from transport.lattice import default_range, lattice_bands, lowest_energy
 from transport.matching import matched_ends
 from transport.measured import measured_peaks, read_peaks
@@ -23,11 +21,9 @@ from transport.parameters import PARAMETERS
 from transport.peaks import FIGURES, compare_peaks, fit_peaks
 from transport.periods import no_progress, period_verdict
 from transport.resonance import resonances
-from transport.scenario import Scenario, load_scenario, read_text, save_scenario, save_text
-from transport.sheet import Rates
+from transport.scenario import Scenario, load_scenario, read_text, save_scenario
 from transport.spectrum import Spectrum, spectrum
 from transport.structure import Stack
-from transport.writers import report_writer
 
 Handler = Callable[[Scenario, argparse.Namespace], str]
 
@@ -109,12 +105,7 @@ def _parser() -> argparse.ArgumentParser:
                          "uncertainty_meV (default: the scenario's [measured])")
     command.add_argument("--fit", metavar="LIST", type=lambda text: text.split(","),
                          help=f"figures to fit, out of {', '.join(FIGURES)}")
-    command = _command(commands, "layers", _layers, "the grower's sheet")
-    command.add_argument("--csv", action="store_true", help="print it as CSV, in whole monolayers and with heights")
-    command.add_argument("--rate", type=_rates, metavar="RATE", help="monolayers per second for the CSV's growth "
-                         "times: one for all (0.5), or one for each material (GaAs=0.5,AlGaAs=0.7)")
-    command = _command(commands, "report", _report, "one HTML file with everything, to send and to print")
-    command.add_argument("--output", metavar="FILE", help="a new file (default: the scenario's name, ending in .html)")
+    _command(commands, "layers", _layers, "the grower's sheet")
     return parser
 
 
@@ -240,15 +231,11 @@ def _save(proposals: Sequence[Scenario], path: str | None) -> None:
     """Write the first proposal to a new file, if that is wanted."""
     if path is None:
         return
-    _refuse_existing("--save", path)
+    if os.path.lexists(path):
+        raise ValueError(f"--save: {path} is there already, choose another name")
     if not proposals:
         raise ValueError("--save: there is no proposal to save; leave the option out to read why")
     save_scenario(proposals[0], path)
-
-
-def _refuse_existing(option: str, path: str) -> None:
-    if os.path.lexists(path):
-        raise ValueError(f"{option}: {path} is there already, choose another name")
 
 
 def _progress() -> Callable[[float], None]:
@@ -260,35 +247,8 @@ def _told(share: float) -> None:
     print(f"\r{share:4.0%}", end="" if share < 1 else "\r    \r", file=sys.stderr, flush=True)
 
 
-def _rates(text: str) -> Rates:
-    """One rate, or rates by material."""
-    try:
-        if "=" not in text:
-            return float(text)
-        pairs = [part.rsplit("=", 1) for part in text.split(",")]
-        return {name.strip(): float(value) for name, value in pairs}
-    except ValueError:
-        raise argparse.ArgumentTypeError(f"{text!r} must be a number, or as GaAs=0.5,AlGaAs=0.7") from None
-
-
 def _layers(scenario: Scenario, options: argparse.Namespace) -> str:
-    if options.csv:
-        if options.json:
-            raise ValueError("--csv: give either --csv or --json")
-        return sheet_csv(scenario, options.rate).rstrip("\n")
-    if options.rate is not None:
-        raise ValueError("--rate: growth times stand in the CSV; add --csv")
     return report.to_json(report.layers_record(scenario)) if options.json else report.layers_text(scenario)
-
-
-def _report(scenario: Scenario, options: argparse.Namespace) -> str:
-    path = options.output or f"{Path(options.scenario).stem}.html"
-    _refuse_existing("--output", path)
-    html = report_writer("html")(scenario)
-    save_text(html, path)
-    if options.json:
-        return report.to_json({"file": path, "bytes": len(html.encode()), **provenance(scenario)})
-    return f"{path}: the report, {len(html.encode()) / 1e6:.1f} MB; any browser opens it, offline too"
 
 
 if __name__ == "__main__":

@@ -11,7 +11,6 @@ import msgspec
 import numpy as np
 
 from transport.allowance import VerdictRange
-from transport.cautions import GROWTH
 from transport.document import EndsRecord
 from transport.lattice import Bands
 from transport.matching import MatchedEnds
@@ -305,7 +304,12 @@ def layers_text(scenario: Scenario) -> str:
     """The grower's sheet as a table, with warnings and the usual caution."""
     rows = [(r.where, r.material or "-", r.x, r.thickness, r.monolayers, r.band_edge, r.mass) for r in scenario.sheet]
     header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass")
-    return "\n".join([table(header, rows), *_warning_lines(scenario), GROWTH])
+    return "\n".join([table(header, rows), *_warning_lines(scenario), CAUTION])
+
+
+CAUTION = (
+    "Growth uses toxic and pyrophoric materials: follow the site's own rules and the people licensed for the reactor."
+)
 
 
 def check_text(scenario: Scenario) -> str:

@@ -87,13 +87,8 @@ def save_scenario(scenario: Scenario, path: str | os.PathLike[str]) -> None:
     The text goes to a new file in the same folder, which then takes the place (and the mode) of the old one. A
     symbolic link is followed, so that the link stays. Raises ScenarioError with the path as its key.
     """
-    save_text(format_scenario(scenario), path)
-
-
-def save_text(text: str, path: str | os.PathLike[str]) -> None:
-    """Write any text as save_scenario writes a scenario: whole or not at all. Raises ScenarioError."""
     try:
-        _replace(Path(os.path.realpath(_plain_file(path))), text.encode())
+        _replace(Path(os.path.realpath(_plain_file(path))), format_scenario(scenario).encode())
     except OSError as error:
         raise ScenarioError(str(path), f"cannot be saved ({error.strerror}); choose another place") from None
 
