@@ -24,6 +24,7 @@ from webapp.files import Entry, Folder
 from webapp.latest import Latest, Stop
 from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
+from webapp.peaks import Peaks
 from webapp.ranges import Ranges
 from webapp.remedies import Remedies
 from webapp.results import Band, Span, most_periods, natural_span, question
@@ -65,6 +66,7 @@ class Session:
                                 interrupts=True)
         self._ranges = Ranges(self._tell_range, self._draw_band, self._later)
         self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later)
+        self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
             lambda _, stop: bench.folder.entries(), self._later(self._show_files), self._later(self._fail_files))
 
@@ -74,6 +76,7 @@ class Session:
             worker.cancel()
         self._ranges.forget()
         self._remedies.forget()
+        self._peaks.close()
         if self._page is not None:
             self._page.cancel()
 
@@ -106,6 +109,14 @@ class Session:
                 self._remedies.look(self._bench.scenario, what, whole)
             case say.StopProposing():
                 self._remedies.stop()
+            case say.Trace(place=place):
+                self._peaks.choose(place)
+            case say.Density(shown=shown):
+                self._peaks.show_density(shown)
+            case say.Fit(figures=figures):
+                self._peaks.look(figures)
+            case say.StopFit():
+                self._peaks.stop()
             case say.Save(name=name, agreed=agreed):
                 objections = self._bench.save(name, agreed)
                 if objections:
@@ -144,6 +155,12 @@ class Session:
                 if proposal := self._remedies.chosen(index):
                     self.board.passes.remember()
                     bench.adopt(proposal.scenario, proposal.words)
+            case say.Measure(text=text, lever_arm=lever_arm):
+                bench.measure(text, lever_arm)
+            case say.TakeFit():
+                if fitted := self._peaks.chosen_fit():
+                    self.board.passes.remember()
+                    bench.adopt(fitted, "fit to the measured peaks")
             case say.Undo():
                 bench.undo()
             case say.Redo():
@@ -264,10 +281,12 @@ class Session:
 
     def _show_page(self, wanted: Wanted, found: Pictures) -> None:
         self.wire.tell(texts=self.board.show_page(wanted, found))
+        self._peaks.follow(wanted.scenario, wanted.span, wanted.view)
 
     def _fail_pictures(self, wanted: Wanted, error: Exception) -> None:
         self.board.clear()
         self.wire.tell(pictured={"version": wanted.version, "fault": in_words(error)})
+        self._peaks.follow(wanted.scenario, wanted.span, wanted.view)
 
     def _ask_verdict(self, asked: Asked) -> None:
         self._question, self._share, self._verdict_state = asked, 0.0, "working"

@@ -10,6 +10,8 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 
+import msgspec
+
 from transport import (
     Document,
     Scenario,
@@ -18,11 +20,12 @@ from transport import (
     document_to_data,
     format_scenario,
     parse_scenario,
+    read_peaks,
     scenario_from_document,
 )
 from webapp import edits
 from webapp.edits import Data, Reorder
-from webapp.fields import applied, name_of, record_of, sentence_beside
+from webapp.fields import applied, name_of, number, record_of, sentence_beside
 from webapp.files import Folder, with_suffix
 
 MOST_STEPS = 300
@@ -184,6 +187,18 @@ class Bench:
         """Take the end treatment away."""
         self._rearrange("stack.ends", lambda data: (edits.with_value(data, "stack.ends", None), lambda old: old),
                         "ends taken away")
+
+    def measure(self, text: str, lever_arm: str) -> None:
+        """Put the peaks of a table in place of those measured before; without text, take them away."""
+        try:
+            arm = number("measured.lever_arm", lever_arm)
+            record = read_peaks(text, None if arm is None else float(arm)) if text.strip() else None
+            scenario = scenario_from_document(msgspec.structs.replace(self.document, measured=record))
+        except ScenarioError as error:
+            self.notice = Notice("measured", str(error))
+            return
+        self._enter(replace(self._state, document=scenario.document,
+                            step="measured peaks" if record else "measured peaks taken away"), scenario)
 
     def undo(self) -> None:
         """One step back."""

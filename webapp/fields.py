@@ -67,10 +67,12 @@ def _value(path: str, name: str, text: str) -> Any:
         return text == "true"
     if name in _TEXTS:
         return text if text or name in _EMPTY_IS_TEXT else None
-    return _number(path, text.strip().replace("\N{MINUS SIGN}", "-"), PARAMETERS[name].whole)
+    return number(path, text, PARAMETERS[name].whole)
 
 
-def _number(path: str, text: str, whole: bool) -> float | int | None:
+def number(path: str, text: str, whole: bool = False) -> float | int | None:
+    """The number a text holds; None for an empty one. Raises ScenarioError where it is none."""
+    text = text.strip().replace("\N{MINUS SIGN}", "-")
     if not text:
         return None
     try:

@@ -8,6 +8,8 @@ import threading
 from collections.abc import Callable
 from typing import Generic, TypeVar
 
+from transport.periods import no_progress
+
 Request = TypeVar("Request")
 Result = TypeVar("Result")
 
@@ -32,6 +34,16 @@ class Stop:
         """Raise Stopped if the work was asked to stop."""
         if self._event.is_set():
             raise Stopped
+
+
+def checked(stop: Stop, progress: Callable[[float], None] = no_progress) -> Callable[[float], None]:
+    """Progress that also stops the work where that is asked."""
+
+    def told(share: float) -> None:
+        stop.check()
+        progress(share)
+
+    return told
 
 
 class Latest(Generic[Request, Result]):

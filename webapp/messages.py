@@ -110,6 +110,39 @@ class Adopt(Message, frozen=True):
     index: int
 
 
+class Trace(Message, frozen=True):
+    """Show the wave of a resonance, by its place in the ledger, and what moves it."""
+
+    place: int
+
+
+class Density(Message, frozen=True):
+    """Draw the local density of states, or no longer."""
+
+    shown: bool
+
+
+class Measure(Message, frozen=True):
+    """A table of measured peaks, in place of those that are there; empty takes them away."""
+
+    text: str
+    lever_arm: str
+
+
+class Fit(Message, frozen=True):
+    """Fit figures of the stack to the measured peaks."""
+
+    figures: tuple[str, ...]
+
+
+class StopFit(Message, frozen=True):
+    """Give up fitting."""
+
+
+class TakeFit(Message, frozen=True):
+    """Take the fitted figures into the stack."""
+
+
 class Undo(Message, frozen=True):
     """One step back."""
 
@@ -144,7 +177,8 @@ class Again(Message, frozen=True):
 
 
 AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
-              | Redo | DropEnds | Propose | StopProposing | Adopt | Browse | Open | Save | Cancel | Again)
+              | Redo | DropEnds | Propose | StopProposing | Adopt | Trace | Density | Measure
+              | Fit | StopFit | TakeFit | Browse | Open | Save | Cancel | Again)
 
 
 def in_words(error: Exception) -> str:

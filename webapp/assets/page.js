@@ -4,12 +4,14 @@ import { byId, element, icon } from "./dom.js"
 import { drawRail, periodsFromRail } from "./rail.js"
 import { heldVersion, showPeriods, startBench } from "./bench.js"
 import { drawRemedies, startRemedies } from "./remedies.js"
+import { drawChosen, drawFit, drawLedger, drawMeasured, drawMeasuredFault, drawResonance, startPeaks } from "./peaks.js"
+import { startTabs } from "./tabs.js"
 import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 
 const page = { status: null, pictured: null, sequence: 0, edited: 0, wire: null, palette: null }
 
 const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
-  "dropends", "adopt"])
+  "dropends", "adopt", "measure", "takefit"])
 
 function send(type, content = {}) {
   page.sequence += 1
@@ -33,6 +35,7 @@ const parts = {
     command("undo", status.undo)
     command("redo", status.redo)
     drawNotice(status.notice)
+    drawMeasuredFault(status.notice)
     showPeriods(status.periods, { fromServer: true })
     if (status.place) {
       const address = new URL(location)
@@ -90,6 +93,11 @@ const parts = {
     byId("earlier").hidden = !earlier
   },
   remedies(remedies) { drawRemedies(remedies) },
+  ledger(ledger) { drawLedger(ledger) },
+  chosen(place) { drawChosen(place) },
+  resonance(resonance) { drawResonance(resonance) },
+  measured(measured) { drawMeasured(measured) },
+  fit(fit) { drawFit(fit) },
   files(files) { drawFiles(files, page.status) },
   objections(objections) { drawObjections(objections) },
 }
@@ -138,7 +146,9 @@ function start() {
   for (const choice of document.querySelectorAll("input[name=scale]")) {
     choice.addEventListener("change", () => send("scale", { scale: choice.value }))
   }
+  startTabs()
   startRemedies(send)
+  startPeaks(send)
   startFiles(send, () => page.status)
   document.addEventListener("keydown", shortcuts)
   addEventListener("beforeunload", (event) => { if (page.status?.changed) event.preventDefault() })

@@ -1,6 +1,7 @@
 // Remedies: the list of proposals, each with a small picture of its band edge, and the way to take one.
 
 import { byId, element } from "./dom.js"
+import { showPage } from "./tabs.js"
 
 let send = () => {}
 
@@ -10,6 +11,7 @@ export function startRemedies(sender) {
   byId("find-stacks").addEventListener("click", () => propose("nearest"))
   byId("mend").addEventListener("click", () => {
     propose("nearest")
+    showPage("periods")
     byId("remedies").scrollIntoView({ block: "start" })
     byId("find-stacks").focus({ preventScroll: true })
   })
