@@ -44,6 +44,7 @@ def _parser() -> argparse.ArgumentParser:
                         help="scenarios it lists and saves to (default: scenarios)")
     parser.add_argument("--host", default="127.0.0.1", help="address to listen on (default: 127.0.0.1, this machine)")
     parser.add_argument("--port", type=_port, default=5006, help="port to listen on (default: 5006)")
+    parser.add_argument("--view-only", action="store_true", help="visitors move sliders and look; nothing is saved")
     parser.add_argument("--open", action="store_true", help="open a browser window")
     return parser
 
@@ -57,7 +58,7 @@ def _port(text: str) -> int:
 def _serve(folder: Any, options: argparse.Namespace) -> int:
     from webapp.server import server
 
-    served = server(folder, options.host, options.port, options.open)
+    served = server(folder, options.host, options.port, options.open, options.view_only)
     for number in (signal.SIGINT, signal.SIGTERM):
         signal.signal(number, lambda *_: served.io_loop.add_callback_from_signal(served.io_loop.stop))
     served.start()

@@ -43,8 +43,8 @@ _log = logging.getLogger("webapp")
 class Session:
     """Owns the bench of one visitor, its figures and the work behind them."""
 
-    def __init__(self, document: Document, bench: Bench, drags: bool) -> None:
-        self._document, self._bench = document, bench
+    def __init__(self, document: Document, bench: Bench, drags: bool, view_only: bool) -> None:
+        self._document, self._bench, self._view_only = document, bench, view_only
         self._palette = LIGHT
         self._seq, self._version, self._share = 0, 0, 0.0
         self._question: Asked | None = None
@@ -88,6 +88,10 @@ class Session:
 
     def _act(self, message: say.AnyMessage) -> None:
         self._seq = message.seq
+        if self._view_only and say.changes_something(message):
+            self._bench.refuse("view", "This page is for looking: sliders move, and nothing else is changed or saved.")
+            self.wire.tell(status=self._status())
+            return
         match message:
             case say.Hello(theme=theme):
                 self._paint(theme)
@@ -127,7 +131,7 @@ class Session:
                 self._follow(rail=False)
             case say.Settle():
                 self._bench.settle()
-                self.wire.tell(status=self._status())
+                self.wire.tell(status=self._status(), kept=self._bench.kept())
             case _:
                 self._edit(message)
 
@@ -161,6 +165,8 @@ class Session:
                 if fitted := self._peaks.chosen_fit():
                     self.board.passes.remember()
                     bench.adopt(fitted, "fit to the measured peaks")
+            case say.Restore(text=text, drafts=drafts, base=base):
+                bench.restore(text, drafts, base)
             case say.Undo():
                 bench.undo()
             case say.Redo():
@@ -214,7 +220,7 @@ class Session:
 
     def _tell_rail(self) -> None:
         scenario = self._bench.scenario
-        self.wire.tell(status=self._status(), rail=Rail(self._bench).view(), about={
+        self.wire.tell(status=self._status(), kept=self._bench.kept(), rail=Rail(self._bench).view(), about={
             "title": scenario.title, "note": scenario.note, "cautions": scenario.warnings,
             "beam": f"dashed: seen at {scenario.resolution * 1e3:g} meV" if scenario.resolution else ""})
 
@@ -339,17 +345,18 @@ class Session:
         self.wire.tell(files=[], objection=in_words(error))
 
 
-def session(folder: Folder) -> None:
-    """Fill the document of one visitor; called by the server for each."""
+def session(folder: Folder, view_only: bool = False) -> None:
+    """Fill the document of one visitor; called by the server for each. `view_only`: nothing is changed or saved."""
     document = pn.state.curdoc
     wanted = pn.state.session_args.get("scenario", [b""])[0].decode(errors="replace")
     drags = "Mobi" not in pn.state.headers.get("User-Agent", "")
     document.title = "Colonnade"
     document.template = _PAGE.read_text(encoding="utf-8")
     document.template_variables["variables"] = css_variables()
+    document.template_variables["view_only"] = view_only
     # One look at all models instead of one for each root halves the time to the page.
     with document.models.freeze():
-        visit = Session(document, Bench(folder, wanted or None), drags)
+        visit = Session(document, Bench(folder, wanted or None), drags, view_only)
         for figure in visit.board.figures:
             document.add_root(figure)
         document.template_variables["figures"] = [figure.name for figure in visit.board.figures]

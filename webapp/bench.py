@@ -7,6 +7,7 @@ computed.
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 
@@ -53,6 +54,9 @@ class Draft:
     text: str
     message: str = ""
 
+
+Kept = dict[str, str | dict[str, str]]
+"""Unsaved edits as the browser keeps them: `text`, `drafts`, and `base`, a digest of the file they began from."""
 
 Drafts = Mapping[str, Draft]
 """Drafts by the path of their field."""
@@ -126,6 +130,10 @@ class Bench:
     def redo_step(self) -> str | None:
         """What redo would bring back, in words; None where there is nothing."""
         return self._future[-1].step if self._future else None
+
+    def refuse(self, about: str, sentence: str) -> None:
+        """Tell the user of something that cannot be done; nothing changes."""
+        self.notice = Notice(about, sentence)
 
     # Edits of values.
 
@@ -225,6 +233,30 @@ class Bench:
         self._texts[name], self._saved[name] = text, scenario.document
         self._enter(State(scenario.document, {}, name, f"opening of {name}"), scenario)
 
+    def kept(self) -> Kept | None:
+        """What no file holds yet; None where there is nothing."""
+        if not self.is_changed:
+            return None
+        texts = {path: draft.text for path, draft in self.drafts.items()}
+        base = _digest(self._texts.get(self.place or ""))
+        return {"text": format_scenario(self.scenario), "drafts": texts, "base": base}
+
+    def restore(self, text: str, drafts: Mapping[str, str], base: str) -> None:
+        """Bring back what was never saved; undo leads to the file. `base`: digest of the file it began from."""
+        try:
+            scenario = parse_scenario(text)
+        except ScenarioError as error:
+            self.notice = Notice("kept", f"Edits kept in this browser cannot be read and stay there: {error}")
+            return
+        refused = {path: _refused(scenario, path, Draft(text)) for path, text in drafts.items()}
+        self._enter(State(scenario.document, refused, self.place, "return of unsaved edits"), scenario)
+        sentence = "Edits that were not saved are back; Undo leads to the file."
+        if self.place is not None and base != _digest(self._texts.get(self.place)):
+            # Saving asks first, as for any file that others have changed.
+            self._texts[self.place] = ""
+            sentence += f" {self.place} was changed elsewhere in the meantime."
+        self.notice = Notice("kept", sentence, is_fault=False)
+
     def save(self, name: str, agreed: bool) -> tuple[str, ...]:
         """Save under `name`; unless `agreed`, first return what would be lost, as sentences, and leave the file."""
         name = with_suffix(name)
@@ -304,6 +336,10 @@ class Bench:
     def _go(self, state: State) -> None:
         self._sliding, self.notice = False, None
         self._state, self._scenario = state, scenario_from_document(state.document)
+
+
+def _digest(text: str | None) -> str:
+    return hashlib.sha256((text or "").encode()).hexdigest()
 
 
 def _with_drafts(scenario: Scenario, drafts: Drafts) -> Scenario:

@@ -161,6 +161,14 @@ class Open(Message, frozen=True):
     name: str
 
 
+class Restore(Message, frozen=True):
+    """Edits that were never saved, kept by the browser; `base`: digest of the file they began from."""
+
+    text: str
+    drafts: dict[str, str]
+    base: str
+
+
 class Save(Message, frozen=True):
     """Save under a name; `agreed`: the user has read what would be lost."""
 
@@ -178,7 +186,13 @@ class Again(Message, frozen=True):
 
 AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
               | Redo | DropEnds | Propose | StopProposing | Adopt | Trace | Density | Measure
-              | Fit | StopFit | TakeFit | Browse | Open | Save | Cancel | Again)
+              | Fit | StopFit | TakeFit | Browse | Open | Restore | Save | Cancel | Again)
+
+
+def changes_something(message: AnyMessage) -> bool:
+    """Whether a message would change or save more than the number of periods, or start long work."""
+    looks = (Hello, Theme, Scale, Slide, Settle, Browse, Open, Undo, Redo, Trace, Density, Cancel, Again)
+    return not isinstance(message, looks) and not (isinstance(message, Set) and message.path == "stack.periods")
 
 
 def in_words(error: Exception) -> str:

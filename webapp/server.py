@@ -18,12 +18,15 @@ UNUSED_SESSION_S = 15
 """How long a session is kept after its browser has gone."""
 
 
-def server(folder: Folder, host: str, port: int, show: bool = False) -> Any:
-    """A server of the page, not started yet; `show` opens a browser. Raises OSError where it cannot listen."""
+def server(folder: Folder, host: str, port: int, show: bool = False, view_only: bool = False) -> Any:
+    """A server of the page, not started yet. Raises OSError where it cannot listen.
+
+    `show` opens a browser; `view_only`: visitors move sliders and look, nothing is changed or saved.
+    """
     _send_at_once()
     served = pn.serve(
         # A function of its own, because Panel takes nothing else that can be called.
-        {"/": lambda: session(folder)}, address=host, port=port, show=show, start=False, title="Colonnade",
+        {"/": lambda: session(folder, view_only)}, address=host, port=port, show=show, start=False, title="Colonnade",
         verbose=False, liveness=True, static_dirs={"assets": str(_ASSETS)},
         unused_session_lifetime_milliseconds=UNUSED_SESSION_S * 1000,
     )

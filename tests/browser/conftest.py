@@ -7,6 +7,7 @@ import shutil
 import subprocess
 import sys
 from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import IO
@@ -22,10 +23,11 @@ ADDRESS = re.compile(r"at (http://\S+)")
 
 @dataclass(frozen=True)
 class Served:
-    """A running server: its address and the folder it serves."""
+    """A running server: its address, the folder it serves, its process."""
 
     address: str
     folder: Path
+    process: subprocess.Popen[str]
 
 
 @pytest.fixture(scope="session")
@@ -39,18 +41,34 @@ def browser() -> Iterator[Browser]:
 
 
 @pytest.fixture
-def served(tmp_path: Path) -> Iterator[Served]:
-    folder = tmp_path / "scenarios"
-    shutil.copytree(CHECKOUT / "scenarios", folder)
-    command = [sys.executable, "-m", "webapp", "--port", "0", str(folder)]
-    log = tmp_path / "server.log"
-    with log.open("w") as written, subprocess.Popen(
+def folder(tmp_path: Path) -> Path:
+    """A copy of the demo scenarios."""
+    place = tmp_path / "scenarios"
+    shutil.copytree(CHECKOUT / "scenarios", place)
+    return place
+
+
+@pytest.fixture
+def served(folder: Path) -> Iterator[Served]:
+    with serving(folder) as server:
+        yield server
+
+
+@contextmanager
+def serving(folder: Path, *options: str, port: int = 0) -> Iterator[Served]:
+    """A server of a folder; at the end it must stop when told, unless it was killed, and its log hold no fault."""
+    command = [sys.executable, "-m", "webapp", "--port", str(port), *options, str(folder)]
+    log = folder.parent / "server.log"
+    with log.open("a") as written, subprocess.Popen(
         command, cwd=CHECKOUT, stdout=subprocess.PIPE, stderr=written, text=True
     ) as server:
         assert server.stdout is not None
-        yield Served(_address(server.stdout, log), folder)
-        server.terminate()
-        assert server.wait(timeout=20) == 0, log.read_text()
+        try:
+            yield Served(_address(server.stdout, log), folder, server)
+            killed = server.poll() is not None
+        finally:
+            server.terminate()
+        assert server.wait(timeout=20) == 0 or killed, log.read_text()
     assert "Traceback" not in log.read_text(), log.read_text()
 
 
@@ -65,13 +83,20 @@ def _address(output: IO[str], log: Path) -> str:
 @pytest.fixture
 def page(browser: Browser, served: Served) -> Iterator[Page]:
     """The start page, ready; afterwards no error may stand in its console and no request may have left the server."""
+    with visiting(browser, served) as visited:
+        yield visited
+
+
+@contextmanager
+def visiting(browser: Browser, served: Served, path: str = "") -> Iterator[Page]:
+    """A page of a server, ready, watched for errors and for requests to other servers."""
     context = browser.new_context(viewport={"width": 1280, "height": 800})
     visited = context.new_page()
     faults: list[str] = []
     visited.on("console", lambda message: faults.append(message.text) if message.type == "error" else None)
     visited.on("pageerror", lambda error: faults.append(str(error)))
     visited.on("request", lambda request: None if _local(request.url, served) else faults.append(request.url))
-    visited.goto(served.address)
+    visited.goto(served.address + path)
     ready(visited)
     yield visited
     context.close()

@@ -18,7 +18,6 @@ export function startBench(given) {
   }
   byId("energy").addEventListener("input", () => readAt(byId("energy").valueAsNumber, { fromField: true }))
   byId("energy").addEventListener("keydown", stepEnergy)
-  window.Bokeh.documents[0].on_event("connection_lost", () => { byId("lost").hidden = false })
 }
 
 export const heldVersion = () => model("rows").tags[0]

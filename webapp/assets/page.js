@@ -6,12 +6,13 @@ import { heldVersion, showPeriods, startBench } from "./bench.js"
 import { drawRemedies, startRemedies } from "./remedies.js"
 import { drawChosen, drawFit, drawLedger, drawMeasured, drawMeasuredFault, drawResonance, startPeaks } from "./peaks.js"
 import { startTabs } from "./tabs.js"
+import { comeBack, heard, keep, keptFor, sent, takeUnheard } from "./keep.js"
 import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 
-const page = { status: null, pictured: null, sequence: 0, edited: 0, wire: null, palette: null }
+const page = { status: null, pictured: null, sequence: 0, edited: 0, wire: null, unheard: [] }
 
 const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
-  "dropends", "adopt", "measure", "takefit"])
+  "dropends", "adopt", "measure", "takefit", "restore"])
 
 function send(type, content = {}) {
   page.sequence += 1
@@ -19,6 +20,7 @@ function send(type, content = {}) {
     page.edited = page.sequence
     markPending()
   }
+  if (EDITS.has(type) || type === "slide") sent(type, page.sequence, content)
   page.wire?.send({ type, seq: page.sequence, ...content })
 }
 
@@ -29,7 +31,9 @@ function mayPreview() {
 
 const parts = {
   status(status) {
+    const first = page.status === null
     page.status = status
+    heard(status.seq)
     byId("place").textContent = status.place ?? "not saved yet"
     byId("changed").hidden = !status.changed
     command("undo", status.undo)
@@ -43,7 +47,11 @@ const parts = {
       if (address.href !== location.href) history.replaceState(history.state, "", address)
     }
     markPending()
+    const kept = keptFor(status.place, status.notice?.about === "save" && !status.notice.fault)
+    if (kept && !status.changed) send("restore", kept)
+    if (first) for (const { type, content } of page.unheard) send(type, content)
   },
+  kept(kept) { keep(page.status.place, kept) },
   rail(rail) { drawRail(rail, send) },
   about({ title, note, cautions, beam }) {
     byId("beam").textContent = beam
@@ -110,7 +118,7 @@ function command(id, step) {
 }
 
 function drawNotice(notice) {
-  const shown = notice && (notice.about === "open" || notice.about === "save")
+  const shown = notice && ["open", "save", "kept", "view"].includes(notice.about)
   byId("notice").hidden = !shown
   byId("notice").textContent = shown ? notice.sentence : ""
   byId("notice").dataset.fault = String(Boolean(notice?.fault))
@@ -136,7 +144,6 @@ function start() {
   byId("redo").addEventListener("click", () => send("redo"))
   byId("cancel").addEventListener("click", () => send("cancel"))
   byId("again").addEventListener("click", () => send("again"))
-  byId("reload").addEventListener("click", () => location.reload())
   byId("theme").addEventListener("click", () => {
     const theme = document.documentElement.dataset.theme === "dark" ? "light" : "dark"
     localStorage.setItem("colonnade-theme", theme)
@@ -151,7 +158,6 @@ function start() {
   startPeaks(send)
   startFiles(send, () => page.status)
   document.addEventListener("keydown", shortcuts)
-  addEventListener("beforeunload", (event) => { if (page.status?.changed) event.preventDefault() })
 }
 
 function shortcuts(event) {
@@ -175,6 +181,11 @@ document.addEventListener("colonnade:wire", ({ detail: wire }) => {
     for (const name of Object.keys(parts)) if (name in news) parts[name](news[name])
   })
   startBench({ send, mayPreview, chosen: periodsFromRail })
+  page.unheard = takeUnheard()
+  window.Bokeh.documents[0].on_event("connection_lost", () => {
+    byId("lost").hidden = false
+    comeBack()
+  })
   send("hello", { theme: document.documentElement.dataset.theme })
 })
 

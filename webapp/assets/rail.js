@@ -19,6 +19,9 @@ export function drawRail(rail, sender) {
   place.firstElementChild ?? place.append(periodsPart(rail.periods))
   updatePeriods(rail.periods)
   for (const [index, part] of rail.parts.entries()) drawPart(place, part, index + 1)
+  if (document.documentElement.dataset.view === "only") {
+    for (const control of place.querySelectorAll(".part :is(input, select, textarea, button)")) control.disabled = true
+  }
   if (lost && document.activeElement?.dataset?.key !== lost) {
     place.querySelector(`[data-key="${CSS.escape(lost)}"]`)?.focus()
   }
