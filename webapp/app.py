@@ -5,6 +5,7 @@ from __future__ import annotations
 import asyncio
 import logging
 from collections.abc import Callable
+from dataclasses import asdict
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -68,7 +69,7 @@ class Session:
         self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later)
         self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
-            lambda _, stop: bench.folder.entries(), self._later(self._show_files), self._later(self._fail_files))
+            lambda _, stop: bench.folder.offered(), self._later(self._show_files), self._later(self._fail_files))
 
     def close(self) -> None:
         """The visitor has gone."""
@@ -171,8 +172,11 @@ class Session:
                 bench.undo()
             case say.Redo():
                 bench.redo()
-            case say.Open(name=name):
-                bench.open(name)
+            case say.Open(name=name, demo=demo):
+                if demo:
+                    bench.begin_with(name)
+                else:
+                    bench.open(name)
         self._tell_shown()
         self._follow(reset=bench.place != place)
 
@@ -338,8 +342,7 @@ class Session:
         self.wire.tell(verdict={"state": "fault", "sentence": in_words(error), "present": "", "legend": []})
 
     def _show_files(self, _: None, entries: tuple[Entry, ...]) -> None:
-        self.wire.tell(files=[{"name": e.name, "title": e.title, "note": e.note, "problem": e.problem}
-                              for e in entries])
+        self.wire.tell(files=[asdict(entry) for entry in entries])
 
     def _fail_files(self, _: None, error: Exception) -> None:
         self.wire.tell(files=[], objection=in_words(error))

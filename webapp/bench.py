@@ -27,7 +27,7 @@ from transport import (
 from webapp import edits
 from webapp.edits import Data, Reorder
 from webapp.fields import applied, name_of, number, record_of, sentence_beside
-from webapp.files import Folder, with_suffix
+from webapp.files import DEMOS, Folder, with_suffix
 
 MOST_STEPS = 300
 """Steps that undo goes back at most."""
@@ -222,14 +222,26 @@ class Bench:
 
     # Files.
 
-    def open(self, name: str) -> None:
-        """Open a file of the folder; undo leads back to what was on screen."""
+    def begin_with(self, name: str) -> None:
+        """Begin a scenario of one's own with a demo; undo leads back."""
+        if found := self._read(Folder(DEMOS), name):
+            self._enter(State(found[1].document, {}, None, f"beginning with {name}"), found[1])
+
+    def _read(self, folder: Folder, name: str) -> tuple[str, Scenario] | None:
+        """Text and scenario of a file; None, and a notice, where it cannot be opened."""
         try:
-            text = self.folder.text(name)
-            scenario = parse_scenario(text)
+            text = folder.text(name)
+            return text, parse_scenario(text)
         except ScenarioError as error:
             self.notice = Notice("open", f"{name} cannot be opened: {error}")
+            return None
+
+    def open(self, name: str) -> None:
+        """Open a file of the folder; undo leads back to what was on screen."""
+        found = self._read(self.folder, name)
+        if found is None:
             return
+        text, scenario = found
         self._texts[name], self._saved[name] = text, scenario.document
         self._enter(State(scenario.document, {}, name, f"opening of {name}"), scenario)
 
@@ -293,6 +305,9 @@ class Bench:
                 break
             refused = refused or self.notice
         self.notice = refused if wanted else None
+        if not names:
+            self.notice = Notice("open", "The folder holds no scenario yet: this is a new one, which Save as keeps. "
+                                 "Open offers demos to begin with.", is_fault=False)
         self._past.clear()
 
     # How an edit is taken.

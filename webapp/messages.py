@@ -156,9 +156,10 @@ class Browse(Message, frozen=True):
 
 
 class Open(Message, frozen=True):
-    """Open a file of the folder."""
+    """Open a file of the folder, or a demo."""
 
     name: str
+    demo: bool = False
 
 
 class Restore(Message, frozen=True):

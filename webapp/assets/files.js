@@ -38,15 +38,19 @@ function askForName(status) {
 }
 
 export function drawFiles(files, status) {
-  const entries = files.map(({ name, title, note, problem }) => {
-    const opening = () => { byId("open-dialog").close(); send("open", { name }) }
+  const card = ({ name, title, note, problem, demo }) => {
+    const opening = () => { byId("open-dialog").close(); send("open", { name, demo }) }
     return element("li", {}, element("button", { type: "button", class: "file", disabled: Boolean(problem),
-      "aria-current": name === status?.place ? "true" : null, onclick: opening },
+      "aria-current": !demo && name === status?.place ? "true" : null, onclick: opening },
     element("span", { class: "file-title" }, title), element("span", { class: "file-name" }, name),
     element("span", { class: problem ? "file-problem" : "file-note" }, problem ?? note)))
-  })
+  }
+  const own = files.filter(({ demo }) => !demo)
+  const demos = files.filter(({ demo }) => demo)
   const empty = element("li", { class: "quiet" }, "The folder holds no scenario yet; Save as makes one.")
-  byId("files").replaceChildren(...(entries.length ? entries : [empty]))
+  const heading = element("li", { class: "files-title" }, "Demos to begin with")
+  byId("files").replaceChildren(...(own.length ? own.map(card) : [empty]),
+    ...(demos.length ? [heading, ...demos.map(card)] : []))
 }
 
 export function drawObjections({ name, sentences }) {

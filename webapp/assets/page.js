@@ -138,7 +138,8 @@ function setTheme(theme) {
 
 function start() {
   for (const id of ["undo", "redo", "theme"]) byId(id).append(icon(id))
-  document.querySelector("#open-dialog .close").append(icon("close"))
+  for (const button of document.querySelectorAll("dialog .close")) button.append(icon("close"))
+  byId("help").addEventListener("click", () => byId("help-dialog").showModal())
   setTheme(document.documentElement.dataset.theme)
   byId("undo").addEventListener("click", () => send("undo"))
   byId("redo").addEventListener("click", () => send("redo"))
@@ -161,6 +162,8 @@ function start() {
 }
 
 function shortcuts(event) {
+  const writes = event.target.matches?.("input:not([type=radio], [type=checkbox], [type=range]), textarea, select")
+  if (event.key === "?" && !writes && !document.querySelector("dialog[open]")) byId("help-dialog").showModal()
   if (!(event.ctrlKey || event.metaKey) || event.altKey) return
   const key = event.key.toLowerCase()
   if (key === "s") {
