@@ -19,6 +19,7 @@ from transport.document import GrowthRecord
 from transport.fewest import Asked
 from webapp import messages as say
 from webapp.bench import Bench
+from webapp.compare import Compare
 from webapp.editor import Rail
 from webapp.figures.board import Board
 from webapp.files import Entry, Folder
@@ -68,6 +69,7 @@ class Session:
         self._ranges = Ranges(self._tell_range, self._draw_band, self._later)
         self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later)
         self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later)
+        self._compare = Compare(self.wire.tell, self.board.passes, self._later)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
             lambda _, stop: bench.folder.offered(), self._later(self._show_files), self._later(self._fail_files))
 
@@ -78,6 +80,7 @@ class Session:
         self._ranges.forget()
         self._remedies.forget()
         self._peaks.close()
+        self._compare.close()
         if self._page is not None:
             self._page.cancel()
 
@@ -118,6 +121,12 @@ class Session:
                 self._peaks.choose(place)
             case say.Density(shown=shown):
                 self._peaks.show_density(shown)
+            case say.Lay(name=name, demo=demo):
+                if laid := self._bench.laid(name, demo):
+                    self._compare.lay(*laid)
+                self.wire.tell(status=self._status())
+            case say.Unlay(place=place):
+                self._compare.take(place)
             case say.Fit(figures=figures):
                 self._peaks.look(figures)
             case say.StopFit():
@@ -251,6 +260,7 @@ class Session:
     def _paint(self, theme: str) -> None:
         self._palette = PALETTES[theme]
         self.board.paint(self._palette)
+        self._compare.paint(self._palette)
 
     # The work behind the figures.
 
@@ -292,6 +302,7 @@ class Session:
     def _show_page(self, wanted: Wanted, found: Pictures) -> None:
         self.wire.tell(texts=self.board.show_page(wanted, found))
         self._peaks.follow(wanted.scenario, wanted.span, wanted.view)
+        self._compare.follow(wanted.scenario, wanted.view)
 
     def _fail_pictures(self, wanted: Wanted, error: Exception) -> None:
         self.board.clear()

@@ -269,6 +269,13 @@ class Bench:
             sentence += f" {self.place} was changed elsewhere in the meantime."
         self.notice = Notice("kept", sentence, is_fault=False)
 
+    def laid(self, name: str | None, demo: bool = False) -> tuple[str, Scenario] | None:
+        """A scenario to lay over the bench, with a name for it: the present one, or a file's; None, and a notice."""
+        if name is None:
+            return f"{self.scenario.title}, {self.scenario.stack.periods:,} periods", self.scenario
+        found = self._read(Folder(DEMOS) if demo else self.folder, name)
+        return found and (f"{found[1].title}, {found[1].stack.periods:,} periods", found[1])
+
     def save(self, name: str, agreed: bool) -> tuple[str, ...]:
         """Save under `name`; unless `agreed`, first return what would be lost, as sentences, and leave the file."""
         name = with_suffix(name)

@@ -143,6 +143,19 @@ class TakeFit(Message, frozen=True):
     """Take the fitted figures into the stack."""
 
 
+class Lay(Message, frozen=True):
+    """Lay a scenario over the bench: a file of the folder, a demo, or the present one as it is (no name)."""
+
+    name: str | None = None
+    demo: bool = False
+
+
+class Unlay(Message, frozen=True):
+    """Take one of those laid over the bench away."""
+
+    place: int
+
+
 class Undo(Message, frozen=True):
     """One step back."""
 
@@ -187,12 +200,12 @@ class Again(Message, frozen=True):
 
 AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
               | Redo | DropEnds | Propose | StopProposing | Adopt | Trace | Density | Measure
-              | Fit | StopFit | TakeFit | Browse | Open | Restore | Save | Cancel | Again)
+              | Fit | StopFit | TakeFit | Lay | Unlay | Browse | Open | Restore | Save | Cancel | Again)
 
 
 def changes_something(message: AnyMessage) -> bool:
     """Whether a message would change or save more than the number of periods, or start long work."""
-    looks = (Hello, Theme, Scale, Slide, Settle, Browse, Open, Undo, Redo, Trace, Density, Cancel, Again)
+    looks = (Hello, Theme, Scale, Slide, Settle, Browse, Open, Undo, Redo, Trace, Density, Lay, Unlay, Cancel, Again)
     return not isinstance(message, looks) and not (isinstance(message, Set) and message.path == "stack.periods")
 
 

@@ -24,9 +24,8 @@ export const heldVersion = () => model("rows").tags[0]
 
 // A number of periods: from the slider it is drawn at once out of the rows held here, and the exact curve follows.
 export function showPeriods(periods, { fromServer }) {
-  const sliding = document.activeElement?.id === "period-slider"
-  // While the slider has the focus its position is ahead of the session's.
-  if (fromServer && sliding && Number(byId("period-slider").value) !== periods) return
+  // A slider that moves is ahead of the session.
+  if (fromServer && !app.knowsSlider()) return
   wanted = periods
   byId("periods-shown").textContent = periods === 1 ? "1 period" : `${periods.toLocaleString("en")} periods`
   byId("pass-verb").textContent = periods === 1 ? "passes" : "pass"

@@ -4,14 +4,13 @@ import { byId, element } from "./dom.js"
 
 let send = () => {}
 let asked = null
+let chosen = null
 
 export function startFiles(sender, status) {
   send = sender
   byId("open").addEventListener("click", () => {
-    byId("files").replaceChildren(element("li", { class: "quiet" }, "Reading the folder"))
+    browse("Open a scenario", ({ name, demo }) => send("open", { name, demo }))
     byId("open-warning").hidden = !status()?.changed
-    byId("open-dialog").showModal()
-    send("browse")
   })
   byId("save").addEventListener("click", () => askToSave(send, status()))
   byId("save-as").addEventListener("click", () => askForName(status()))
@@ -24,6 +23,16 @@ export function startFiles(sender, status) {
   byId("objections-dialog").addEventListener("close", () => {
     if (byId("objections-dialog").returnValue === "save") send("save", { name: asked, agreed: true })
   })
+}
+
+// Let the user choose a scenario; `then` is told which.
+export function browse(title, then) {
+  chosen = then
+  byId("open-title").textContent = title
+  byId("open-warning").hidden = true
+  byId("files").replaceChildren(element("li", { class: "quiet" }, "Reading the folder"))
+  byId("open-dialog").showModal()
+  send("browse")
 }
 
 export function askToSave(sender, status) {
@@ -39,7 +48,7 @@ function askForName(status) {
 
 export function drawFiles(files, status) {
   const card = ({ name, title, note, problem, demo }) => {
-    const opening = () => { byId("open-dialog").close(); send("open", { name, demo }) }
+    const opening = () => { byId("open-dialog").close(); chosen({ name, demo }) }
     return element("li", {}, element("button", { type: "button", class: "file", disabled: Boolean(problem),
       "aria-current": !demo && name === status?.place ? "true" : null, onclick: opening },
     element("span", { class: "file-title" }, title), element("span", { class: "file-name" }, name),

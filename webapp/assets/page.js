@@ -5,11 +5,12 @@ import { drawRail, periodsFromRail } from "./rail.js"
 import { heldVersion, showPeriods, startBench } from "./bench.js"
 import { drawRemedies, startRemedies } from "./remedies.js"
 import { drawChosen, drawFit, drawLedger, drawMeasured, drawMeasuredFault, drawResonance, startPeaks } from "./peaks.js"
+import { drawCompare, startCompare } from "./compare.js"
 import { startTabs } from "./tabs.js"
 import { comeBack, heard, keep, keptFor, sent, takeUnheard } from "./keep.js"
 import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 
-const page = { status: null, pictured: null, sequence: 0, edited: 0, wire: null, unheard: [] }
+const page = { status: null, pictured: null, sequence: 0, edited: 0, slid: 0, wire: null, unheard: [] }
 
 const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
   "dropends", "adopt", "measure", "takefit", "restore"])
@@ -20,9 +21,13 @@ function send(type, content = {}) {
     page.edited = page.sequence
     markPending()
   }
+  if (type === "slide") page.slid = page.sequence
   if (EDITS.has(type) || type === "slide") sent(type, page.sequence, content)
   page.wire?.send({ type, seq: page.sequence, ...content })
 }
+
+// Whether the session knows where the slider is by now.
+const knowsSlider = () => page.status !== null && page.slid <= page.status.seq
 
 // The rows the browser holds may be shown only while no edit of the stack is on its way.
 function mayPreview() {
@@ -52,7 +57,7 @@ const parts = {
     if (first) for (const { type, content } of page.unheard) send(type, content)
   },
   kept(kept) { keep(page.status.place, kept) },
-  rail(rail) { drawRail(rail, send) },
+  rail(rail) { drawRail(rail, send, knowsSlider()) },
   about({ title, note, cautions, beam }) {
     byId("beam").textContent = beam
     byId("title").textContent = title
@@ -106,6 +111,7 @@ const parts = {
   resonance(resonance) { drawResonance(resonance) },
   measured(measured) { drawMeasured(measured) },
   fit(fit) { drawFit(fit) },
+  compare(compare) { drawCompare(compare) },
   files(files) { drawFiles(files, page.status) },
   objections(objections) { drawObjections(objections) },
 }
@@ -157,6 +163,7 @@ function start() {
   startTabs()
   startRemedies(send)
   startPeaks(send)
+  startCompare(send)
   startFiles(send, () => page.status)
   document.addEventListener("keydown", shortcuts)
 }
@@ -183,7 +190,7 @@ document.addEventListener("colonnade:wire", ({ detail: wire }) => {
   wire.listen((news) => {
     for (const name of Object.keys(parts)) if (name in news) parts[name](news[name])
   })
-  startBench({ send, mayPreview, chosen: periodsFromRail })
+  startBench({ send, mayPreview, knowsSlider, chosen: periodsFromRail })
   page.unheard = takeUnheard()
   window.Bokeh.documents[0].on_event("connection_lost", () => {
     byId("lost").hidden = false

@@ -10,14 +10,14 @@ let send = () => {}
 let drawn = new Map()
 let focusNext = null
 
-export function drawRail(rail, sender) {
+export function drawRail(rail, sender, knowsSlider) {
   send = sender
   const place = byId("rail")
   const focused = document.activeElement?.dataset?.key ?? null
   const lost = focusNext ?? focused
   focusNext = null
   place.firstElementChild ?? place.append(periodsPart(rail.periods))
-  updatePeriods(rail.periods)
+  updatePeriods(rail.periods, knowsSlider)
   for (const [index, part] of rail.parts.entries()) drawPart(place, part, index + 1)
   if (document.documentElement.dataset.view === "only") {
     for (const control of place.querySelectorAll(".part :is(input, select, textarea, button)")) control.disabled = true
@@ -192,11 +192,11 @@ function periodsPart(view) {
     element("span", { class: "ends", "aria-hidden": "true" }, element("span", {}, "1"), element("span", { id: "most" })))
 }
 
-function updatePeriods(view) {
+function updatePeriods(view, knowsSlider) {
   const slider = byId("period-slider")
   slider.max = view.most
   byId("most").textContent = view.most
-  if (document.activeElement !== slider || view.message) slider.value = view.count
+  if (knowsSlider) slider.value = view.count
   updateField(byId("rail"), { ...view, kind: "number" })
 }
 

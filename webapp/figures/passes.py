@@ -25,6 +25,8 @@ from webapp.theme import Palette
 Scale = Literal["log", "linear"]
 
 _CURVE = ("energy", "log10", "drawn")
+_DASHES = ([10, 3], [5, 3], [10, 3, 2, 3])
+"""Lines of other stacks laid over this one, told apart without colour too."""
 _LOWEST_DECADE = -330.0
 _LABEL = "transmission T (share passed)"
 _RIGHT = {"log": 0.35, "linear": 1.06}
@@ -57,6 +59,8 @@ class PassesFigure:
         self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
         self._before = ColumnDataSource({"energy": [], "drawn": []}, name="before")
+        self._laid = [ColumnDataSource({"energy": [], "drawn": []}, name=f"laid-{n}") for n in range(len(_DASHES))]
+        self._others: tuple[Passage, ...] = ()
         self._brackets = ColumnDataSource({"xs": [], "ys": []})
         self._hatched = ColumnDataSource({"left": [], "right": [], "bottom": [], "top": []})
         self._names = ColumnDataSource({"x": [], "y": [], "text": [], "align": [], "offset": []})
@@ -82,6 +86,8 @@ class PassesFigure:
         self._hatching = draw.quad("left", "right", "top", "bottom", source=self._hatched, hatch_pattern="/",
                                    hatch_scale=9, hatch_weight=1, fill_alpha=0.35, line_width=1.5)
         self._between = draw.harea(x1="lower", x2="upper", y="energy", source=self._envelope, fill_alpha=0.5)
+        self._over = [draw.line("drawn", "energy", source=source, line_width=1.8, line_dash=dash)
+                      for source, dash in zip(self._laid, _DASHES, strict=True)]
         self._past = draw.line("drawn", "energy", source=self._before, line_width=1.5, line_dash=[2, 3])
         self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
         self._measured = draw.line("drawn", "energy", source=self._beam, line_width=2, line_dash=[6, 3])
@@ -134,6 +140,14 @@ class PassesFigure:
             "energy": passage.energy * MEV, "drawn": passage.log10 if log else passage.transmission}
         _replace(self._before, data)
 
+    def lay(self, others: Sequence[Passage]) -> None:
+        """Lay the curves of other stacks over this one's, in place of those that were."""
+        self._others = tuple(others)
+        for place, source in enumerate(self._laid):
+            other = self._others[place] if place < len(self._others) else None
+            drawn = np.zeros(0) if other is None else other.log10 if self.scale == "log" else other.transmission
+            _replace(source, {"energy": np.zeros(0) if other is None else other.energy * MEV, "drawn": drawn})
+
     def clear(self) -> None:
         """Take the curve away, and the rows the browser holds."""
         self._passage = None
@@ -166,6 +180,7 @@ class PassesFigure:
         self._rescale()
         self._show_curve()
         self._show_before()
+        self.lay(self._others)
 
     @property
     def floor(self) -> float:
@@ -211,6 +226,8 @@ class PassesFigure:
             renderer.glyph.line_color = palette.warm
         self._measured.glyph.line_color = palette.warm_deep
         self._past.glyph.line_color = palette.muted
+        for renderer, colour in zip(self._over, palette.windows[1:], strict=False):
+            renderer.glyph.line_color = colour
         self._between.glyph.fill_color = palette.warm
         self._bracket.glyph.line_color = palette.target
         self._hatching.glyph.update(line_color=palette.target, hatch_color=palette.target, hatch_alpha=0.4,
