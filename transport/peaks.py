@@ -55,8 +55,8 @@ class PeakFit:
     """A least-squares fit of some figures to the measured peaks.
 
     `values` and `errors` (standard errors; NaN where the data leave none): nm for thicknesses, eV for energies, as
-    changes from the scenario. `warnings` are sentences. `scenario` has the fitted figures in it, a barrier of a material
-    whose edge was fitted as an explicit layer; None where the file has no place for them (groups, an end treatment).
+    changes from the scenario. `warnings` are sentences. `scenario` has the fitted figures in it, a barrier whose edge
+    was fitted as an explicit layer; None where the file has no place for them (groups, an end treatment).
     """
 
     figures: tuple[str, ...]

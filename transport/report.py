@@ -89,7 +89,7 @@ def verdict_record(verdict: Verdict) -> Record:
         "sentence": verdict.sentence,
         "ripple_floor": verdict.ripple_floor,
         "ripple_floor_meV": None if energy is None else energy * 1e3,
-        "mean_limit": verdict.mean_limit,
+        "mean_limit": verdict.mean_limit, "loses_beyond_periods": verdict.loses_beyond,
         "per_period": [
             {"periods": c.periods, "meets": c.meets, "margin_dB": c.margin_dB, "limiting_window": c.limiting_window}
             for c in verdict.per_period

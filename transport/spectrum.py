@@ -67,6 +67,13 @@ class Spectrum:
         return self._shaped(self._chain.reflection(self._powers, self._denominator))
 
     @cached_property
+    def absorption(self) -> Floats:
+        """A = 1 - T - R: what dephasing takes from the coherent part; 0 without dephasing."""
+        if not self.stack.dephasing:
+            return self._shaped(np.zeros(self.energy.shape))
+        return self._shaped(np.maximum(1.0 - self.transmission - self.reflection, 0.0))
+
+    @cached_property
     def log10_transmission(self) -> Floats:
         """log10 T, finite however small T is; -inf where a lead is closed."""
         return self._shaped(self._chain.log10_transmission(self._denominator))

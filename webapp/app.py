@@ -14,7 +14,7 @@ import panel as pn
 from bokeh.document import Document
 from panel.io.document import hold
 
-from transport import Verdict
+from transport import Scenario, Verdict
 from transport.document import GrowthRecord
 from transport.fewest import Asked
 from webapp import messages as say
@@ -235,7 +235,7 @@ class Session:
         scenario = self._bench.scenario
         self.wire.tell(status=self._status(), kept=self._bench.kept(), rail=Rail(self._bench).view(), about={
             "title": scenario.title, "note": scenario.note, "cautions": scenario.warnings,
-            "beam": f"dashed: seen at {scenario.resolution * 1e3:g} meV" if scenario.resolution else ""})
+            "beam": _extra_curves(scenario)})
 
     def _tell_verdict(self) -> None:
         view = verdict_view(self._verdict, self._bench.scenario.stack.periods, self._palette)
@@ -357,6 +357,13 @@ class Session:
 
     def _fail_files(self, _: None, error: Exception) -> None:
         self.wire.tell(files=[], objection=in_words(error))
+
+
+def _extra_curves(scenario: Scenario) -> str:
+    """What a caption says of the curves beside T."""
+    beam = [f"dashed: seen at {scenario.resolution * 1e3:g} meV"] if scenario.resolution else []
+    lost = ["dotted: absorbed (T + R + A = 1)"] if scenario.stack.dephasing else []
+    return ", ".join(beam + lost)
 
 
 def session(folder: Folder, view_only: bool = False) -> None:

@@ -108,7 +108,8 @@ def _crowded(bands: Bands, span: Span) -> Floats:
 class Passage:
     """What the stack passes over a view: T and log10 T, and what of it a beam would measure.
 
-    `lower` and `upper`: the envelope where there are too many peaks to resolve, with `note` saying so, else None.
+    `absorbed`: what dephasing takes. `lower` and `upper`: the envelope where there are too many peaks to resolve, with
+    `note` saying so. None where there is no such thing.
     """
 
     periods: int
@@ -116,6 +117,7 @@ class Passage:
     transmission: Floats
     log10: Floats
     measured: Floats | None = None
+    absorbed: Floats | None = None
     lower: Floats | None = None
     upper: Floats | None = None
     note: str = ""
@@ -131,6 +133,7 @@ def passage(stack: Stack, view: Span, resolution: float) -> Passage:
     envelope = found.envelope
     return Passage(
         stack.periods, energy, found.transmission[kept], log10[kept], measured,
+        found.absorption[kept] if stack.dephasing else None,
         envelope.lower[kept] if envelope else None, envelope.upper[kept] if envelope else None, found.note,
     )
 

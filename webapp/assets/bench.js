@@ -79,7 +79,9 @@ function passed(energy) {
   if (log10 === null) return ""
   if (log10 <= -329) return "T = 0"
   const size = log10 > -3 ? (10 ** log10).toPrecision(3) : `10^${log10.toFixed(2)}`
-  return `T = ${size} (${(10 * log10).toFixed(1).replace("-", "−")} dB)`
+  const lost = interpolated(model("absorbed").data.energy, model("absorbed").data.drawn, energy)
+  const share = lost === null ? "" : `, A = ${(model("passes-range").tags[0] === "log" ? 10 ** lost : lost).toPrecision(3)}`
+  return `T = ${size} (${(10 * log10).toFixed(1).replace("-", "−")} dB)${share}`
 }
 
 function infinite(energy) {

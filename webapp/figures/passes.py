@@ -55,6 +55,7 @@ class PassesFigure:
         # `drawn` is T or its logarithm, as the axis has it; `log10` is for the readout.
         self._curve = ColumnDataSource({name: [] for name in _CURVE}, name="curve")
         self._beam = ColumnDataSource({"energy": [], "drawn": []})
+        self._absorbed = ColumnDataSource({"energy": [], "drawn": []}, name="absorbed")
         self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
         self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
@@ -90,6 +91,7 @@ class PassesFigure:
                       for source, dash in zip(self._laid, _DASHES, strict=True)]
         self._past = draw.line("drawn", "energy", source=self._before, line_width=1.5, line_dash=[2, 3])
         self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
+        self._loss = draw.line("drawn", "energy", source=self._absorbed, line_width=1.5, line_dash=[2, 2])
         self._measured = draw.line("drawn", "energy", source=self._beam, line_width=2, line_dash=[6, 3])
         self._held = draw.line("drawn", "energy", source=self._preview, line_width=2, name="preview-line",
                                visible=False)
@@ -114,8 +116,10 @@ class PassesFigure:
         drawn = passage.log10 if log else passage.transmission
         self._curve.data = {"energy": passage.energy * MEV, "log10": passage.log10.astype(np.float32),
                             "drawn": drawn.astype(np.float32)}
-        beam, lower, upper = (np.zeros(0) if side is None else _decades(side) if log else side
-                              for side in (passage.measured, passage.lower, passage.upper))
+        beam, absorbed, lower, upper = (
+            np.zeros(0) if side is None else _decades(side) if log else side
+            for side in (passage.measured, passage.absorbed, passage.lower, passage.upper))
+        _replace(self._absorbed, {"energy": passage.energy[: absorbed.size] * MEV, "drawn": absorbed})
         _replace(self._beam, {"energy": passage.energy[: beam.size] * MEV, "drawn": beam})
         _replace(self._envelope, {"energy": passage.energy[: lower.size] * MEV, "lower": lower, "upper": upper})
 
@@ -152,7 +156,7 @@ class PassesFigure:
         """Take the curve away, and the rows the browser holds."""
         self._passage = None
         self._line.tags = [-1]
-        for source in (self._curve, self._beam, self._envelope):
+        for source in (self._curve, self._beam, self._absorbed, self._envelope):
             source.data = {name: [] for name in source.data}
         self.hold(None, -1)
 
@@ -225,6 +229,7 @@ class PassesFigure:
         for renderer in (self._line, self._held):
             renderer.glyph.line_color = palette.warm
         self._measured.glyph.line_color = palette.warm_deep
+        self._loss.glyph.line_color = palette.missed
         self._past.glyph.line_color = palette.muted
         for renderer, colour in zip(self._over, palette.windows[1:], strict=False):
             renderer.glyph.line_color = colour
