@@ -155,14 +155,20 @@ class Session:
                 bench.revert(path)
             case say.Layer(path=path, index=index):
                 bench.add_layer(path, index)
-            case say.Window(kind=kind):
-                bench.add_window(kind)
+            case say.Window(kind=which):
+                bench.add_window(which)
             case say.Duplicate(path=path, index=index):
                 bench.duplicate(path, index)
             case say.Delete(path=path, index=index):
                 bench.delete(path, index)
             case say.Move(path=path, index=index, by=by):
                 bench.move(path, index, by)
+            case say.Mirror(path=path):
+                bench.mirror(path)
+            case say.Double(path=path):
+                bench.double(path)
+            case say.Thicken(kind=kind, monolayers=monolayers):
+                bench.thicken(kind, monolayers)
             case say.DropEnds():
                 bench.drop_ends()
             case say.Adopt(index=index):

@@ -24,6 +24,7 @@ from transport import (
     read_peaks,
     scenario_from_document,
 )
+from transport.grouping import Kind, thickened
 from webapp import edits
 from webapp.edits import Data, Reorder
 from webapp.fields import applied, name_of, number, record_of, sentence_beside
@@ -183,9 +184,26 @@ class Bench:
             self._rearrange(path, lambda data: edits.deleted(data, path, index), "deletion")
 
     def move(self, path: str, index: int, by: int) -> None:
-        """Move an entry of the list at `path` up (by = -1) or down (by = 1)."""
+        """Move an entry of the list at `path` by so many places, up (below 0) or down."""
         if index + by >= 0 and self._holds(f"{path}[{index}]") and self._holds(f"{path}[{index + by}]"):
-            self._rearrange(path, lambda data: edits.exchanged(data, path, index, index + by), "move")
+            self._rearrange(path, lambda data: edits.moved(data, path, index, index + by), "move")
+
+    def mirror(self, path: str) -> None:
+        """Turn a list of layers round."""
+        self._rearrange(path, lambda data: edits.mirrored(data, path), "turning round")
+
+    def double(self, path: str) -> None:
+        """Write a list of layers twice."""
+        self._rearrange(path, lambda data: edits.doubled(data, path), "writing twice")
+
+    def thicken(self, kind: Kind, monolayers: float) -> None:
+        """Make all barriers, or all wells, thicker or thinner by some monolayers."""
+        try:
+            scenario = thickened(self.scenario, kind, monolayers)
+        except ScenarioError as error:
+            self.notice = Notice("layers", str(error))
+            return
+        self._enter(replace(self._state, document=scenario.document, step=f"change of all {kind}"), scenario)
 
     def adopt(self, scenario: Scenario, step: str) -> None:
         """Take on a scenario that was proposed; undo leads back, to the drafts as well."""

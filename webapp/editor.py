@@ -39,6 +39,10 @@ _PART_HELP = {
 }
 
 
+_LIST_ACTS = (("Turn round", "mirror", "the layers in reverse order"),
+              ("Write twice", "double", "the same layers once more behind themselves"))
+
+
 class Rail:
     """Describes the rail of one bench; every part is a list of fields, or of rows of fields."""
 
@@ -52,7 +56,7 @@ class Rail:
         return {
             "periods": self._periods(),
             "parts": [self._conditions(), self._lead("left"), *(self._part(name) for name in _PARTS),
-                      self._lead("right"), self._ends(), self._target(), self._growth(), self._about()],
+                      self._layers(), self._lead("right"), self._ends(), self._target(), self._growth(), self._about()],
         }
 
     # One field.
@@ -102,7 +106,19 @@ class Rail:
     def _part(self, name: str) -> View:
         path, layers = f"stack.{name}", getattr(self._document.stack, name)
         return {"id": path, "title": _PARTS[name], "help": _PART_HELP[name], **self._list(path, layers, name != "cell"),
-                "adds": [{"label": "Add layer", "name": "layer"}]}
+                "adds": [{"label": "Add layer", "name": "layer"}], "acts": [
+                    {"label": label, "type": act, "content": {"path": path}, "help": text}
+                    for label, act, text in _LIST_ACTS if len(layers) > (act == "mirror")]}
+
+    def _layers(self) -> View:
+        notice = self._bench.notice
+        return {"id": "layers", "title": "All barriers, all wells", "fields": [],
+                "help": "Of entry, cell and exit at once; barriers are what lies above the middle of the cell.",
+                "message": notice.sentence if notice and notice.about == "layers" else "", "acts": [
+                    {"label": f"{kind} {sign}1 ML", "type": "thicken", "content": {"kind": kind, "monolayers": step},
+                     "help": f"every one of the {kind} one monolayer {way}"}
+                    for kind in ("barriers", "wells")
+                    for sign, step, way in (("\N{MINUS SIGN}", -1, "thinner"), ("+", 1, "thicker"))]}
 
     def _list(self, path: str, layers: Sequence[LayerRecord], groups: bool) -> View:
         notice = self._bench.notice

@@ -81,11 +81,29 @@ def deleted(data: Data, path: str, index: int) -> tuple[Data, Reorder]:
     return new, lambda old: None if old == index else old - 1 if old > index else old
 
 
-def exchanged(data: Data, path: str, index: int, to: int) -> tuple[Data, Reorder]:
-    """The list at `path` with its entries `index` and `to` in each other's place."""
-    entries = list(value_at(data, path))
-    entries[index], entries[to] = entries[to], entries[index]
-    return with_value(data, path, entries), lambda old: {index: to, to: index}.get(old, old)
+def moved(data: Data, path: str, index: int, to: int) -> tuple[Data, Reorder]:
+    """The list at `path` with its entry `index` at position `to`."""
+    return _permuted(data, path, _moved_order(len(value_at(data, path)), index, to))
+
+
+def _moved_order(size: int, index: int, to: int) -> list[int]:
+    order = [place for place in range(size) if place != index]
+    return [*order[:to], index, *order[to:]]
+
+
+def mirrored(data: Data, path: str) -> tuple[Data, Reorder]:
+    """The list at `path` turned round."""
+    return _permuted(data, path, list(range(len(value_at(data, path) or [])))[::-1])
+
+
+def _permuted(data: Data, path: str, order: list[int]) -> tuple[Data, Reorder]:
+    entries = value_at(data, path) or []
+    return with_value(data, path, [entries[old] for old in order]), lambda old: order.index(old)
+
+
+def doubled(data: Data, path: str) -> tuple[Data, Reorder]:
+    """The list at `path` written twice."""
+    return with_value(data, path, 2 * (value_at(data, path) or [])), lambda old: old
 
 
 def reordered(path: str, list_path: str, reorder: Reorder) -> str | None:

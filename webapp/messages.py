@@ -82,11 +82,30 @@ class Delete(Message, frozen=True):
 
 
 class Move(Message, frozen=True):
-    """An entry moves up or down."""
+    """An entry moves up (below 0) or down by so many places."""
 
     path: str
     index: int
-    by: Literal[-1, 1]
+    by: int
+
+
+class Mirror(Message, frozen=True):
+    """A list of layers is turned round."""
+
+    path: str
+
+
+class Double(Message, frozen=True):
+    """A list of layers is written twice."""
+
+    path: str
+
+
+class Thicken(Message, frozen=True):
+    """All barriers, or all wells, become thicker or thinner."""
+
+    kind: Literal["barriers", "wells"]
+    monolayers: float
 
 
 class DropEnds(Message, frozen=True):
@@ -198,9 +217,10 @@ class Again(Message, frozen=True):
     """Work out the verdict after all."""
 
 
-AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
-              | Redo | DropEnds | Propose | StopProposing | Adopt | Trace | Density | Measure
-              | Fit | StopFit | TakeFit | Lay | Unlay | Browse | Open | Restore | Save | Cancel | Again)
+AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move
+              | Mirror | Double | Thicken | Undo | Redo | DropEnds | Propose | StopProposing | Adopt | Trace
+              | Density | Measure | Fit | StopFit | TakeFit | Lay | Unlay | Browse | Open | Restore | Save
+              | Cancel | Again)
 
 
 def changes_something(message: AnyMessage) -> bool:

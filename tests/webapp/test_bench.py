@@ -212,3 +212,34 @@ def test_of_many_requests_the_latest_wins() -> None:
         aside.submit(asyncio.run, visit()).result(timeout=30)
     assert done == [4]
     assert started[-1] == 4 and 3 not in started
+
+
+def test_a_list_is_turned_round_and_written_twice_with_its_drafts(bench: Bench) -> None:
+    before = bench.document.stack.cell
+    bench.set(BARRIER, "x")
+    bench.mirror("stack.cell")
+    assert bench.document.stack.cell == before[::-1]
+    assert set(bench.drafts) == {BARRIER.replace("[0]", "[1]")}
+    bench.double("stack.cell")
+    assert bench.document.stack.cell == 2 * before[::-1]
+    bench.undo()
+    bench.undo()
+    assert bench.document.stack.cell == before and set(bench.drafts) == {BARRIER}
+
+
+def test_a_layer_is_moved_by_many_places(bench: Bench) -> None:
+    bench.double("stack.cell")
+    first, second = bench.document.stack.cell[:2]
+    bench.move("stack.cell", 0, 3)
+    assert bench.document.stack.cell == (second, first, second, first)
+    bench.move("stack.cell", 3, 1)
+    assert bench.document.stack.cell == (second, first, second, first)
+
+
+def test_all_barriers_change_at_once_and_too_thin_ones_are_refused(bench: Bench) -> None:
+    bench.thicken("barriers", 1)
+    assert bench.document.stack.cell[0].monolayers == 8 and bench.document.stack.exit[0].monolayers == 8
+    assert bench.undo_step == "change of all barriers"
+    before = bench.document
+    bench.thicken("barriers", -20)
+    assert bench.notice is not None and "must stay above 0" in bench.notice.sentence and bench.document == before

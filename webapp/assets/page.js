@@ -13,7 +13,7 @@ import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 const page = { status: null, pictured: null, sequence: 0, edited: 0, slid: 0, wire: null, unheard: [] }
 
 const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
-  "dropends", "adopt", "measure", "takefit", "restore"])
+  "dropends", "adopt", "measure", "takefit", "restore", "mirror", "double", "thicken"])
 
 function send(type, content = {}) {
   page.sequence += 1
