@@ -54,6 +54,8 @@ def spectrum_record(scenario: Scenario, spectrum: Spectrum) -> Record:
     }
     if scenario.resolution:
         record["measured_transmission"] = measured_transmission(spectrum.stack, spectrum.energy, scenario.resolution)
+    if spectrum.narrow is not None:
+        record |= {"from_pole_meV": (spectrum.narrow.energy * 1e3).tolist(), "note": spectrum.note}
     if spectrum.envelope is not None:
         record |= {
             "envelope_lower": np.where(spectrum.envelope.passing, spectrum.envelope.lower, spectrum.transmission),

@@ -19,6 +19,10 @@ def test_straight_lines_between_chosen_energies_stay_within_a_thousandth(stack: 
     where = draw.integers(0, curve.energy.size - 1, 40_000)
     inside = curve.energy[where] + np.diff(curve.energy)[where] * draw.uniform(0, 1, where.size)
     energy = np.concatenate([inside, draw.uniform(0.0, 0.5, 20_000)])
+    if curve.narrow is not None:
+        # There T sampled at doubles is no truth: test_narrow.py has 50 digits.
+        off = abs(energy[:, None] - curve.narrow.energy).min(axis=1)
+        energy = energy[off > 20 * curve.narrow.width.max() + 1e-15]
     error = abs(np.interp(energy, curve.energy, curve.transmission) - spectrum(stack, energy).transmission)
     assert error.max() < 1e-3
 

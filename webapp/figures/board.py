@@ -71,6 +71,7 @@ class Board:
         return {
             "profile": describe_profile(stack, found.profile),
             "passes": describe_passes(found.passage, windows),
+            "curve-note": found.passage.note,
             "lattice": describe_lattice(found.lattice),
             "certificate": found.lattice.bands.certificate.sentence,
         }

@@ -59,6 +59,7 @@ class PassesFigure:
         self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
         self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
+        self._poles = ColumnDataSource({"energy": [], "drawn": []}, name="from-pole")
         self._before = ColumnDataSource({"energy": [], "drawn": []}, name="before")
         self._laid = [ColumnDataSource({"energy": [], "drawn": []}, name=f"laid-{n}") for n in range(len(_DASHES))]
         self._others: tuple[Passage, ...] = ()
@@ -93,6 +94,7 @@ class PassesFigure:
         self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
         self._loss = draw.line("drawn", "energy", source=self._absorbed, line_width=1.5, line_dash=[2, 2])
         self._measured = draw.line("drawn", "energy", source=self._beam, line_width=2, line_dash=[6, 3])
+        self._stars = draw.scatter("drawn", "energy", source=self._poles, marker="star", size=9, line_width=1)
         self._held = draw.line("drawn", "energy", source=self._preview, line_width=2, name="preview-line",
                                visible=False)
         self._line.syncable = self._held.syncable = False
@@ -116,6 +118,8 @@ class PassesFigure:
         drawn = passage.log10 if log else passage.transmission
         self._curve.data = {"energy": passage.energy * MEV, "log10": passage.log10.astype(np.float32),
                             "drawn": drawn.astype(np.float32)}
+        top = 0.0 if log else 1.0
+        _replace(self._poles, {"energy": passage.from_pole * MEV, "drawn": np.full(passage.from_pole.size, top)})
         beam, absorbed, lower, upper = (
             np.zeros(0) if side is None else _decades(side) if log else side
             for side in (passage.measured, passage.absorbed, passage.lower, passage.upper))
@@ -156,7 +160,7 @@ class PassesFigure:
         """Take the curve away, and the rows the browser holds."""
         self._passage = None
         self._line.tags = [-1]
-        for source in (self._curve, self._beam, self._absorbed, self._envelope):
+        for source in (self._curve, self._poles, self._beam, self._absorbed, self._envelope):
             source.data = {name: [] for name in source.data}
         self.hold(None, -1)
 
@@ -229,6 +233,7 @@ class PassesFigure:
         for renderer in (self._line, self._held):
             renderer.glyph.line_color = palette.warm
         self._measured.glyph.line_color = palette.warm_deep
+        self._stars.glyph.update(line_color=palette.warm_deep, fill_color=palette.card)
         self._loss.glyph.line_color = palette.missed
         self._past.glyph.line_color = palette.muted
         for renderer, colour in zip(self._over, palette.windows[1:], strict=False):
