@@ -17,6 +17,7 @@ So a step is of sixth order for a constant mass, and of fourth order with a smal
 from __future__ import annotations
 
 import functools
+import itertools
 import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
@@ -40,6 +41,8 @@ PER_STEP = 3
 
 _ENERGIES = 9
 _FIRST_STEPS = 4
+_ORDER = 6
+_RESOLVED, _ROUNDING = 1e-7, 1e-15  # error of a step that tells how errors are spread; and one that says nothing
 _REACH = 2.0  # an interface's error function is cut at erf(2) = 0.995, and scaled so that it ends there
 
 _INNER = math.sqrt(5) / 10
@@ -116,14 +119,16 @@ class Curve:
         """The curve multiplied by a number."""
         return replace(self, factor=self.factor * factor, shift=self.shift * factor)
 
-    def breaks(self, length: float) -> Floats:
-        """Where steps have to end (nm): corners, and a net about what is narrow."""
-        if self.shape == "samples":
-            return np.linspace(0.0, length, len(self.numbers))
+    def corners(self, length: float) -> Floats:
+        """Where the curve has a corner within (nm)."""
+        return np.linspace(0.0, length, len(self.numbers)) if self.shape == "samples" else np.empty(0)
+
+    def net(self, length: float) -> Floats:
+        """Places (nm) between which nothing narrow can hide."""
         if self.shape not in ("gaussian", "sech2", "fermi"):
-            return np.linspace(0.0, length, 1 + _FIRST_STEPS)
+            return np.linspace(0.0, length, 1 + _FIRST_STEPS) if self.shape != "flat" else np.empty(0)
         widths = 2.0 ** np.arange(-1, 7) * self.numbers[1]
-        return np.concatenate([[0.0, length / 2, length], length / 2 - widths, length / 2 + widths])
+        return np.concatenate([[length / 2], length / 2 - widths, length / 2 + widths])
 
 
 def flat(value: float) -> Curve:
@@ -178,23 +183,35 @@ class Course:
                              for c in (self.band_edge, self.mass, self.nonparabolicity))
         return edge, mass, alpha
 
-    def breaks(self) -> Floats:
-        """Where steps have to end, ascending from 0 to the thickness."""
-        places = [c.breaks(self.thickness) for c in (self.band_edge, self.mass, self.nonparabolicity)]
-        for face, side in ((self.left, 0.0), (self.right, self.thickness)):
-            if face is not None:
-                places.append(abs(side - np.linspace(0, face.length / 2, 1 + _FIRST_STEPS)))
-        inside = np.concatenate(places)
-        inside = np.unique(inside[(inside >= 0) & (inside <= self.thickness)])
-        apart = np.diff(inside, prepend=-self.thickness) > 1e-12 * self.thickness
-        found: Floats = inside[apart]
-        found[-1] = self.thickness
-        return found
+    def corners(self) -> Floats:
+        """Where steps have to end (nm), ascending from 0 to the thickness."""
+        places = [np.array([0.0, self.thickness])]
+        places += [curve.corners(self.thickness) for curve in (self.band_edge, self.mass, self.nonparabolicity)]
+        places += [np.array([abs(side - face.length / 2)]) for face, side in self._faces if face is not None]
+        return self._ascending(places)
+
+    def net(self) -> Floats:
+        """The corners, and places between which nothing narrow can hide."""
+        places = [curve.net(self.thickness) for curve in (self.band_edge, self.mass, self.nonparabolicity)]
+        places += [abs(side - np.linspace(0, face.length / 2, 1 + _FIRST_STEPS))
+                   for face, side in self._faces if face is not None]
+        return self._ascending([self.corners(), *places])
+
+    @property
+    def _faces(self) -> tuple[tuple[Face | None, float], tuple[Face | None, float]]:
+        return (self.left, 0.0), (self.right, self.thickness)
+
+    def _ascending(self, places: list[Floats]) -> Floats:
+        found = np.unique(np.concatenate(places))
+        found = found[(found >= 0) & (found <= self.thickness)]
+        kept: Floats = found[np.diff(found, prepend=-self.thickness) > 1e-12 * self.thickness]
+        kept[-1] = self.thickness
+        return kept
 
     def mean(self) -> tuple[float, float, float]:
         """Means over the layer of band edge, mass and nonparabolicity."""
         nodes, weights = np.polynomial.legendre.leggauss(8)
-        ends = self.breaks()
+        ends = self.net()
         half = np.diff(ends) / 2
         values = self.at(ends[:-1, None] + half[:, None] * (1 + nodes))
         edge, mass, alpha = (float(np.sum(v * weights * half[:, None]) / self.thickness) for v in values)
@@ -202,7 +219,7 @@ class Course:
 
     def reach(self) -> tuple[float, float]:
         """About the lowest and the highest band edge."""
-        ends = self.breaks()
+        ends = self.net()
         edge = self.at(ends[:-1, None] + np.diff(ends)[:, None] * np.linspace(0, 1, 9))[0]
         return float(edge.min()), float(edge.max())
 
@@ -218,18 +235,37 @@ def _beyond(distance: Floats, length: float) -> Floats:
 def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
     """The constant layers, left to right, whose matrix is the course's to 1e-10 at energies from low to high (eV).
 
-    Steps are halved where they err most, until twice as many change the matrix by no more than TOLERANCE of its
-    largest entry (b and c measured by the wave number of that range). Raises ValueError if that takes too many.
+    Steps are as long as lets all err alike, and as many as it takes for twice as many to change the matrix by no more
+    than TOLERANCE of its largest entry (b and c measured by the wave number of that range). Raises ValueError if those
+    are too many.
     """
     energy = np.linspace(low, high, _ENERGIES)
-    ends, allowed = course.breaks(), TOLERANCE / 16
+    net, power = _refined(course, energy), _ORDER + 1
+    allowed = TOLERANCE
     while True:
-        ends = _refined(course, ends, energy, allowed)
-        coarse, fine = (_product(_matrices(_constants(course, e), energy)) for e in (ends, _halved(ends)))
+        steps = (np.maximum(_errors(course, net, energy), _ROUNDING) / allowed) ** (1 / power)
+        net = _spread(net, steps, course.corners())
+        coarse, fine = (_product(_matrices(_constants(course, e), energy)) for e in (net, _halved(net)))
         error = float(_difference(coarse, fine, _unit(course, energy)).max())
-        if error <= TOLERANCE:
-            return _layers(course, ends)
-        allowed *= min(0.5, (TOLERANCE / error) ** 1.2)
+        if error <= TOLERANCE and _sound(_constants(course, net)).all():
+            return _layers(course, net)
+        allowed *= min(0.8, (TOLERANCE / error) ** (power / (power - 1)))
+
+
+def _spread(net: Floats, steps: Floats, corners: Floats) -> Floats:
+    """Ends of new steps: between neighbouring corners as many as the net has `steps` there, spaced like them."""
+    count = np.append(0.0, np.cumsum(steps))
+    places = np.interp(corners, net, count)
+    parts = [np.linspace(low, high, 1 + max(1, math.ceil(high - low)))[1:] for low, high in itertools.pairwise(places)]
+    _require_few(sum(part.size for part in parts))
+    found: Floats = np.interp(np.concatenate([[0.0], *parts]), count, net)
+    return found
+
+
+def _require_few(steps: int) -> None:
+    if PER_STEP * steps > MOST_SLICES:
+        raise ValueError(f"course: takes more than {MOST_SLICES:,} constant layers to be right to {TOLERANCE:g}; "
+                         "make it thinner, lower or smoother")
 
 
 def on_steps(course: Course, ends: Floats) -> tuple[Layer, ...]:
@@ -248,22 +284,25 @@ def _halved(ends: Floats) -> Floats:
     return both
 
 
-def _refined(course: Course, ends: Floats, energy: Floats, allowed: float) -> Floats:
-    """Steps, each of which errs by no more than is allowed. Raises ValueError if they are too many."""
-    unit = _unit(course, energy)
+def _refined(course: Course, energy: Floats) -> Floats:
+    """Steps so short that each errs by little: the net from which the spacing of the final ones is read."""
+    ends = course.net()
     while True:
-        if PER_STEP * (ends.size - 1) > MOST_SLICES:
-            raise ValueError(f"course: takes more than {MOST_SLICES:,} constant layers to be right to {TOLERANCE:g}; "
-                             "make it thinner, lower or smoother")
-        whole, half = _constants(course, ends), _constants(course, _halved(ends))
-        coarse = _along(_matrices(whole, energy), PER_STEP)
-        fine = _along(_matrices(half, energy), 2 * PER_STEP)
-        error = _difference(coarse, fine, unit).max(axis=1)
-        error[~_sound(whole)] = math.inf
-        parts = np.ceil(np.clip((error / allowed) ** (1 / 6), 1, 4)).astype(int)
+        _require_few(ends.size - 1)
+        error = _errors(course, ends, energy)
+        parts = np.ceil(np.clip((error / _RESOLVED) ** (1 / (_ORDER + 1)), 1, 4)).astype(int)
         if (parts == 1).all():
             return ends
         ends = _split(ends, parts)
+
+
+def _errors(course: Course, ends: Floats, energy: Floats) -> Floats:
+    """The error of each step: the most that halving it changes its matrix. Infinite where a mass is not above 0."""
+    whole, half = _constants(course, ends), _constants(course, _halved(ends))
+    coarse, fine = _along(_matrices(whole, energy), PER_STEP), _along(_matrices(half, energy), 2 * PER_STEP)
+    error: Floats = _difference(coarse, fine, _unit(course, energy)).max(axis=1)
+    error[~_sound(whole)] = math.inf
+    return error
 
 
 def _split(ends: Floats, parts: NDArray[np.int64]) -> Floats:

@@ -96,12 +96,16 @@ def transfer(elements: Sequence[Element], energy: Array, span: Span | None = Non
     if not elements:
         return IDENTITY
     span = span or Span.of(energy)
-    known = {element: element_transfer(element, energy, span) for element in dict.fromkeys(elements)}
     scaled = _growth_bound(elements, span) > OPAQUE
-    total = known[elements[0]]
-    for element in elements[1:]:
-        total = known[element] @ total
-        if scaled:
+    last = {element: place for place, element in enumerate(elements)}
+    held: dict[Element, Transfer] = {}  # of elements that come again, and no others: a profile has hundreds of layers
+    total = IDENTITY
+    for place, element in enumerate(elements):
+        step = held.pop(element) if element in held else element_transfer(element, energy, span)
+        if last[element] > place:
+            held[element] = step
+        total = step @ total if place else step
+        if scaled and place:
             total = total.rescaled()
     return total
 
