@@ -1,20 +1,21 @@
 """From the rows of a layer sheet to layers and deltas: profiles resolved, interfaces graded, equal cells kept equal.
 
-A graded interface lies half on either side of its face and takes the longer of its two layers' gradings. The cell's
-outer faces are graded as inside the lattice, where the cell follows itself, so that every cell is the same; what
-stands beside the periodic part grades its own half. The half that belongs to a lead is laid before the lead.
+A graded interface lies half on either side of its face and takes the longer of its two layers' gradings. Every cell
+is the same, so where one of its outer faces is graded, the first and the last cell must be met by their neighbours as
+cells meet each other; else the file is refused. The half that belongs to a lead is laid before the lead.
 
     lead | lead's half | entry layers | cell | cell | ... | exit layers | lead's half | lead
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import itertools
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from transport.parameters import PARAMETERS
-from transport.profiles import MOST_SLICES, Course, Face, flat, slices
+from transport.profiles import MOST_SLICES, Course, Face, flat, like, slices
 from transport.refusal import ScenarioError, refuse_unless
 from transport.structure import Delta, Element, Layer
 
@@ -34,6 +35,15 @@ class LaidOut:
     exit: tuple[Element, ...]
     counts: tuple[int, ...]
 
+    @property
+    def elements(self) -> tuple[Element, ...]:
+        """All of them, each part once."""
+        return self.entry + self.cell + self.exit
+
+
+Slicer = Callable[[int, Course], tuple[Layer, ...]]
+"""The constant layers of the course of a row, which is told by its place in the sheet."""
+
 
 def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
     """The elements that the rows of a sheet (left lead first, right lead last) describe.
@@ -43,21 +53,48 @@ def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
     where profiles come to too many slices.
     """
     low, high = _range(rows, tops)
+
+    def resolved(place: int, course: Course) -> tuple[Layer, ...]:
+        try:
+            return slices(course, low, high)
+        except ValueError as error:
+            raise ScenarioError(rows[place].key, str(error).removeprefix("course: ")) from None
+
+    found = _laid_out(rows, resolved)
+    refuse_unless(sum(found.counts) <= max(MOST_SLICES, len(rows)), "stack",
+                  f"comes to {sum(found.counts):,} slices with its profiles resolved, more than {MOST_SLICES:,}; "
+                  "write fewer profile layers or smoother ones")
+    return found
+
+
+def lay_out_like(rows: Sequence[SheetRow], elements: Sequence[Element]) -> LaidOut:
+    """The elements of rows that hardly differ from those of a resolved sheet, with the same steps through profiles.
+
+    `elements`: those of that sheet (`Stack.elements`); every row still says how many `slices` it had.
+    """
+    starts = [0, *itertools.accumulate(row.slices for row in rows)]
+
+    def resolved(place: int, course: Course) -> tuple[Layer, ...]:
+        before = [e for e in elements[starts[place]:starts[place + 1]] if isinstance(e, Layer)]
+        return like(course, before if place < len(rows) - 1 else before[::-1])
+
+    return _laid_out(rows, resolved)
+
+
+def _laid_out(rows: Sequence[SheetRow], resolved: Slicer) -> LaidOut:
     made: dict[str, list[tuple[Element, ...]]] = {name: [] for name in _PARTS}
     lines = _lines(rows)
-    ends = [_lead_half(lines["entry"][:2], low, high), _lead_half(lines["exit"][:-3:-1], low, high)]
-    for name in _PARTS:
-        line, place = lines[name], 0
-        for row in (row for row in rows if row.where == name):
-            if row.strength is not None:
-                made[name].append((Delta(row.strength),))
-                continue
-            place += 1
-            made[name].append(_elements(row, line[place - 1], line[place + 1], low, high))
+    _require_equal_cells(lines)
+    ends = [_lead_half(lines["entry"][:2], 0, resolved), _lead_half(lines["exit"][:-3:-1], len(rows) - 1, resolved)]
+    passed = dict.fromkeys(_PARTS, 0)
+    for place, row in enumerate(rows[1:-1], start=1):
+        if row.strength is not None:
+            made[row.where].append((Delta(row.strength),))
+            continue
+        passed[row.where] += 1
+        left, _, right = lines[row.where][passed[row.where] - 1:passed[row.where] + 2]
+        made[row.where].append(_elements(row, left, right, place, resolved))
     counts = (len(ends[0]), *(len(found) for name in _PARTS for found in made[name]), len(ends[1]))
-    refuse_unless(sum(counts) <= max(MOST_SLICES, len(rows)), "stack",
-                  f"comes to {sum(counts):,} slices with its profiles resolved, more than {MOST_SLICES:,}; "
-                  "write fewer profile layers or smoother ones")
     entry, cell, exit_ = (tuple(element for found in made[name] for element in found) for name in _PARTS)
     return LaidOut((*ends[0], *entry), cell, (*exit_, *reversed(ends[1])), counts)
 
@@ -76,31 +113,25 @@ def _lines(rows: Sequence[SheetRow]) -> dict[str, list[SheetRow]]:
             "exit": [cell[-1], *exit_, rows[-1]]}
 
 
-def _elements(row: SheetRow, left: SheetRow, right: SheetRow, low: float, high: float) -> tuple[Element, ...]:
+def _elements(
+    row: SheetRow, left: SheetRow, right: SheetRow, place: int, resolved: Slicer
+) -> tuple[Element, ...]:
     """What one layer comes to between its neighbours."""
     assert row.thickness is not None
     faces = _face(row, left, side=0), _face(row, right, side=1)
     _require_room(row, left, right, faces)
     if row.course is None and faces == (None, None):
         return (_plain(row),)
-    course = replace(_course(row, row.thickness), left=faces[0], right=faces[1])
-    return _resolved(row, course, low, high)
+    return resolved(place, replace(_course(row, row.thickness), left=faces[0], right=faces[1]))
 
 
-def _lead_half(pair: Sequence[SheetRow], low: float, high: float) -> tuple[Element, ...]:
+def _lead_half(pair: Sequence[SheetRow], place: int, resolved: Slicer) -> tuple[Element, ...]:
     """A lead's half of the interface with the layer next to it, from the lead inwards."""
     lead, layer = pair
-    face = _face(lead, layer, side=1 if lead.where == "left lead" else 0)
+    face = _face(lead, layer, side=0 if place else 1)
     if face is None:
         return ()
-    return _resolved(layer, replace(_course(lead, face.length / 2), right=face), low, high)
-
-
-def _resolved(row: SheetRow, course: Course, low: float, high: float) -> tuple[Element, ...]:
-    try:
-        return slices(course, low, high)
-    except ValueError as error:
-        raise ScenarioError(row.key, str(error).removeprefix("course: ")) from None
+    return resolved(place, replace(_course(lead, face.length / 2), right=face))
 
 
 def _plain(row: SheetRow) -> Layer:
@@ -138,6 +169,22 @@ def _require_room(
     where = "the layer" if blamed is row else row.key
     raise ScenarioError(key, f"is {blamed.grading:g}: the halves of graded interfaces that lie in {where} take "
                         f"{wanted:.4g} nm, but it is {thickness:.4g} nm thick; give a shorter grading")
+
+
+def _require_equal_cells(lines: dict[str, list[SheetRow]]) -> None:
+    """Refuse a graded outer face of the cell that is not the same at the stack's ends as between two cells."""
+    first, last = lines["cell"][1], lines["cell"][-2]
+    before, behind = lines["entry"][-2], lines["exit"][1]
+    for inner, within, beyond, side in ((first, last, before, 0), (last, first, behind, 1)):
+        if _face(inner, within, side) == _face(inner, beyond, side):
+            continue
+        blamed = max((inner, within, beyond), key=lambda row: row.grading or 0.0)
+        where, place, remedy = (("before the first", "left", "the entry end like the cell"),
+                                ("behind the last", "right", "the exit begin like the cell"))[side]
+        raise ScenarioError(
+            blamed.key if blamed.key == "stack.ends" else f"{blamed.key}.grading_nm",
+            f"grades the {place} face of the cell, but what stands {where} cell is not what stands between two, and all "
+            f"cells are the same; let {remedy}, or cut the cell within a layer, half of it at either end")
 
 
 def require_reach(key: str, course: Course) -> None:

@@ -19,7 +19,7 @@ from __future__ import annotations
 import functools
 import itertools
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from types import MappingProxyType
 
@@ -176,6 +176,10 @@ class Course:
         """Another thickness (widths in nm stay), and band edge and mass times a factor each."""
         return replace(self, thickness=thickness, band_edge=self.band_edge.times(edge), mass=self.mass.times(mass))
 
+    def moved(self, edge: float) -> Course:
+        """The band edge shifted as a whole (eV)."""
+        return replace(self, band_edge=replace(self.band_edge, shift=self.band_edge.shift + edge))
+
     def at_face(self, side: int) -> tuple[float, float, float]:
         """Band edge, mass and nonparabolicity at the left (0) or right (1) face, its grading left out."""
         x = np.array(side * self.thickness)
@@ -268,9 +272,10 @@ def _require_few(steps: int) -> None:
                          "make it thinner, lower or smoother")
 
 
-def on_steps(course: Course, ends: Floats) -> tuple[Layer, ...]:
-    """The constant layers of given steps: `ends` (nm) ascend from 0 to the course's thickness."""
-    return _layers(course, np.asarray(ends, dtype=float))
+def like(course: Course, layers: Sequence[Layer]) -> tuple[Layer, ...]:
+    """The constant layers of a course on the steps of one that it hardly differs from, stretched to its thickness."""
+    ends = np.append(0.0, np.cumsum([layer.thickness for layer in layers])[PER_STEP - 1::PER_STEP])
+    return _layers(course, ends * (course.thickness / ends[-1]))
 
 
 def _layers(course: Course, ends: Floats) -> tuple[Layer, ...]:

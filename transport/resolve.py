@@ -55,6 +55,14 @@ def monolayer_of(row: SheetRow) -> float:
     return row.thickness / row.monolayers if row.thickness and row.monolayers else 0.2827
 
 
+def altered(row: SheetRow, thickness: float = 0.0, band_edge: float = 0.0, mass_share: float = 0.0) -> SheetRow:
+    """A layer's row, thicker by so many nm, higher by so many eV, heavier by a share."""
+    new, heavier = (row.thickness or 0.0) + thickness, 1 + mass_share
+    course = row.course.scaled(new, 1.0, heavier).moved(band_edge) if row.course else None
+    return replace(row, thickness=new, band_edge=(row.band_edge or 0.0) + band_edge, mass=(row.mass or 0.0) * heavier,
+                   course=course)
+
+
 @dataclass(frozen=True, slots=True)
 class Resolved:
     """What a document comes to."""
