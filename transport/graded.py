@@ -183,8 +183,8 @@ def _require_equal_cells(lines: dict[str, list[SheetRow]]) -> None:
                                 ("behind the last", "right", "the exit begin like the cell"))[side]
         raise ScenarioError(
             blamed.key if blamed.key == "stack.ends" else f"{blamed.key}.grading_nm",
-            f"grades the {place} face of the cell, but what stands {where} cell is not what stands between two, and all "
-            f"cells are the same; let {remedy}, or cut the cell within a layer, half of it at either end")
+            f"grades the {place} face of the cell, but what stands {where} cell is not what stands between two, and "
+            f"all cells are the same; let {remedy}, or cut the cell within a layer, half of it at either end")
 
 
 def require_reach(key: str, course: Course) -> None:

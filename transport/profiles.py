@@ -252,7 +252,7 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
         coarse, fine = (_product(_matrices(_constants(course, e), energy)) for e in (net, _halved(net)))
         error = float(_difference(coarse, fine, _unit(course, energy)).max())
         if error <= TOLERANCE and _sound(_constants(course, net)).all():
-            return _layers(course, net)
+            return on_steps(course, net)
         allowed *= min(0.8, (TOLERANCE / error) ** (power / (power - 1)))
 
 
@@ -272,15 +272,19 @@ def _require_few(steps: int) -> None:
                          "make it thinner, lower or smoother")
 
 
+def on_steps(course: Course, ends: Floats) -> tuple[Layer, ...]:
+    """The constant layers of given steps, whose `ends` (nm) ascend from 0 to the course's thickness.
+
+    Raises ValueError where a layer would come to a mass that is not above 0: its step is too long.
+    """
+    rows = _constants(course, ends).reshape(4, -1).T.tolist()
+    return tuple(Layer(*row) for row in rows)
+
+
 def like(course: Course, layers: Sequence[Layer]) -> tuple[Layer, ...]:
     """The constant layers of a course on the steps of one that it hardly differs from, stretched to its thickness."""
     ends = np.append(0.0, np.cumsum([layer.thickness for layer in layers])[PER_STEP - 1::PER_STEP])
-    return _layers(course, ends * (course.thickness / ends[-1]))
-
-
-def _layers(course: Course, ends: Floats) -> tuple[Layer, ...]:
-    rows = _constants(course, ends).reshape(4, -1).T.tolist()
-    return tuple(Layer(*row) for row in rows)
+    return on_steps(course, ends * (course.thickness / ends[-1]))
 
 
 def _halved(ends: Floats) -> Floats:
