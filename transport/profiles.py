@@ -39,7 +39,7 @@ MOST_SLICES = int(PARAMETERS["file_slices"].high)
 PER_STEP = 3
 """Constant layers of one step."""
 
-_ENERGIES = 9
+_ENERGIES = 13
 _FIRST_STEPS = 4
 _ORDER = 6
 _RESOLVED, _ROUNDING = 1e-7, 1e-15  # error of a step that tells how errors are spread; and one that says nothing
@@ -245,15 +245,15 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
     """
     energy = np.linspace(low, high, _ENERGIES)
     net, power = _refined(course, energy), _ORDER + 1
-    allowed = TOLERANCE
+    allowed, wanted = TOLERANCE, TOLERANCE / 2  # a half for energies between those looked at
     while True:
         steps = (np.maximum(_errors(course, net, energy), _ROUNDING) / allowed) ** (1 / power)
         net = _spread(net, steps, course.corners())
         coarse, fine = (_product(_matrices(_constants(course, e), energy)) for e in (net, _halved(net)))
         error = float(_difference(coarse, fine, _unit(course, energy)).max())
-        if error <= TOLERANCE and _sound(_constants(course, net)).all():
+        if error <= wanted and _sound(_constants(course, net)).all():
             return on_steps(course, net)
-        allowed *= min(0.8, (TOLERANCE / error) ** (power / (power - 1)))
+        allowed *= min(0.8, (wanted / error) ** (power / (power - 1)))
 
 
 def _spread(net: Floats, steps: Floats, corners: Floats) -> Floats:
@@ -394,7 +394,7 @@ def _unit(course: Course, energy: Floats) -> float:
 
 def _difference(found: Transfer, true: Transfer, unit: float) -> Floats:
     """Largest deviation of an entry over the largest entry."""
-    scale = np.exp(found.log_scale - true.log_scale)
+    scale = np.exp(np.minimum(found.log_scale - true.log_scale, 300.0))
     pairs = ((found.a, true.a, 1.0), (found.b, true.b, 1 / unit), (found.c, true.c, unit), (found.d, true.d, 1.0))
     deviation = np.max([abs(f * scale - t) * weight for f, t, weight in pairs], axis=0)
     return np.asarray(deviation / np.max([abs(t) * weight for _, t, weight in pairs], axis=0))
