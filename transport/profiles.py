@@ -41,6 +41,7 @@ PER_STEP = 3
 
 _ENERGIES = 13
 _FIRST_STEPS = 4
+_TRIALS = 6  # of spacings, before one that is better than it need be is taken
 _ORDER = 6
 _RESOLVED, _ROUNDING = 1e-7, 1e-15  # error of a step that tells how errors are spread; and one that says nothing
 _REACH = 2.0  # an interface's error function is cut at erf(2) = 0.995, and scaled so that it ends there
@@ -244,16 +245,28 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
     are too many.
     """
     energy = np.linspace(low, high, _ENERGIES)
-    net, power = _refined(course, energy), _ORDER + 1
+    net, best = _refined(course, energy), None
     allowed, wanted = TOLERANCE, TOLERANCE / 2  # a half for energies between those looked at
-    while True:
-        steps = (np.maximum(_errors(course, net, energy), _ROUNDING) / allowed) ** (1 / power)
-        net = _spread(net, steps, course.corners())
+    trials = 0
+    while best is None or trials < _TRIALS:
+        trials += 1
+        net = _spread(net, _wanted_steps(course, net, energy, allowed), course.corners())
         coarse, fine = (_product(_matrices(_constants(course, e), energy)) for e in (net, _halved(net)))
         error = float(_difference(coarse, fine, _unit(course, energy)).max())
-        if error <= wanted and _sound(_constants(course, net)).all():
-            return on_steps(course, net)
-        allowed *= min(0.8, (wanted / error) ** (power / (power - 1)))
+        if error <= wanted and _sound(_constants(course, net)).all() and (best is None or net.size < best.size):
+            best = net
+        if best is not None and (wanted / 4 <= error <= wanted or net.size == course.corners().size):
+            break
+        change = (wanted / max(error, wanted * 1e-3)) ** ((_ORDER + 1) / _ORDER)
+        allowed *= min(max(0.9 * change, 0.05), 20.0)
+    return on_steps(course, best)
+
+
+def _wanted_steps(course: Course, ends: Floats, energy: Floats, allowed: float) -> Floats:
+    """Into how many steps each step would have to go to err by no more than is allowed; neighbours not too unlike."""
+    density = (np.maximum(_errors(course, ends, energy), _ROUNDING) / allowed) ** (1 / (_ORDER + 1)) / np.diff(ends)
+    density[1:], density[:-1] = np.maximum(density[1:], density[:-1] / 2), np.maximum(density[:-1], density[1:] / 2)
+    return np.asarray(density * np.diff(ends))
 
 
 def _spread(net: Floats, steps: Floats, corners: Floats) -> Floats:

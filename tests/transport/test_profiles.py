@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import tomllib
 from typing import Any
 
 import msgspec
@@ -12,6 +13,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from tests.transport.test_readme import blocks
 from tests.transport.test_sensitivity import pole
 from tests.transport.wrong_profiles import BARRIER, COSINE, GAUSSIAN, RAMP, WELL, WRONG
 from transport import (
@@ -204,6 +206,18 @@ def test_an_alloy_the_scenario_defines_itself_does_not_run() -> None:
     assert refusal(RAMP, WELL, more=own).startswith("stack.cell[0].x_from: does not belong to AlGaAs, which is no")
 
 
+def test_the_layers_of_the_readme_are_read() -> None:
+    (text,) = blocks("TOML")
+    layers = tomllib.loads(text)
+    assert {*PROFILE_KEYS, "graded_alloy", "soft_barrier"} == {*layers}
+    for name, layer in layers.items():
+        data = document_to_data(scenario(WELL).document)
+        data["stack"]["cell"], data["stack"]["exit"] = [{"material": "GaAs", "thickness_nm": 1.0}, layer], []
+        if name == "soft_barrier":
+            data["stack"]["cell"].append({"material": "GaAs", "thickness_nm": 1.0})
+        assert len(scenario_from_document(document_from_data(data)).stack.cell) > 3
+
+
 # Graded alloys and interfaces.
 
 def test_a_graded_alloy_follows_the_library_at_every_composition() -> None:
@@ -332,7 +346,7 @@ def test_ends_that_taper_the_height_leave_profiles_alone() -> None:
 
 
 def test_a_fit_leaves_profiles_alone_and_says_so() -> None:
-    one = scenario(GAUSSIAN, WELL, exit=GAUSSIAN, more="measured = { peaks = [{ energy_meV = 50 }] }")
+    one = scenario(GAUSSIAN, WELL, exit=GAUSSIAN, periods=1, more="measured = { peaks = [{ energy_meV = 50 }] }")
     with pytest.raises(ScenarioError, match=r"^stack\.cell\[0\]: has a band edge that runs, which a fit of well, bar"):
         fit_peaks(one, ["well"])
     assert fit_peaks(one, ["shift"]).values.size == 1
