@@ -15,7 +15,7 @@ from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from transport.parameters import PARAMETERS
-from transport.profiles import MOST_SLICES, Course, Face, flat, like, slices
+from transport.profiles import MOST_SLICES, Course, CourseError, Face, flat, like, slices
 from transport.refusal import ScenarioError, refuse_unless
 from transport.structure import Delta, Element, Layer
 
@@ -57,8 +57,8 @@ def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
     def resolved(place: int, course: Course) -> tuple[Layer, ...]:
         try:
             return slices(course, low, high)
-        except ValueError as error:
-            raise ScenarioError(rows[place].key, str(error).removeprefix("course: ")) from None
+        except CourseError as error:
+            raise ScenarioError(rows[place].key, str(error)) from None
 
     found = _laid_out(rows, resolved)
     refuse_unless(sum(found.counts) <= max(MOST_SLICES, len(rows)), "stack",
@@ -148,8 +148,10 @@ def _course(row: SheetRow, thickness: float) -> Course:
 def _face(row: SheetRow, beyond: SheetRow, side: int) -> Face | None:
     """The graded interface of a row with the one beyond its left (0) or right (1) face; None where it is sharp."""
     length = max(row.grading or 0.0, beyond.grading or 0.0)
+    if not length:
+        return None
     values = _at_face(beyond, 1 - side)
-    return Face(length, *values) if length and values != _at_face(row, side) else None
+    return Face(length, *values) if values != _at_face(row, side) else None
 
 
 def _at_face(row: SheetRow, side: int) -> tuple[float, float, float]:
@@ -191,5 +193,5 @@ def require_reach(key: str, course: Course) -> None:
     """Raise ScenarioError where a profile leaves the limits of a band edge."""
     limit = PARAMETERS["band_edge_eV"]
     for edge in course.reach():
-        refuse_unless(limit.admits(edge), key,
+        refuse_unless(limit.admits(edge / (1 + 1e-9)), key,
                       f"reaches {edge:.6g} eV, but a band edge {limit.requirement}; give it smaller numbers")

@@ -35,6 +35,8 @@ Floats = NDArray[np.float64]
 
 TOLERANCE = 1e-10
 """Relative error of a course's matrix, against one of twice as many steps."""
+THINNEST = 1e-9
+"""The thinnest course, nm."""
 MOST_SLICES = int(PARAMETERS["file_slices"].high)
 PER_STEP = 3
 """Constant layers of one step."""
@@ -217,9 +219,9 @@ class Course:
         """Means over the layer of band edge, mass and nonparabolicity."""
         nodes, weights = np.polynomial.legendre.leggauss(8)
         ends = self.net()
-        half = np.diff(ends) / 2
-        values = self.at(ends[:-1, None] + half[:, None] * (1 + nodes))
-        edge, mass, alpha = (float(np.sum(v * weights * half[:, None]) / self.thickness) for v in values)
+        width = np.diff(ends)[:, None]
+        values = self.at(ends[:-1, None] + width * (1 + nodes) / 2)
+        edge, mass, alpha = (float(np.sum(v * weights * (width / self.thickness)) / 2) for v in values)
         return edge, mass, alpha
 
     def reach(self) -> tuple[float, float]:
@@ -231,9 +233,13 @@ class Course:
 
 def _beyond(distance: Floats, length: float) -> Floats:
     """Share of what lies beyond a graded face: a half at the face, nothing from half the length on."""
-    scaled = np.minimum(2 * _REACH * distance / length, _REACH)
+    scaled = 2 * _REACH * (np.minimum(distance, length / 2) / length)
     error = np.array([math.erf(value) for value in scaled.ravel()]).reshape(scaled.shape)
     return np.asarray((1 - error / math.erf(_REACH)) / 2)
+
+
+class CourseError(ValueError):
+    """A course that cannot be resolved; the message says what to do about it."""
 
 
 @functools.lru_cache(maxsize=512)
@@ -241,9 +247,12 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
     """The constant layers, left to right, whose matrix is the course's to 1e-10 at energies from low to high (eV).
 
     Steps are as long as lets all err alike, and as many as it takes for twice as many to change the matrix by no more
-    than TOLERANCE of its largest entry (b and c measured by the wave number of that range). Raises ValueError if those
-    are too many.
+    than TOLERANCE of its largest entry (b and c measured by the wave number of that range). Raises CourseError if those
+    are too many, and for a course thinner than THINNEST.
     """
+    if course.thickness < THINNEST:
+        raise CourseError(f"is {course.thickness:g} nm thick, but a layer that runs needs {THINNEST:g} nm; make it "
+                          "thicker")
     energy = np.linspace(low, high, _ENERGIES)
     net, best = _refined(course, energy), None
     allowed, wanted = TOLERANCE, TOLERANCE / 2  # a half for energies between those looked at
@@ -251,7 +260,8 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
     while best is None or trials < _TRIALS:
         trials += 1
         net = _spread(net, _wanted_steps(course, net, energy, allowed), course.corners())
-        coarse, fine = (_product(_matrices(_constants(course, e), energy)) for e in (net, _halved(net)))
+        finer = _halved(net, ~_is_flat(course, net))
+        coarse, fine = (_product(_matrices(_constants(course, ends), energy)) for ends in (net, finer))
         error = float(_difference(coarse, fine, _unit(course, energy)).max())
         if error <= wanted and _sound(_constants(course, net)).all() and (best is None or net.size < best.size):
             best = net
@@ -264,25 +274,30 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
 
 def _wanted_steps(course: Course, ends: Floats, energy: Floats, allowed: float) -> Floats:
     """Into how many steps each step would have to go to err by no more than is allowed; neighbours not too unlike."""
-    density = (np.maximum(_errors(course, ends, energy), _ROUNDING) / allowed) ** (1 / (_ORDER + 1)) / np.diff(ends)
-    density[1:], density[:-1] = np.maximum(density[1:], density[:-1] / 2), np.maximum(density[:-1], density[1:] / 2)
-    return np.asarray(density * np.diff(ends))
+    steps = (np.maximum(_errors(course, ends, energy), _ROUNDING) / allowed) ** (1 / (_ORDER + 1))
+    width = np.diff(ends)
+    wider = np.clip(width[1:] / width[:-1], 0.25, 4)
+    steps[1:], steps[:-1] = np.maximum(steps[1:], steps[:-1] * wider / 2), np.maximum(steps[:-1], steps[1:] / wider / 2)
+    least = 1e-6 * width / course.thickness  # where nothing runs, one step will do
+    return np.asarray(np.where(_is_flat(course, ends), least, np.maximum(steps, least)))
 
 
 def _spread(net: Floats, steps: Floats, corners: Floats) -> Floats:
     """Ends of new steps: between neighbouring corners as many as the net has `steps` there, spaced like them."""
     count = np.append(0.0, np.cumsum(steps))
     places = np.interp(corners, net, count)
-    parts = [np.linspace(low, high, 1 + max(1, math.ceil(high - low)))[1:] for low, high in itertools.pairwise(places)]
-    _require_few(sum(part.size for part in parts))
+    sizes = np.maximum(np.ceil(np.diff(places)), 1)
+    _require_few(float(sizes.sum()))
+    parts = [np.linspace(low, high, 1 + int(size))[1:] for (low, high), size in zip(itertools.pairwise(places), sizes,
+                                                                                   strict=True)]
     found: Floats = np.interp(np.concatenate([[0.0], *parts]), count, net)
-    return found
+    return found[np.diff(found, prepend=-1.0) > 0]
 
 
-def _require_few(steps: int) -> None:
+def _require_few(steps: float) -> None:
     if PER_STEP * steps > MOST_SLICES:
-        raise ValueError(f"course: takes more than {MOST_SLICES:,} constant layers to be right to {TOLERANCE:g}; "
-                         "make it thinner, lower or smoother")
+        raise CourseError(f"takes more than {MOST_SLICES:,} constant layers to be right to {TOLERANCE:g}; make it "
+                          "thinner, lower or smoother")
 
 
 def on_steps(course: Course, ends: Floats) -> tuple[Layer, ...]:
@@ -300,10 +315,16 @@ def like(course: Course, layers: Sequence[Layer]) -> tuple[Layer, ...]:
     return on_steps(course, ends * (course.thickness / ends[-1]))
 
 
-def _halved(ends: Floats) -> Floats:
-    both = np.empty(2 * ends.size - 1)
-    both[::2], both[1::2] = ends, (ends[1:] + ends[:-1]) / 2
-    return both
+def _halved(ends: Floats, where: NDArray[np.bool_] | None = None) -> Floats:
+    """Every step, or every one of some, cut into two."""
+    return _split(ends, np.full(ends.size - 1, 2) if where is None else 1 + where)
+
+
+def _is_flat(course: Course, ends: Floats) -> NDArray[np.bool_]:
+    """Steps through which nothing runs: their layers are exact whatever their length."""
+    whole, half = _constants(course, ends)[1:], _constants(course, _halved(ends))[1:]
+    both = np.concatenate([whole, half.reshape(3, -1, 2 * PER_STEP)], axis=2)
+    return np.asarray((both == both[:, :, :1]).all(axis=(0, 2)))
 
 
 def _refined(course: Course, energy: Floats) -> Floats:
@@ -323,6 +344,7 @@ def _errors(course: Course, ends: Floats, energy: Floats) -> Floats:
     whole, half = _constants(course, ends), _constants(course, _halved(ends))
     coarse, fine = _along(_matrices(whole, energy), PER_STEP), _along(_matrices(half, energy), 2 * PER_STEP)
     error: Floats = _difference(coarse, fine, _unit(course, energy)).max(axis=1)
+    error[_is_flat(course, ends)] = 0.0
     error[~_sound(whole)] = math.inf
     return error
 
@@ -371,7 +393,7 @@ def _matrices(constants: Floats, energy: Floats) -> Transfer:
     kinetic = energy - edge
     heavy = mass * (1 + np.nan_to_num(alpha) * kinetic)
     step = element_transfer(Layer(1.0, 0.0, 1.0), kinetic * heavy * thickness**2)
-    return Transfer(step.a, step.b * heavy * thickness, step.c / (heavy * thickness), step.d,
+    return Transfer(step.a, step.b * heavy * thickness, step.b * kinetic * thickness / -HBAR2_2M0, step.d,
                     np.broadcast_to(step.log_scale, kinetic.shape))
 
 

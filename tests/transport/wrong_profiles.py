@@ -35,9 +35,9 @@ WRONG = {
                    "stack.cell[0].monolayers: does not belong to a cosine profile, which takes profile, mass, "
                    "thickness_nm, nonparabolicity_per_eV, mean_eV, amplitude_eV; take it out"),
     "no width": (GAUSSIAN.replace("width_nm = 0.8", "width_nm = 0"),
-                 "stack.cell[0].width_nm: must be above 0 and at most 10,000 nm, but is 0.0"),
+                 "stack.cell[0].width_nm: must be from 1e-06 to 10,000 nm, but is 0.0"),
     "not a number": (GAUSSIAN.replace("0.8", "nan"),
-                     "stack.cell[0].width_nm: must be above 0 and at most 10,000 nm, but is nan"),
+                     "stack.cell[0].width_nm: must be from 1e-06 to 10,000 nm, but is nan"),
     "endless": (COSINE.replace("mean_eV = 0.15", "mean_eV = -inf"),
                 "stack.cell[0].mean_eV: must be from -1,000 to 1,000 eV, but is -inf"),
     "one sample": ('profile = "samples", potential_eV = [0.1], mass = 0.1, thickness_nm = 5',
@@ -79,7 +79,7 @@ WRONG = {
     "x_from beyond 1": ('material = "AlGaAs", x_from = 0.1, x_to = 1.3, monolayers = 9',
                         "stack.cell[0].x_to: must be from 0 to 1, but is 1.3"),
     "no grading": (BARRIER + ", grading_nm = 0",
-                   "stack.cell[0].grading_nm: must be above 0 and at most 10,000 nm, but is 0.0"),
+                   "stack.cell[0].grading_nm: must be from 1e-06 to 10,000 nm, but is 0.0"),
     "grading of a profile": (COSINE + ", grading_nm = 1.0",
                              "stack.cell[0].grading_nm: does not belong to a cosine profile, which takes profile, "
                              "mass, thickness_nm, nonparabolicity_per_eV, mean_eV, amplitude_eV; take it out"),
