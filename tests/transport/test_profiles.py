@@ -363,7 +363,8 @@ def test_a_fit_leaves_profiles_alone_and_says_so() -> None:
 ])
 def test_sensitivities_are_those_of_another_file(part: str, index: int, key: str, figure: str) -> None:
     """Profiles and graded interfaces: poles in 50 digits of files with one figure moved either way."""
-    one = scenario('material = "GaAs", thickness_nm = 2.0', SOFT, WELL, exit=GAUSSIAN, periods=1 if part == "exit" else 2)
+    periods = 1 if part == "exit" else 2
+    one = scenario('material = "GaAs", thickness_nm = 2.0', SOFT, WELL, exit=GAUSSIAN, periods=periods)
     guess = resonances(one.stack, between=(0.02, 0.1))
     at = complex(guess.energy[0], -guess.width[0] / 2)
     record = getattr(one.document.stack, part)[index]
