@@ -41,8 +41,8 @@ class LaidOut:
         return self.entry + self.cell + self.exit
 
 
-Slicer = Callable[[int, Course], tuple[Layer, ...]]
-"""The constant layers of the course of a row, which is told by its place in the sheet."""
+Slicer = Callable[[int, Course, int], tuple[Layer, ...]]
+"""The constant layers of a course of the row at a place: all of the row (0), its left (-1) or its right end (1)."""
 
 
 def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
@@ -54,7 +54,7 @@ def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
     """
     low, high = _range(rows, tops)
 
-    def resolved(place: int, course: Course) -> tuple[Layer, ...]:
+    def resolved(place: int, course: Course, end: int) -> tuple[Layer, ...]:
         try:
             return slices(course, low, high)
         except CourseError as error:
@@ -74,9 +74,15 @@ def lay_out_like(rows: Sequence[SheetRow], elements: Sequence[Element]) -> LaidO
     """
     starts = [0, *itertools.accumulate(row.slices for row in rows)]
 
-    def resolved(place: int, course: Course) -> tuple[Layer, ...]:
+    def resolved(place: int, course: Course, end: int) -> tuple[Layer, ...]:
         before = [e for e in elements[starts[place]:starts[place + 1]] if isinstance(e, Layer)]
-        return like(course, before if place < len(rows) - 1 else before[::-1])
+        if place == len(rows) - 1:
+            return like(course, before[::-1])
+        if end:
+            along = itertools.accumulate(layer.thickness for layer in before[::-end])
+            size = sum(reached < course.thickness * (1 + 1e-9) for reached in along)
+            before = before[:size] if end < 0 else before[-size:]
+        return like(course, before)
 
     return _laid_out(rows, resolved)
 
@@ -122,7 +128,15 @@ def _elements(
     _require_room(row, left, right, faces)
     if row.course is None and faces == (None, None):
         return (_plain(row),)
-    return resolved(place, replace(_course(row, row.thickness), left=faces[0], right=faces[1]))
+    if row.course is not None:
+        return resolved(place, replace(row.course, left=faces[0], right=faces[1]), 0)
+    left_half, right_half = (face.length / 2 if face else 0.0 for face in faces)
+    rest = row.thickness - left_half - right_half
+    return (
+        *(resolved(place, replace(_course(row, left_half), left=faces[0]), -1) if faces[0] else ()),
+        *((_plain(replace(row, thickness=rest)),) if rest > 1e-9 * row.thickness else ()),
+        *(resolved(place, replace(_course(row, right_half), right=faces[1]), 1) if faces[1] else ()),
+    )
 
 
 def _lead_half(pair: Sequence[SheetRow], place: int, resolved: Slicer) -> tuple[Element, ...]:
@@ -131,7 +145,7 @@ def _lead_half(pair: Sequence[SheetRow], place: int, resolved: Slicer) -> tuple[
     face = _face(lead, layer, side=0 if place else 1)
     if face is None:
         return ()
-    return resolved(place, replace(_course(lead, face.length / 2), right=face))
+    return resolved(place, replace(_course(lead, face.length / 2), right=face), 0)
 
 
 def _plain(row: SheetRow) -> Layer:

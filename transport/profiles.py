@@ -43,7 +43,7 @@ PER_STEP = 3
 
 _ENERGIES = 13
 _FIRST_STEPS = 4
-_TRIALS = 6  # of spacings, before one that is better than it need be is taken
+_TRIALS = 3  # of spacings, before one that is better than it need be is taken
 _ORDER = 6
 _RESOLVED, _ROUNDING = 1e-7, 1e-15  # error of a step that tells how errors are spread; and one that says nothing
 _REACH = 2.0  # an interface's error function is cut at erf(2) = 0.995, and scaled so that it ends there
@@ -265,7 +265,7 @@ def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
         error = float(_difference(coarse, fine, _unit(course, energy)).max())
         if error <= wanted and _sound(_constants(course, net)).all() and (best is None or net.size < best.size):
             best = net
-        if best is not None and (wanted / 4 <= error <= wanted or net.size == course.corners().size):
+        if best is not None and (wanted / 10 <= error <= wanted or net.size == course.corners().size):
             break
         change = (wanted / max(error, wanted * 1e-3)) ** ((_ORDER + 1) / _ORDER)
         allowed *= min(max(0.9 * change, 0.05), 20.0)
