@@ -52,6 +52,10 @@ class Media:
             return self._of_the_scenario(key, self._users[record.material], record.x)
         return self._of_the_library(key, record.material, record.x)
 
+    def is_graded(self, name: str) -> bool:
+        """Whether a material may run through compositions: an alloy of the library, and not one of the scenario's."""
+        return name not in self._users and (name not in materials.material_names() or materials.is_alloy(name))
+
     def _find_substrate(self) -> Material | None:
         name = self._conditions.substrate
         if name is None:

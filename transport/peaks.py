@@ -91,12 +91,15 @@ def fit_peaks(
 
     Least squares, weighted by the uncertainties where every peak has one, with exact derivatives (`sensitivity.py`).
     Standard errors from the curvature at the minimum; without uncertainties they are scaled by the scatter left.
-    Raises ScenarioError for unknown figures, and for more of them than there are peaks.
+    Raises ScenarioError for unknown figures, for more of them than there are peaks, and for other figures than the
+    shift where a layer's band edge runs.
     """
     from scipy.optimize import least_squares
 
     measured = _known(scenario, peaks)
     _check_figures(figures, measured)
+    if tuple(figures) != ("shift",):
+        _refuse_courses(scenario)
     before = compare_peaks(scenario, measured)
     model = _Model(scenario.stack.lossless(), measured, tuple(figures))
     steps = 0
@@ -133,6 +136,14 @@ def _check_figures(figures: Sequence[str], measured: MeasuredPeaks) -> None:
         raise ScenarioError("fit", f"needs figures to choose, each once; known here: {', '.join(FIGURES)}")
     if len(figures) > measured.energy.size:
         raise ScenarioError("fit", f"asks for {len(figures)} figures of {measured.energy.size} peaks; ask for fewer")
+
+
+def _refuse_courses(scenario: Scenario) -> None:
+    """Profiles and graded interfaces are neither barrier nor well: their thicknesses and edges are not fitted."""
+    for row in scenario.sheet:
+        if row.slices > 1:
+            raise ScenarioError(row.key, "has a band edge that runs, which a fit of well, barrier or edge leaves "
+                                "alone; fit the shift only")
 
 
 def _compared(stack: Stack, measured: MeasuredPeaks, shift: float) -> PeakComparison:

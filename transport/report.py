@@ -18,6 +18,7 @@ from transport.measuring import measured_transmission
 from transport.nearest import NearestStacks, Remedy
 from transport.peaks import FIGURES, PeakComparison, PeakFit
 from transport.periods import Verdict
+from transport.resolve import SheetRow
 from transport.resonance import Resonances
 from transport.scenario import Scenario, format_scenario
 from transport.spectrum import Spectrum
@@ -199,7 +200,8 @@ def layers_record(scenario: Scenario) -> Record:
         "layers": [
             {"where": row.where, "material": row.material, "x": row.x, "thickness_nm": row.thickness,
              "monolayers": row.monolayers, "band_edge_eV": row.band_edge, "mass": row.mass,
-             "delta_eV_nm": row.strength}
+             "delta_eV_nm": row.strength, "profile": row.profile, "x_from": row.x_ends and row.x_ends[0],
+             "x_to": row.x_ends and row.x_ends[1], "grading_nm": row.grading}
             for row in scenario.sheet
         ],
         "warnings": list(scenario.warnings),
@@ -304,9 +306,20 @@ def peaks_text(compared: PeakComparison, fit: PeakFit | None) -> str:
 
 def layers_text(scenario: Scenario) -> str:
     """The grower's sheet as a table, with warnings and the usual caution."""
-    rows = [(r.where, r.material or "-", r.x, r.thickness, r.monolayers, r.band_edge, r.mass) for r in scenario.sheet]
-    header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass")
-    return "\n".join([table(header, rows), *_warning_lines(scenario), CAUTION])
+    graded = any(r.grading for r in scenario.sheet)
+    rows = [(r.where, r.material or r.profile or "-", _composition(r), r.thickness, r.monolayers, r.band_edge, r.mass,
+             *([r.grading] if graded else [])) for r in scenario.sheet]
+    header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass",
+              *(["grading_nm"] if graded else []))
+    means = [_MEANS] if any(r.profile for r in scenario.sheet) else []
+    return "\n".join([table(header, rows), *means, *_warning_lines(scenario), CAUTION])
+
+
+def _composition(row: SheetRow) -> float | str | None:
+    return f"{row.x_ends[0]:g} to {row.x_ends[1]:g}" if row.x_ends else row.x
+
+
+_MEANS = "Band edge and mass of a layer through which they run are means over it."
 
 
 CAUTION = (

@@ -2,17 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 
 from transport.checks import written_out
+from transport.courses import courses_of
 from transport.document import Document, LayerRecord, LeadRecord, WindowRecord, default_measure
 from transport.ends import KEY, end_layers
+from transport.graded import lay_out, require_reach
 from transport.materials import OFFSET_WARNING
 from transport.media import Media, Medium
 from transport.parameters import PARAMETERS
+from transport.profiles import Course
 from transport.refusal import ScenarioError, refuse_unless, shown
-from transport.structure import Delta, Element, Layer, Lead, Stack, Target, Window
+from transport.structure import Lead, Stack, Target, Window
 
 
 @dataclass(frozen=True, slots=True)
@@ -23,6 +26,10 @@ class SheetRow:
     or lead given by its edge, and for a delta. Lengths nm, `band_edge` eV from the left lead's edge, `mass` m0,
     `nonparabolicity` 1/eV, `strength` (of a delta only) eV nm; None where it does not apply. `monolayers` may be
     fractional: growth rounds it.
+
+    A layer whose edge or mass runs has a `course` through it, `profile` names it in words, and band edge, mass and
+    nonparabolicity are means over the layer; `x_ends`: compositions at the faces of a graded alloy; `grading`:
+    length of its graded interfaces (nm). `slices`: how many elements of the stack the row comes to.
     """
 
     where: str
@@ -36,11 +43,24 @@ class SheetRow:
     nonparabolicity: float | None = None
     strength: float | None = None
     warnings: tuple[str, ...] = ()
+    x_ends: tuple[float, float] | None = None
+    profile: str | None = None
+    grading: float | None = None
+    course: Course | None = None
+    slices: int = 1
 
 
 def monolayer_of(row: SheetRow) -> float:
     """Thickness of one monolayer in nm; for a layer whose material has none, about that of GaAs (common practice)."""
     return row.thickness / row.monolayers if row.thickness and row.monolayers else 0.2827
+
+
+def altered(row: SheetRow, thickness: float = 0.0, band_edge: float = 0.0, mass_share: float = 0.0) -> SheetRow:
+    """A layer's row, thicker by so many nm, higher by so many eV, heavier by a share."""
+    new, heavier = (row.thickness or 0.0) + thickness, 1 + mass_share
+    course = row.course.scaled(new, 1.0, heavier).moved(band_edge) if row.course else None
+    return replace(row, thickness=new, band_edge=(row.band_edge or 0.0) + band_edge, mass=(row.mass or 0.0) * heavier,
+                   course=course)
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,17 +78,23 @@ def resolve(document: Document) -> Resolved:
     _refuse_a_drop(document)
     media = Media(document)
     zero = media.medium("leads.left", document.leads.left).band_edge
-    sheet = tuple(_sheet(document, media, zero))
-    stack = Stack(
-        left=lead_of(sheet[0]),
-        entry=_elements(sheet, "entry"),
-        cell=_elements(sheet, "cell"),
-        periods=document.stack.periods,
-        exit=_elements(sheet, "exit"),
-        right=lead_of(sheet[-1]),
-        dephasing=document.conditions.dephasing_meV / 1000,
-    )
-    return Resolved(stack, _target(document), sheet, _warnings(sheet, media))
+    target = _target(document)
+    rows = tuple(_sheet(document, media, zero))
+    stack, counts = stack_of(rows, target, document.stack.periods, document.conditions.dephasing_meV / 1000)
+    sheet = tuple(replace(row, slices=count) for row, count in zip(rows, counts, strict=True))
+    return Resolved(stack, target, sheet, _warnings(sheet, media))
+
+
+def stack_of(
+    sheet: Sequence[SheetRow], target: Target | None, periods: int, dephasing: float
+) -> tuple[Stack, tuple[int, ...]]:
+    """The stack that a sheet describes, and how many elements each row comes to. Raises ScenarioError.
+
+    Profiles are resolved for energies up to the target's windows and beyond (`graded.lay_out`).
+    """
+    made = lay_out(sheet, [window.top for window in target.windows] if target else [])
+    stack = Stack(lead_of(sheet[0]), made.entry, made.cell, periods, made.exit, lead_of(sheet[-1]), dephasing)
+    return stack, made.counts
 
 
 def _refuse_a_drop(document: Document) -> None:
@@ -96,7 +122,7 @@ def _built_in_drop(left: LeadRecord, right: LeadRecord) -> bool:
 
 def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:
     stack = document.stack
-    left, right = end_layers(stack.ends, stack.cell, media.medium) if stack.ends else ((), ())
+    left, right = end_layers(stack.ends, stack.cell, lambda *at: courses_of(media, *at)[0]) if stack.ends else ((), ())
     parts = {
         "entry": [*written_out("stack.entry", stack.entry), *((KEY, record) for record in left)],
         "cell": written_out("stack.cell", stack.cell),
@@ -116,9 +142,18 @@ def _row(where: str, key: str, medium: Medium, zero: float) -> SheetRow:
 def _layer_row(part: str, key: str, record: LayerRecord, media: Media, zero: float) -> SheetRow:
     if record.kind == "delta":
         return SheetRow(part, key, thickness=0.0, strength=record.delta_eV_nm)
-    medium = media.medium(key, record)
+    medium, curves = courses_of(media, key, record)
     thickness, monolayers = _thickness(key, record, medium)
-    return replace(_row(part, key, medium, zero), thickness=thickness, monolayers=monolayers)
+    row = replace(_row(part, key, medium, zero), thickness=thickness, monolayers=monolayers, grading=record.grading_nm)
+    if curves is None:
+        return row
+    course = Course(thickness, replace(curves[0], shift=curves[0].shift - zero), *curves[1:])
+    require_reach(key, course)
+    edge, mass, nonparabolicity = course.mean()
+    ends = None if record.x_from is None or record.x_to is None else (record.x_from, record.x_to)
+    words = f"x = {ends[0]:g} to {ends[1]:g}" if ends else record.profile
+    return replace(row, band_edge=edge, mass=mass, nonparabolicity=nonparabolicity, x_ends=ends, profile=words,
+                   course=course)
 
 
 def _thickness(key: str, record: LayerRecord, medium: Medium) -> tuple[float, float | None]:
@@ -134,18 +169,6 @@ def _thickness(key: str, record: LayerRecord, medium: Medium) -> tuple[float, fl
     refuse_unless(0 < thickness <= most, f"{key}.monolayers",
                   f"come to {thickness:.6g} nm, but a layer has above 0 and at most {most:,.0f} nm; give fewer")
     return thickness, record.monolayers
-
-
-def _elements(sheet: tuple[SheetRow, ...], part: str) -> tuple[Element, ...]:
-    return tuple(element_of(row) for row in sheet if row.where == part)
-
-
-def element_of(row: SheetRow) -> Element:
-    """The layer or delta that a line of the sheet describes."""
-    if row.strength is not None:
-        return Delta(row.strength)
-    assert None not in (row.thickness, row.band_edge, row.mass)
-    return Layer(row.thickness or 0.0, row.band_edge or 0.0, row.mass or 0.0, row.nonparabolicity or 0.0)
 
 
 def lead_of(row: SheetRow) -> Lead:
