@@ -156,7 +156,7 @@ def test_the_order_of_convergence_is_six_for_a_constant_mass_and_four_for_one_th
 
     def matrix(steps: int) -> np.ndarray:
         m = transfer(on_steps(course, np.linspace(0, 10.0, steps + 1)), energy)
-        return np.array([m.a, m.b, m.c, m.d]) * np.exp(m.log_scale)
+        return np.asarray(np.array([m.a, m.b, m.c, m.d]) * np.exp(m.log_scale))
 
     errors = [np.abs(matrix(steps) - matrix(2048)).max() for steps in (16, 32, 64)]
     assert np.log2(np.array(errors[:-1]) / errors[1:]) == pytest.approx(order, abs=0.25)

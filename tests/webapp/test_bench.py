@@ -12,8 +12,8 @@ import pytest
 
 from transport import ScenarioError, load_scenario, matched_ends
 from webapp.bench import Bench
-from webapp.environment import CHECKOUT
 from webapp.editor import Rail
+from webapp.environment import CHECKOUT
 from webapp.files import Folder
 from webapp.latest import Latest, Stop
 from webapp.messages import Slide, read
