@@ -13,6 +13,7 @@ import numpy as np
 
 from transport import report
 from transport.allowance import verdict_range
+from transport.handoff import grower_csv
 from transport.lattice import default_range, lattice_bands, lowest_energy
 from transport.matching import matched_ends
 from transport.measured import measured_peaks, read_peaks
@@ -105,7 +106,11 @@ def _parser() -> argparse.ArgumentParser:
                          "uncertainty_meV (default: the scenario's [measured])")
     command.add_argument("--fit", metavar="LIST", type=lambda text: text.split(","),
                          help=f"figures to fit, out of {', '.join(FIGURES)}")
-    _command(commands, "layers", _layers, "the grower's sheet")
+    command = _command(commands, "layers", _layers, "the grower's sheet")
+    command.add_argument("--csv", action="store_true",
+                         help="every layer in the order of growth as CSV, in whole monolayers with the rounding shown")
+    command.add_argument("--rate", metavar="LIST", type=_rates, default={},
+                         help="monolayers a second for --csv, for all or by material: 0.8, or GaAs=0.8,AlGaAs=1.1")
     return parser
 
 
@@ -145,6 +150,19 @@ def _whole(name: str) -> Callable[[str], int]:
         return value
 
     return parse
+
+
+def _rates(text: str) -> dict[str, float]:
+    """Growth rates by material, "" for all others."""
+    found = {}
+    for part in text.split(","):
+        name, _, value = part.rpartition("=")
+        try:
+            found[name.strip()] = float(value)
+        except ValueError:
+            raise argparse.ArgumentTypeError(
+                f"{part!r} is no rate; write 0.8 for all, or GaAs=0.8,AlGaAs=1.1 (monolayers a second)") from None
+    return found
 
 
 def _check(scenario: Scenario, options: argparse.Namespace) -> str:
@@ -248,6 +266,8 @@ def _told(share: float) -> None:
 
 
 def _layers(scenario: Scenario, options: argparse.Namespace) -> str:
+    if options.csv:
+        return grower_csv(scenario, options.rate).rstrip("\n")
     return report.to_json(report.layers_record(scenario)) if options.json else report.layers_text(scenario)
 
 

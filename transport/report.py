@@ -21,6 +21,7 @@ from transport.periods import Verdict
 from transport.resolve import SheetRow
 from transport.resonance import Resonances
 from transport.scenario import Scenario, format_scenario
+from transport.sheet import CAUTION
 from transport.spectrum import Spectrum
 
 Record = dict[str, Any]
@@ -320,11 +321,6 @@ def _composition(row: SheetRow) -> float | str | None:
 
 
 _MEANS = "Band edge and mass of a layer through which they run are means over it."
-
-
-CAUTION = (
-    "Growth uses toxic and pyrophoric materials: follow the site's own rules and the people licensed for the reactor."
-)
 
 
 def check_text(scenario: Scenario) -> str:
