@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import json
 import re
 import shutil
 import subprocess
 import sys
 from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import IO
@@ -18,14 +20,21 @@ from tests.browser.chromium import FLAGS, found
 from webapp.environment import CHECKOUT
 
 ADDRESS = re.compile(r"at (http://\S+)")
+FAULTS = ("error", "critical")
+"""Levels of the log that no visit may cause."""
 
 
 @dataclass(frozen=True)
 class Served:
-    """A running server: its address and the folder it serves."""
+    """A running server: its address, the folder it serves, and its log."""
 
     address: str
     folder: Path
+    log: Path
+
+    def events(self) -> list[dict[str, object]]:
+        """What the log holds; every line of it is a JSON object."""
+        return [json.loads(line) for line in self.log.read_text().splitlines()]
 
 
 @pytest.fixture(scope="session")
@@ -40,18 +49,25 @@ def browser() -> Iterator[Browser]:
 
 @pytest.fixture
 def served(tmp_path: Path) -> Iterator[Served]:
-    folder = tmp_path / "scenarios"
+    with serving(tmp_path) as server:
+        yield server
+
+
+@contextmanager
+def serving(place: Path, *options: str) -> Iterator[Served]:
+    """A server with these options, on a copy of the scenarios; afterwards no fault may stand in its log."""
+    folder, log = place / "scenarios", place / "server.log"
     shutil.copytree(CHECKOUT / "scenarios", folder)
-    command = [sys.executable, "-m", "webapp", "--port", "0", str(folder)]
-    log = tmp_path / "server.log"
+    command = [sys.executable, "-m", "webapp", "--port", "0", *options, str(folder)]
     with log.open("w") as written, subprocess.Popen(
         command, cwd=CHECKOUT, stdout=subprocess.PIPE, stderr=written, text=True
     ) as server:
         assert server.stdout is not None
-        yield Served(_address(server.stdout, log), folder)
+        running = Served(_address(server.stdout, log), folder, log)
+        yield running
         server.terminate()
         assert server.wait(timeout=20) == 0, log.read_text()
-    assert "Traceback" not in log.read_text(), log.read_text()
+    assert [line for line in running.events() if line["level"] in FAULTS or "traceback" in line] == []
 
 
 def _address(output: IO[str], log: Path) -> str:
