@@ -2,22 +2,27 @@
 
 from __future__ import annotations
 
+import logging
 import tomllib
 from asyncio import AbstractEventLoop
 from pathlib import Path
 from typing import Any
+from urllib.parse import urlparse
 
 import panel as pn
 from bokeh.server.urls import per_app_patterns
+from bokeh.server.util import check_allowlist
 from tornado.web import RequestHandler
 from tornado.websocket import WebSocketClosedError
 
+from webapp import log
 from webapp.app import session
 from webapp.environment import CHECKOUT
 from webapp.login import LIVENESS, Door
 from webapp.passwords import Users
 from webapp.service import Service
 
+_MOST_ORIGIN = 200
 _ASSETS = Path(__file__).parent / "assets"
 UNUSED_SESSION_S = 15
 """How long a session is kept after its browser has gone."""
@@ -94,6 +99,12 @@ def _prompt(handler: Any) -> Any:
         return handler
 
     class PromptHandler(handler):  # type: ignore[misc]
+        def check_origin(self, origin: str) -> bool:
+            allowed: bool = check_allowlist(urlparse(origin).netloc.lower(), self.application.websocket_origins)
+            if not allowed:
+                log.tell("origin refused", origin[:_MOST_ORIGIN], level=logging.WARNING)
+            return allowed
+
         def open(self, *args: Any, **kwargs: Any) -> Any:
             self.set_nodelay(True)
             return super().open(*args, **kwargs)
