@@ -63,9 +63,11 @@ def serving(place: Path, *options: str) -> Iterator[Served]:
         command, cwd=CHECKOUT, stdout=subprocess.PIPE, stderr=written, text=True
     ) as server:
         assert server.stdout is not None
-        running = Served(_address(server.stdout, log), folder, log)
-        yield running
-        server.terminate()
+        try:
+            running = Served(_address(server.stdout, log), folder, log)
+            yield running
+        finally:
+            server.terminate()
         assert server.wait(timeout=20) == 0, log.read_text()
     assert [line for line in running.events() if line["level"] in FAULTS or "traceback" in line] == []
 
