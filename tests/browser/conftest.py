@@ -26,11 +26,12 @@ FAULTS = ("error", "critical")
 
 @dataclass(frozen=True)
 class Served:
-    """A running server: its address, the folder it serves, and its log."""
+    """A running server: its address, the folder it serves, its log, and its process."""
 
     address: str
     folder: Path
     log: Path
+    process: int
 
     def events(self) -> list[dict[str, object]]:
         """What the log holds; every line of it is a JSON object."""
@@ -64,7 +65,7 @@ def serving(place: Path, *options: str) -> Iterator[Served]:
     ) as server:
         assert server.stdout is not None
         try:
-            running = Served(_address(server.stdout, log), folder, log)
+            running = Served(_address(server.stdout, log), folder, log, server.pid)
             yield running
         finally:
             server.terminate()
