@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import logging
+import os
 import tomllib
 from asyncio import AbstractEventLoop
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 from typing import Any
 from urllib.parse import urlparse
@@ -53,7 +55,10 @@ def server(
     )
     if door is not None:
         door.close(served._tornado)
-    served.io_loop.asyncio_loop.set_exception_handler(unexpected_only)
+    loop = served.io_loop.asyncio_loop
+    loop.set_exception_handler(unexpected_only)
+    # More threads than cores would gain nothing and keep the event loop from its turn.
+    loop.set_default_executor(ThreadPoolExecutor(os.cpu_count(), thread_name_prefix="prompt"))
     return served
 
 
