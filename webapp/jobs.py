@@ -47,6 +47,11 @@ class Jobs:
         """How many jobs wait."""
         return len(self._waiting)
 
+    @property
+    def running(self) -> int:
+        """How many jobs run."""
+        return len(self._running)
+
     def line(self) -> Line:
         """The way of one visitor's jobs into the pool."""
         return Line(self)

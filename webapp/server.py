@@ -71,7 +71,7 @@ def _closed(door: Door | None) -> dict[str, Any]:
 
 
 class LivenessHandler(RequestHandler):
-    """Says that the server is alive, its version, how many sessions are open and how many long jobs wait."""
+    """Says that the server is alive, its version, how many sessions are open, how many long jobs run and wait."""
 
     def initialize(self, service: Service) -> None:
         """Called with the service for each request."""
@@ -79,8 +79,9 @@ class LivenessHandler(RequestHandler):
 
     def get(self) -> None:
         """Answer in JSON."""
-        self.write({"version": VERSION, "sessions": self._service.sessions,
-                    "jobs_waiting": self._service.jobs.waiting})
+        jobs = self._service.jobs
+        self.write({"version": VERSION, "sessions": self._service.sessions, "jobs_running": jobs.running,
+                    "jobs_waiting": jobs.waiting})
 
 
 VERSION: str = tomllib.loads((CHECKOUT / "pyproject.toml").read_text(encoding="utf-8"))["project"]["version"]

@@ -27,7 +27,7 @@ from tests.benchmarks.test_page import resident
 from tests.browser.conftest import Served, serving
 
 VISITORS, SLIDES, EVERY_S = 20, 20, 0.5
-COMING_AND_GOING, TOGETHER, FIRST = 100, 10, 20
+COMING_AND_GOING, TOGETHER, FIRST = 100, 20, 20
 PATIENCE_S = 120
 
 
@@ -144,11 +144,16 @@ async def _drag(served: Served) -> None:
     visitors = [Visitor(served.address) for _ in range(VISITORS)]
     for visitor in visitors:
         await visitor.open()
+    # Verdicts, ranges and ledgers of the first scenario are no part of a drag.
+    begin = time.perf_counter()
+    while (health := _health(served))["jobs_running"] + health["jobs_waiting"]:
+        await asyncio.sleep(0.2)
+    print(f"\nlong jobs of {VISITORS} visitors done {time.perf_counter() - begin:.1f} s after the last one's pictures")
     used, begin = processor(served.process), time.perf_counter()
     await asyncio.gather(*(v.drag(place * EVERY_S / VISITORS) for place, v in enumerate(visitors)))
     share = (processor(served.process) - used) / (time.perf_counter() - begin)
     taken = sorted(time for visitor in visitors for time in visitor.taken)
-    print(f"\n{machine()}\n{VISITORS} visitors, {SLIDES} slides each, one every {EVERY_S * 1e3:.0f} ms: "
+    print(f"{machine()}\n{VISITORS} visitors, {SLIDES} slides each, one every {EVERY_S * 1e3:.0f} ms: "
           f"{len(taken)} repaints, median {statistics.median(taken):.0f} ms, "
           f"95th percentile {taken[int(0.95 * len(taken))]:.0f} ms, longest {taken[-1]:.0f} ms; "
           f"the server used {share:.0%} of one core")
@@ -180,10 +185,11 @@ async def _visits(served: Served, many: int) -> None:
         for visitor in visitors:
             await visitor.close()
         del visitors
-        while _sessions(served):
+        while _health(served)["sessions"]:
             await asyncio.sleep(0.5)
 
 
-def _sessions(served: Served) -> int:
+def _health(served: Served) -> dict[str, int]:
     with urlopen(f"{served.address}/liveness") as answer:
-        return int(json.load(answer)["sessions"])
+        health: dict[str, int] = json.load(answer)
+        return health
