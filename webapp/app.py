@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import asyncio
-import logging
 from collections.abc import Callable
 from dataclasses import asdict
 from functools import partial
@@ -17,12 +16,14 @@ from panel.io.document import hold
 from transport import Scenario, Verdict
 from transport.document import GrowthRecord
 from transport.fewest import Asked
+from webapp import log
 from webapp import messages as say
 from webapp.bench import Bench
 from webapp.compare import Compare
 from webapp.editor import Rail
 from webapp.figures.board import Board
-from webapp.files import Entry, Folder
+from webapp.files import Entry
+from webapp.jobs import in_line
 from webapp.latest import Latest, Stop
 from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
@@ -30,6 +31,7 @@ from webapp.peaks import Peaks
 from webapp.ranges import Ranges
 from webapp.remedies import Remedies
 from webapp.results import Band, Span, most_periods, natural_span, question
+from webapp.service import Service, Visit
 from webapp.theme import LIGHT, PALETTES, css_variables
 from webapp.wire import Wire
 from webapp.work import Pictures, Wanted, pictures, verdict
@@ -37,16 +39,14 @@ from webapp.work import Pictures, Wanted, pictures, verdict
 _PAGE = Path(__file__).parent / "page.html"
 _POLL = 0.2
 _SLOW = 0.3
-_PAUSE = 0.08
-
-_log = logging.getLogger("webapp")
+_PAUSE, _REST = 0.08, 0.25
 
 
 class Session:
     """Owns the bench of one visitor, its figures and the work behind them."""
 
-    def __init__(self, document: Document, bench: Bench, drags: bool, view_only: bool) -> None:
-        self._document, self._bench, self._view_only = document, bench, view_only
+    def __init__(self, document: Document, bench: Bench, drags: bool, visit: Visit) -> None:
+        self._document, self._bench, self._visit = document, bench, visit
         self._palette = LIGHT
         self._seq, self._version, self._share = 0, 0, 0.0
         self._question: Asked | None = None
@@ -65,11 +65,11 @@ class Session:
         self.wire = Wire(self.hear)
         self._pictures = Latest(pictures, self._later(self._show_pictures), self._later(self._fail_pictures))
         self._verdicts = Latest(self._work_out, self._later(self._show_verdict), self._later(self._fail_verdict),
-                                interrupts=True)
-        self._ranges = Ranges(self._tell_range, self._draw_band, self._later)
-        self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later)
-        self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later)
-        self._compare = Compare(self.wire.tell, self.board.passes, self._later)
+                                interrupts=True, line=visit.line)
+        self._ranges = Ranges(self._tell_range, self._draw_band, self._later, visit)
+        self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later, visit)
+        self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later, visit)
+        self._compare = Compare(self.wire.tell, self.board.passes, self._later, visit)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
             lambda _, stop: bench.folder.offered(), self._later(self._show_files), self._later(self._fail_files))
 
@@ -92,7 +92,7 @@ class Session:
 
     def _act(self, message: say.AnyMessage) -> None:
         self._seq = message.seq
-        if self._view_only and say.changes_something(message):
+        if self._visit.view_only and say.changes_something(message):
             self._bench.refuse("view", "This page is for looking: sliders move, and nothing else is changed or saved.")
             self.wire.tell(status=self._status())
             return
@@ -135,6 +135,8 @@ class Session:
                 objections = self._bench.save(name, agreed)
                 if objections:
                     self.wire.tell(objections={"name": name, "sentences": objections})
+                elif (notice := self._bench.notice) and not notice.is_fault:
+                    log.tell("saved", self._bench.place or "")
                 self._tell_rail()
             case say.Slide(periods=periods):
                 self._bench.slide(periods)
@@ -246,7 +248,8 @@ class Session:
     def _tell_verdict(self) -> None:
         view = verdict_view(self._verdict, self._bench.scenario.stack.periods, self._palette)
         if self._verdict_state != "known":
-            view = {"state": self._verdict_state, "sentence": "", "present": "", "legend": [], "share": self._share}
+            view = {"state": self._verdict_state, "sentence": "", "present": "", "legend": [], "share": self._share,
+                    "waits": in_line(self._verdicts.waits_behind)}
         self.wire.tell(verdict={**view, "range": self._range})
 
     def _tell_range(self, found: dict[str, str] | None) -> None:
@@ -274,6 +277,7 @@ class Session:
         """The way of messages and results to the figures: in turn, with the document's lock, as one change."""
 
         def locked(*arguments: Any) -> None:
+            log.SESSION.set(self._visit.number)
             with hold(self._document):
                 show(*arguments)
 
@@ -307,6 +311,11 @@ class Session:
 
     def _show_page(self, wanted: Wanted, found: Pictures) -> None:
         self.wire.tell(texts=self.board.show_page(wanted, found))
+        # What takes longest waits until the slider rests.
+        self._page = asyncio.get_running_loop().call_later(
+            _REST - _PAUSE, lambda: self._later(self._follow_page)(wanted))
+
+    def _follow_page(self, wanted: Wanted) -> None:
         self._peaks.follow(wanted.scenario, wanted.span, wanted.view)
         self._compare.follow(wanted.scenario, wanted.view)
 
@@ -323,6 +332,7 @@ class Session:
         asyncio.get_running_loop().create_task(self._watch(asked))
 
     def _work_out(self, asked: Asked, stop: Stop) -> Verdict | None:
+        self._visit.allow(asked.target)
         return verdict(asked, stop, self._progress)
 
     def _progress(self, share: float) -> None:
@@ -372,18 +382,20 @@ def _extra_curves(scenario: Scenario) -> str:
     return ", ".join(beam + lost)
 
 
-def session(folder: Folder, view_only: bool = False) -> None:
-    """Fill the document of one visitor; called by the server for each. `view_only`: nothing is changed or saved."""
+def session(service: Service) -> None:
+    """Fill the document of one visitor; called by the server for each."""
     document = pn.state.curdoc
     wanted = pn.state.session_args.get("scenario", [b""])[0].decode(errors="replace")
     drags = "Mobi" not in pn.state.headers.get("User-Agent", "")
     document.title = "Colonnade"
     document.template = _PAGE.read_text(encoding="utf-8")
-    document.template_variables["variables"] = css_variables()
-    document.template_variables["view_only"] = view_only
+    document.template_variables.update(
+        variables=css_variables(), has_login=service.has_login, view_only=service.view_only)
+    share = service.enter()
+    document.on_session_destroyed(lambda context: service.leave(share))
     # One look at all models instead of one for each root halves the time to the page.
     with document.models.freeze():
-        visit = Session(document, Bench(folder, wanted or None), drags, view_only)
+        visit = Session(document, Bench(service.folder, wanted or None), drags, share)
         for figure in visit.board.figures:
             document.add_root(figure)
         document.template_variables["figures"] = [figure.name for figure in visit.board.figures]

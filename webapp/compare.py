@@ -12,6 +12,7 @@ from webapp.messages import in_words
 from webapp.pages.compare import Facts, compare_view, facts
 from webapp.remedies import Later
 from webapp.results import Passage, Span, passage
+from webapp.service import Visit
 from webapp.theme import LIGHT, Palette
 
 MOST_LAID = 3
@@ -51,14 +52,14 @@ def comparison(asked: Comparison, stop: Stop) -> tuple[tuple[Passage, ...], tupl
 class Compare:
     """What is laid over the bench. `tell` hands named parts to the page; `later` is the way of results to it."""
 
-    def __init__(self, tell: Callable[..., None], passes: PassesFigure, later: Later) -> None:
+    def __init__(self, tell: Callable[..., None], passes: PassesFigure, later: Later, visit: Visit) -> None:
         self._tell, self._passes = tell, passes
         self._palette = LIGHT
         self._laid: tuple[Laid, ...] = ()
         self._present: Scenario | None = None
         self._view: Span = (0.0, 0.0)
         self._columns: tuple[Facts, ...] = ()
-        self._work = Latest(comparison, later(self._show), later(self._fail), interrupts=True)
+        self._work = Latest(comparison, later(self._show), later(self._fail), interrupts=True, line=visit.line)
 
     def close(self) -> None:
         """The visitor has gone."""

@@ -8,12 +8,14 @@ from collections.abc import Callable, Sequence
 from transport import PeakFit, Scenario, Stack
 from webapp.figures.profile import ProfileFigure
 from webapp.figures.ticks import Ticks
+from webapp.jobs import in_line
 from webapp.latest import Latest, Stop
 from webapp.ledger import Density, Fitting, Ledger, Listing, Trace, Traced, density, fit, ledger, trace
 from webapp.messages import in_words
 from webapp.pages.peaks import fit_view, ledger_view, measured_view, no_ledger, resonance_view
 from webapp.remedies import Later
 from webapp.results import Span
+from webapp.service import Visit
 
 _POLL = 0.2
 
@@ -21,7 +23,9 @@ _POLL = 0.2
 class Peaks:
     """Follows the bench. `tell` hands named parts to the page; `later` is the way of results to it."""
 
-    def __init__(self, tell: Callable[..., None], ticks: Ticks, profile: ProfileFigure, later: Later) -> None:
+    def __init__(
+        self, tell: Callable[..., None], ticks: Ticks, profile: ProfileFigure, later: Later, visit: Visit
+    ) -> None:
         self._tell, self._ticks, self._profile, self._later = tell, ticks, profile, later
         self._listing: Listing | None = None
         self._ledger: Ledger | None = None
@@ -30,11 +34,12 @@ class Peaks:
         self._shows_density, self._seen = False, (0.0, 0.0)
         self._fit: PeakFit | None = None
         self._fit_state, self._sentence, self._share = "none", "", 0.0
-        self._ledgers = Latest(ledger, later(self._listed), later(self._not_listed), interrupts=True)
+        self._ledgers = Latest(ledger, later(self._listed), later(self._not_listed), interrupts=True, line=visit.line)
         self._traces = Latest(trace, later(self._traced), later(self._not_traced), interrupts=True)
         self._densities: Latest[tuple[Stack, Span], Density] = Latest(
             density, later(self._pictured), later(self._not_pictured), interrupts=True)
-        self._fits = Latest(self._work, later(self._fitted), later(self._not_fitted), interrupts=True)
+        self._fits = Latest(self._work, later(self._fitted), later(self._not_fitted), interrupts=True,
+                            line=visit.line)
 
     def close(self) -> None:
         """The visitor has gone."""
@@ -172,4 +177,5 @@ class Peaks:
             self._draw_fit()
 
     def _draw_fit(self) -> None:
-        self._tell(fit=fit_view(self._fit_state, self._sentence, self._share, self._fit))
+        view = fit_view(self._fit_state, self._sentence, self._share, self._fit)
+        self._tell(fit=view | {"waits": in_line(self._fits.waits_behind)})

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import re
 import shutil
 import subprocess
@@ -19,15 +20,22 @@ from tests.browser.chromium import FLAGS, found
 from webapp.environment import CHECKOUT
 
 ADDRESS = re.compile(r"at (http://\S+)")
+FAULTS = ("error", "critical")
+"""Levels of the log that no visit may cause."""
 
 
 @dataclass(frozen=True)
 class Served:
-    """A running server: its address, the folder it serves, its process."""
+    """A running server: its address, the folder it serves, its log, and its process."""
 
     address: str
     folder: Path
-    process: subprocess.Popen[str]
+    log: Path
+    process: int
+
+    def events(self) -> list[dict[str, object]]:
+        """What the log holds; every line of it is a JSON object."""
+        return [json.loads(line) for line in self.log.read_text().splitlines()]
 
 
 @pytest.fixture(scope="session")
@@ -64,12 +72,13 @@ def serving(folder: Path, *options: str, port: int = 0) -> Iterator[Served]:
     ) as server:
         assert server.stdout is not None
         try:
-            yield Served(_address(server.stdout, log), folder, server)
+            running = Served(_address(server.stdout, log), folder, log, server.pid)
+            yield running
             killed = server.poll() is not None
         finally:
             server.terminate()
         assert server.wait(timeout=20) == 0 or killed, log.read_text()
-    assert "Traceback" not in log.read_text(), log.read_text()
+    assert [line for line in running.events() if line["level"] in FAULTS or "traceback" in line] == []
 
 
 def _address(output: IO[str], log: Path) -> str:

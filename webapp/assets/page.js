@@ -1,6 +1,6 @@
 // The page: hears the session, hands each part to the module that draws it, and sends what the user does.
 
-import { byId, element, icon } from "./dom.js"
+import { byId, drawProgress, element, icon } from "./dom.js"
 import { drawRail, periodsFromRail } from "./rail.js"
 import { heldVersion, showPeriods, startBench } from "./bench.js"
 import { drawRemedies, startRemedies } from "./remedies.js"
@@ -72,8 +72,8 @@ const parts = {
     const { state, sentence, present, legend } = verdict
     byId("answer").dataset.state = state
     byId("sign").replaceChildren(icon(state))
-    byId("working").hidden = state !== "working" || !verdict.share
-    byId("progress").value = verdict.share ?? 0
+    byId("working").hidden = state !== "working" || !(verdict.share || verdict.waits)
+    drawProgress("progress", verdict.share ?? 0, verdict.waits)
     byId("again").hidden = state !== "stopped"
     if (state === "stopped") byId("sentence").textContent = "The verdict was not worked out."
     else if (sentence) byId("sentence").textContent = sentence

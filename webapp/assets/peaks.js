@@ -1,6 +1,6 @@
 // Peaks: the ledger as a table to sort and choose from, what moves a resonance, measured peaks, the fit.
 
-import { byId, element } from "./dom.js"
+import { byId, drawProgress, element } from "./dom.js"
 
 const MOST_BYTES = 1_000_000
 let send = () => {}
@@ -138,9 +138,9 @@ export function drawMeasuredFault(notice) {
 
 // The fit.
 
-export function drawFit({ state, sentence, share, rows, warnings, takes }) {
+export function drawFit({ state, sentence, share, waits, rows, warnings, takes }) {
   byId("fit-working").hidden = state !== "working"
-  byId("fit-progress").value = share
+  drawProgress("fit-progress", share, waits)
   byId("fit-sentence").textContent = sentence
   byId("fit-sentence").dataset.fault = String(state === "fault")
   byId("fit-take").hidden = !takes
