@@ -7,6 +7,8 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from importlib.metadata import entry_points
+from pathlib import Path
 from typing import NoReturn
 
 import numpy as np
@@ -22,7 +24,7 @@ from transport.parameters import PARAMETERS
 from transport.peaks import FIGURES, compare_peaks, fit_peaks
 from transport.periods import no_progress, period_verdict
 from transport.resonance import resonances
-from transport.scenario import Scenario, load_scenario, read_text, save_scenario
+from transport.scenario import Scenario, load_scenario, read_text, save_scenario, save_text
 from transport.spectrum import Spectrum, spectrum
 from transport.structure import Stack
 
@@ -111,6 +113,8 @@ def _parser() -> argparse.ArgumentParser:
                          help="every layer in the order of growth as CSV, in whole monolayers with the rounding shown")
     command.add_argument("--rate", metavar="LIST", type=_rates, default={},
                          help="monolayers a second for --csv, for all or by material: 0.8, or GaAs=0.8,AlGaAs=1.1")
+    command = _command(commands, "report", _report, "everything worked out, in one HTML file that works offline")
+    command.add_argument("--save", metavar="FILE", help="the new file to write (default: the scenario's name, .html)")
     return parser
 
 
@@ -245,12 +249,29 @@ def _peaks(scenario: Scenario, options: argparse.Namespace) -> str:
     return report.to_json(report.peaks_record(compared, fit)) if options.json else report.peaks_text(compared, fit)
 
 
+def _report(scenario: Scenario, options: argparse.Namespace) -> str:
+    path = options.save or f"{Path(options.scenario).stem}.html"
+    _refuse_there(path)
+    makers = entry_points(group="colonnade.reports", name="html")
+    if not makers:
+        raise ValueError("report: this installation has no part that makes reports; install the whole project")
+    (maker,) = makers
+    text = maker.load()(scenario)
+    save_text(path, text)
+    size = len(text.encode())
+    return report.to_json({"file": path, "bytes": size}) if options.json else f"{path}, {size / 1e6:.1f} MB"
+
+
+def _refuse_there(path: str) -> None:
+    if os.path.lexists(path):
+        raise ValueError(f"--save: {path} is there already, choose another name")
+
+
 def _save(proposals: Sequence[Scenario], path: str | None) -> None:
     """Write the first proposal to a new file, if that is wanted."""
     if path is None:
         return
-    if os.path.lexists(path):
-        raise ValueError(f"--save: {path} is there already, choose another name")
+    _refuse_there(path)
     if not proposals:
         raise ValueError("--save: there is no proposal to save; leave the option out to read why")
     save_scenario(proposals[0], path)
