@@ -25,6 +25,7 @@ from transport.peaks import FIGURES, compare_peaks, fit_peaks
 from transport.periods import no_progress, period_verdict
 from transport.resonance import resonances
 from transport.scenario import Scenario, load_scenario, read_text, save_scenario, save_text
+from transport.sheet import read_rates
 from transport.spectrum import Spectrum, spectrum
 from transport.structure import Stack
 
@@ -111,7 +112,7 @@ def _parser() -> argparse.ArgumentParser:
     command = _command(commands, "layers", _layers, "the grower's sheet")
     command.add_argument("--csv", action="store_true",
                          help="every layer in the order of growth as CSV, in whole monolayers with the rounding shown")
-    command.add_argument("--rate", metavar="LIST", type=_rates, default={},
+    command.add_argument("--rate", metavar="LIST", default="",
                          help="monolayers a second for --csv, for all or by material: 0.8, or GaAs=0.8,AlGaAs=1.1")
     command = _command(commands, "report", _report, "everything worked out, in one HTML file that works offline")
     command.add_argument("--save", metavar="FILE", help="the new file to write (default: the scenario's name, .html)")
@@ -154,19 +155,6 @@ def _whole(name: str) -> Callable[[str], int]:
         return value
 
     return parse
-
-
-def _rates(text: str) -> dict[str, float]:
-    """Growth rates by material, "" for all others."""
-    found = {}
-    for part in text.split(","):
-        name, _, value = part.rpartition("=")
-        try:
-            found[name.strip()] = float(value)
-        except ValueError:
-            raise argparse.ArgumentTypeError(
-                f"{part!r} is no rate; write 0.8 for all, or GaAs=0.8,AlGaAs=1.1 (monolayers a second)") from None
-    return found
 
 
 def _check(scenario: Scenario, options: argparse.Namespace) -> str:
@@ -288,7 +276,7 @@ def _told(share: float) -> None:
 
 def _layers(scenario: Scenario, options: argparse.Namespace) -> str:
     if options.csv:
-        return grower_csv(scenario, options.rate).rstrip("\n")
+        return grower_csv(scenario, read_rates(options.rate)).rstrip("\n")
     return report.to_json(report.layers_record(scenario)) if options.json else report.layers_text(scenario)
 
 

@@ -43,6 +43,22 @@ class GrowerRow:
     seconds: float | None
 
 
+def read_rates(text: str) -> dict[str, float]:
+    """Growth rates (monolayers a second) by material, "" for all others: `0.8`, or `GaAs=0.8,AlGaAs=1.1`.
+
+    Raises ScenarioError for what is no rate.
+    """
+    found = {}
+    for part in filter(None, (part.strip() for part in text.split(","))):
+        name, _, value = part.rpartition("=")
+        try:
+            found[name.strip()] = float(value)
+        except ValueError:
+            raise ScenarioError("rate", f"{shown(part)} is none; write 0.8 for all materials, or GaAs=0.8,AlGaAs=1.1 "
+                                "(monolayers a second)") from None
+    return found
+
+
 def grower_rows(scenario: Scenario, rates: Mapping[str, float] | None = None) -> tuple[GrowerRow, ...]:
     """Every layer to be grown, all periods written out, from the left lead's side up.
 

@@ -13,7 +13,7 @@ import panel as pn
 from bokeh.document import Document
 from panel.io.document import hold
 
-from transport import Scenario, Verdict
+from transport import Scenario, ScenarioError, Verdict
 from transport.document import GrowthRecord
 from transport.fewest import Asked
 from webapp import log
@@ -23,8 +23,10 @@ from webapp.compare import Compare
 from webapp.editor import Rail
 from webapp.figures.board import Board
 from webapp.files import Entry
+from webapp.handing import Handing
 from webapp.jobs import in_line
 from webapp.latest import Latest, Stop
+from webapp.link import Page, Shown, decode, encode
 from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
 from webapp.peaks import Peaks
@@ -45,8 +47,8 @@ _PAUSE, _REST = 0.08, 0.25
 class Session:
     """Owns the bench of one visitor, its figures and the work behind them."""
 
-    def __init__(self, document: Document, bench: Bench, drags: bool, visit: Visit) -> None:
-        self._document, self._bench, self._visit = document, bench, visit
+    def __init__(self, document: Document, bench: Bench, drags: bool, visit: Visit, linked: Shown | None) -> None:
+        self._document, self._bench, self._visit, self._linked = document, bench, visit, linked
         self._palette = LIGHT
         self._seq, self._version, self._share = 0, 0, 0.0
         self._question: Asked | None = None
@@ -70,6 +72,7 @@ class Session:
         self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later, visit)
         self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later, visit)
         self._compare = Compare(self.wire.tell, self.board.passes, self._later, visit)
+        self._handing = Handing(self.wire.tell, self._later, visit)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
             lambda _, stop: bench.folder.offered(), self._later(self._show_files), self._later(self._fail_files))
 
@@ -81,6 +84,7 @@ class Session:
         self._remedies.forget()
         self._peaks.close()
         self._compare.close()
+        self._handing.close()
         if self._page is not None:
             self._page.cancel()
 
@@ -100,6 +104,7 @@ class Session:
             case say.Hello(theme=theme):
                 self._paint(theme)
                 self._follow(reset=True)
+                self._reopen()
             case say.Theme(theme=theme):
                 self._paint(theme)
                 self._tell_verdict()
@@ -127,6 +132,12 @@ class Session:
                 self.wire.tell(status=self._status())
             case say.Unlay(place=place):
                 self._compare.take(place)
+            case say.Link(page=page):
+                self.wire.tell(link=self._link(page))
+            case say.Export(what=what, rates=rates):
+                self._handing.make(self._bench.scenario, what, self._span, rates)
+            case say.Sheet(text=text, unit=unit):
+                self._handing.look_at(text, unit)
             case say.Fit(figures=figures):
                 self._peaks.look(figures)
             case say.StopFit():
@@ -146,6 +157,27 @@ class Session:
                 self.wire.tell(status=self._status(), kept=self._bench.kept())
             case _:
                 self._edit(message)
+
+    def _link(self, page: Page) -> dict[str, str]:
+        """An address that reopens this bench, or why there is none."""
+        view = self._view()
+        seen = None if view == self._span else (view[0] * 1e3, view[1] * 1e3)
+        shown = Shown(self._bench.document, page, self.board.passes.scale, seen, self._peaks.shows_density)
+        try:
+            return {"text": encode(shown), "sentence": ""}
+        except ScenarioError as error:
+            return {"text": "", "sentence": str(error)}
+
+    def _reopen(self) -> None:
+        """Show what the link that led here showed, beside its scenario."""
+        if (shown := self._linked) is None:
+            return
+        self._linked = None
+        self.board.passes.switch(shown.scale)
+        self._peaks.show_density(shown.density)
+        if shown.energy_meV is not None:
+            self.board.axis.range.update(start=shown.energy_meV[0], end=shown.energy_meV[1])
+        self.wire.tell(view={"page": shown.page, "scale": shown.scale, "density": shown.density})
 
     def _edit(self, message: say.AnyMessage) -> None:
         bench, place = self._bench, self._bench.place
@@ -183,6 +215,11 @@ class Session:
                 if fitted := self._peaks.chosen_fit():
                     self.board.passes.remember()
                     bench.adopt(fitted, "fit to the measured peaks")
+            case say.TakeSheet(path=path):
+                if layers := self._handing.taken():
+                    bench.take_layers(path, layers)
+            case say.OpenText(name=name, text=text):
+                bench.open_text(name, text)
             case say.Restore(text=text, drafts=drafts, base=base):
                 bench.restore(text, drafts, base)
             case say.Undo():
@@ -382,6 +419,16 @@ def _extra_curves(scenario: Scenario) -> str:
     return ", ".join(beam + lost)
 
 
+def _linked(text: bytes) -> tuple[Shown | None, str]:
+    """What the link of an address shows, or a sentence that says why nothing."""
+    if not text:
+        return None, ""
+    try:
+        return decode(text.decode("ascii", "replace")), ""
+    except ScenarioError as error:
+        return None, f"The link cannot be opened: {error}"
+
+
 def session(service: Service) -> None:
     """Fill the document of one visitor; called by the server for each."""
     document = pn.state.curdoc
@@ -395,7 +442,11 @@ def session(service: Service) -> None:
     document.on_session_destroyed(lambda context: service.leave(share))
     # One look at all models instead of one for each root halves the time to the page.
     with document.models.freeze():
-        visit = Session(document, Bench(service.folder, wanted or None), drags, share)
+        linked, refused = _linked(pn.state.session_args.get("bench", [b""])[0])
+        bench = Bench(service.folder, wanted or None, linked.document if linked else None)
+        if refused:
+            bench.refuse("open", refused)
+        visit = Session(document, bench, drags, share, linked)
         for figure in visit.board.figures:
             document.add_root(figure)
         document.template_variables["figures"] = [figure.name for figure in visit.board.figures]

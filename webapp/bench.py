@@ -8,7 +8,7 @@ computed.
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 
 import msgspec
@@ -24,9 +24,11 @@ from transport import (
     read_peaks,
     scenario_from_document,
 )
+from transport.document import LayerRecord
 from transport.grouping import Kind, thickened
 from webapp import edits
 from webapp.edits import Data, Reorder
+from webapp.enclosed import scenario_from_report
 from webapp.fields import applied, name_of, number, record_of, sentence_beside
 from webapp.files import DEMOS, Folder, with_suffix
 
@@ -85,7 +87,7 @@ class Notice:
 class Bench:
     """What one session edits. Methods never raise for what a user wrote: they leave a draft or a `notice`."""
 
-    def __init__(self, folder: Folder, wanted: str | None = None) -> None:
+    def __init__(self, folder: Folder, wanted: str | None = None, linked: Document | None = None) -> None:
         self.folder = folder
         self.notice: Notice | None = None
         self._scenario = parse_scenario(NEW_SCENARIO)
@@ -95,7 +97,11 @@ class Bench:
         self._past: list[State] = []
         self._future: list[State] = []
         self._sliding = False
-        self._open_first(wanted)
+        if linked is not None:
+            self._scenario = scenario_from_document(linked)
+            self._state = State(linked)
+        else:
+            self._open_first(wanted)
 
     @property
     def document(self) -> Document:
@@ -293,6 +299,26 @@ class Bench:
             return f"{self.scenario.title}, {self.scenario.stack.periods:,} periods", self.scenario
         found = self._read(Folder(DEMOS) if demo else self.folder, name)
         return found and (f"{found[1].title}, {found[1].stack.periods:,} periods", found[1])
+
+    def open_text(self, name: str, text: str) -> None:
+        """Open a file of the user's own, a scenario or a report with one in it; it belongs to no file of the folder."""
+        try:
+            scenario = scenario_from_report(text) if text.lstrip()[:1] == "<" else parse_scenario(text)
+        except ScenarioError as error:
+            self.notice = Notice("open", f"{name} cannot be opened: {error}")
+            return
+        self._enter(State(scenario.document, {}, None, f"opening of {name}"), scenario)
+
+    def take_layers(self, path: str, layers: Sequence[LayerRecord]) -> None:
+        """Put the layers of a sheet in place of a list; drafts in the old list go."""
+        stack = msgspec.structs.replace(self.document.stack, **{name_of(path): tuple(layers)})
+        try:
+            scenario = scenario_from_document(msgspec.structs.replace(self.document, stack=stack))
+        except ScenarioError as error:
+            self.notice = Notice("sheet", str(error))
+            return
+        drafts = {place: draft for place, draft in self.drafts.items() if not place.startswith(f"{path}[")}
+        self._enter(State(scenario.document, drafts, self.place, "layer sheet"), scenario)
 
     def save(self, name: str, agreed: bool) -> tuple[str, ...]:
         """Save under `name`; unless `agreed`, first return what would be lost, as sentences, and leave the file."""

@@ -175,6 +175,40 @@ class Unlay(Message, frozen=True):
     place: int
 
 
+class Link(Message, frozen=True):
+    """Make an address that reopens this bench, on this page."""
+
+    page: Literal["periods", "peaks", "compare", "handoff"]
+
+
+class Export(Message, frozen=True):
+    """Make a file of what is shown."""
+
+    what: Literal["report", "scenario", "python", "grower", "json", "spectrum", "bands", "resonances", "periods",
+                  "peaks", "layers"]
+    rates: str = ""
+
+
+class Sheet(Message, frozen=True):
+    """Read a pasted layer sheet and show what it comes to."""
+
+    text: str
+    unit: Literal["nm", "angstrom", "monolayers"] | None = None
+
+
+class TakeSheet(Message, frozen=True):
+    """Put the layers of the sheet in place of a list."""
+
+    path: Literal["stack.entry", "stack.cell", "stack.exit"]
+
+
+class OpenText(Message, frozen=True):
+    """Open a file of the user's own: a scenario, or a report with one in it."""
+
+    name: str
+    text: str
+
+
 class Undo(Message, frozen=True):
     """One step back."""
 
@@ -219,13 +253,14 @@ class Again(Message, frozen=True):
 
 AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move
               | Mirror | Double | Thicken | Undo | Redo | DropEnds | Propose | StopProposing | Adopt | Trace
-              | Density | Measure | Fit | StopFit | TakeFit | Lay | Unlay | Browse | Open | Restore | Save
-              | Cancel | Again)
+              | Density | Measure | Fit | StopFit | TakeFit | Link | Export | Sheet | TakeSheet | OpenText | Lay
+              | Unlay | Browse | Open | Restore | Save | Cancel | Again)
 
 
 def changes_something(message: AnyMessage) -> bool:
     """Whether a message would change or save more than the number of periods, or start long work."""
-    looks = (Hello, Theme, Scale, Slide, Settle, Browse, Open, Undo, Redo, Trace, Density, Lay, Unlay, Cancel, Again)
+    looks = (Hello, Theme, Scale, Slide, Settle, Browse, Open, Undo, Redo, Trace, Density, Lay, Unlay, Link, Export,
+             OpenText, Cancel, Again)
     return not isinstance(message, looks) and not (isinstance(message, Set) and message.path == "stack.periods")
 
 

@@ -120,6 +120,11 @@ class Peaks:
             self._profile.shade(None)
         self._ask_density()
 
+    @property
+    def shows_density(self) -> bool:
+        """Whether the local density of states is drawn."""
+        return self._shows_density
+
     def _ask_density(self) -> None:
         if self._shows_density and self._listing is not None:
             self._densities.ask((self._listing.scenario.stack, self._seen))

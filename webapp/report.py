@@ -6,10 +6,7 @@ It needs no server and no network, prints on A4, and opens again on the bench. A
 
 from __future__ import annotations
 
-import base64
-import binascii
 import datetime
-import re
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -19,13 +16,13 @@ from pathlib import Path
 from bokeh.embed import components
 from bokeh.resources import INLINE
 
-from transport import Scenario, ScenarioError, Verdict, parse_scenario, period_verdict, verdict_range
+from transport import Scenario, ScenarioError, Verdict, period_verdict, verdict_range
 from transport.constants import ELECTRON_MASS, ELEMENTARY_CHARGE, HBAR2_2M0, PLANCK
 from transport.handoff import scenario_hash, versions
 from transport.limits import GROWTH, LIMITS
 from transport.periods import window_in_words
-from transport.refusal import refuse_unless
 from transport.scenario import format_scenario
+from webapp.enclosed import enclosed
 from webapp.figures.board import Board
 from webapp.figures.frame import MEV
 from webapp.latest import Stop
@@ -37,8 +34,6 @@ from webapp.work import Pictures, Wanted, pictures
 
 _STYLE = Path(__file__).parent / "assets" / "report.css"
 _MOST_ROWS = 300
-_MOST_BYTES = 8_000_000
-_BLOCK = re.compile(r'<script type="text/plain" id="scenario-toml">([A-Za-z0-9+/=\s]*)</script>')
 
 
 @dataclass(frozen=True)
@@ -176,7 +171,6 @@ def report_html(scenario: Scenario) -> str:
     matter = Matter(scenario)
     body = "".join(section(matter) for section in SECTIONS)
     script, _ = matter.figures
-    packed = base64.b64encode(format_scenario(scenario).encode()).decode()
     today = datetime.datetime.now(datetime.UTC).strftime("%Y-%m-%d %H:%M UTC")
     said = f"Colonnade report, {today}. Energies count from the left lead\u2019s band edge."
     note = f"<p class='note'>{escape(scenario.note)}</p>" if scenario.note else ""
@@ -186,22 +180,8 @@ def report_html(scenario: Scenario) -> str:
         f"<title>{escape(scenario.title)} \u00b7 Colonnade</title><style>{css_variables()}{_STYLE.read_text()}</style>"
         f"{INLINE.render()}</head><body><main><header><h1>{escape(scenario.title)}</h1>"
         f"<p class='quiet'>{said}</p>{note}</header>"
-        f"{body}</main>{script}<script type=\"text/plain\" id=\"scenario-toml\">{packed}</script></body></html>\n"
+        f"{body}</main>{script}{enclosed(scenario)}</body></html>\n"
     )
-
-
-def scenario_from_report(text: str) -> Scenario:
-    """The scenario within a report. Raises ScenarioError."""
-    refuse_unless(len(text) <= _MOST_BYTES, "report",
-                  f"is larger than {_MOST_BYTES:,} bytes; it is none of this program")
-    found = _BLOCK.search(text)
-    refuse_unless(found is not None, "report", "holds no scenario; open one that this program has written")
-    assert found is not None
-    try:
-        plain = base64.b64decode(found[1], validate=True).decode("utf-8")
-    except (binascii.Error, UnicodeDecodeError):
-        raise ScenarioError("report", "holds a scenario that was altered; ask for it again") from None
-    return parse_scenario(plain)
 
 
 # Pieces of HTML; text only ever enters escaped.

@@ -155,4 +155,4 @@ def test_the_command_line_writes_the_growers_sheet() -> None:
     answer = subprocess.run([*command, "GaAs=0.8,AlGaAs=1.1"], capture_output=True, text=True, check=True)
     assert rows_of(answer.stdout) == rows_of(grower_csv(HERON, {"GaAs": 0.8, "AlGaAs": 1.1}))
     wrong = subprocess.run([*command, "fast"], capture_output=True, text=True, check=False)
-    assert wrong.returncode == 2 and "is no rate" in wrong.stderr
+    assert wrong.returncode == 2 and 'rate: "fast" is none' in wrong.stderr

@@ -14,7 +14,8 @@ import transport.__main__ as command_line
 from transport import ScenarioError, load_scenario, period_verdict, scenario_from_document
 from transport.handoff import scenario_hash
 from transport.limits import GROWTH
-from webapp.report import SECTIONS, Matter, report_html, scenario_from_report
+from webapp.enclosed import scenario_from_report
+from webapp.report import SECTIONS, Matter, report_html
 
 HERON = load_scenario("scenarios/heron-gate.toml")
 HOSTILE = "</script><script>window.XSS = 1</script><img src=x onerror='window.XSS = 1'>"

@@ -5,6 +5,7 @@ import { byId, element } from "./dom.js"
 let send = () => {}
 let asked = null
 let chosen = null
+const MOST_BYTES = 8_000_000
 
 export function startFiles(sender, status) {
   send = sender
@@ -12,6 +13,8 @@ export function startFiles(sender, status) {
     browse("Open a scenario", ({ name, demo }) => send("open", { name, demo }))
     byId("open-warning").hidden = !status()?.changed
   })
+  byId("own-button").addEventListener("click", () => byId("own-file").click())
+  byId("own-file").addEventListener("change", openOwn)
   byId("save").addEventListener("click", () => askToSave(send, status()))
   byId("save-as").addEventListener("click", () => askForName(status()))
   byId("save-cancel").addEventListener("click", () => byId("save-dialog").close())
@@ -30,9 +33,19 @@ export function browse(title, then) {
   chosen = then
   byId("open-title").textContent = title
   byId("open-warning").hidden = true
+  byId("open-own").hidden = title !== "Open a scenario"
   byId("files").replaceChildren(element("li", { class: "quiet" }, "Reading the folder"))
   byId("open-dialog").showModal()
   send("browse")
+}
+
+async function openOwn() {
+  const [file] = byId("own-file").files
+  byId("own-file").value = ""
+  if (!file) return
+  byId("open-dialog").close()
+  const text = file.size > MOST_BYTES ? "" : await file.text()
+  send("opentext", { name: file.name, text })
 }
 
 export function askToSave(sender, status) {

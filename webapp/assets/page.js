@@ -6,14 +6,15 @@ import { heldVersion, showPeriods, startBench } from "./bench.js"
 import { drawRemedies, startRemedies } from "./remedies.js"
 import { drawChosen, drawFit, drawLedger, drawMeasured, drawMeasuredFault, drawResonance, startPeaks } from "./peaks.js"
 import { drawCompare, startCompare } from "./compare.js"
-import { startTabs } from "./tabs.js"
+import { download, drawHandoff, drawLink, drawSheet, startHandoff } from "./handoff.js"
+import { showPage, startTabs } from "./tabs.js"
 import { comeBack, heard, keep, keptFor, sent, takeUnheard } from "./keep.js"
 import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 
 const page = { status: null, pictured: null, sequence: 0, edited: 0, slid: 0, wire: null, unheard: [] }
 
 const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
-  "dropends", "adopt", "measure", "takefit", "restore", "mirror", "double", "thicken"])
+  "dropends", "adopt", "measure", "takefit", "restore", "mirror", "double", "thicken", "takesheet", "opentext"])
 
 function send(type, content = {}) {
   page.sequence += 1
@@ -112,6 +113,15 @@ const parts = {
   measured(measured) { drawMeasured(measured) },
   fit(fit) { drawFit(fit) },
   compare(compare) { drawCompare(compare) },
+  link(link) { drawLink(link) },
+  handoff(handoff) { drawHandoff(handoff) },
+  download(file) { download(file) },
+  sheet(sheet) { drawSheet(sheet) },
+  view({ page: name, scale, density }) {
+    showPage(name)
+    document.querySelector(`input[name=scale][value=${scale}]`).checked = true
+    byId("density").checked = density
+  },
   files(files) { drawFiles(files, page.status) },
   objections(objections) { drawObjections(objections) },
 }
@@ -124,7 +134,7 @@ function command(id, step) {
 }
 
 function drawNotice(notice) {
-  const shown = notice && ["open", "save", "kept", "view"].includes(notice.about)
+  const shown = notice && ["open", "save", "kept", "view", "sheet"].includes(notice.about)
   byId("notice").hidden = !shown
   byId("notice").textContent = shown ? notice.sentence : ""
   byId("notice").dataset.fault = String(Boolean(notice?.fault))
@@ -164,6 +174,7 @@ function start() {
   startRemedies(send)
   startPeaks(send)
   startCompare(send)
+  startHandoff(send)
   startFiles(send, () => page.status)
   document.addEventListener("keydown", shortcuts)
 }

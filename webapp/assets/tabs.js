@@ -11,6 +11,8 @@ export function startTabs() {
   }
 }
 
+export const shownPage = () => tabs().find((tab) => tab.ariaSelected === "true").getAttribute("aria-controls")
+
 export function showPage(name) {
   for (const tab of tabs()) {
     const here = tab.getAttribute("aria-controls") === name
