@@ -158,7 +158,6 @@ def _whole(name: str) -> Callable[[str], int]:
 
 
 def _check(scenario: Scenario, options: argparse.Namespace) -> str:
-    lattice_bands(scenario.stack)  # refuses where the one-band model ends
     return report.to_json(report.check_record(scenario)) if options.json else report.check_text(scenario)
 
 

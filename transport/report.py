@@ -12,12 +12,13 @@ import numpy as np
 
 from transport.allowance import VerdictRange
 from transport.document import EndsRecord
-from transport.lattice import Bands
+from transport.lattice import Bands, default_range
 from transport.matching import MatchedEnds
 from transport.measuring import measured_transmission
 from transport.nearest import NearestStacks, Remedy
 from transport.peaks import FIGURES, PeakComparison, PeakFit
 from transport.periods import Verdict
+from transport.propagation import model_end
 from transport.resolve import SheetRow
 from transport.resonance import Resonances
 from transport.scenario import Scenario, format_scenario
@@ -218,8 +219,17 @@ def check_record(scenario: Scenario) -> Record:
         "layers_per_cell": len(scenario.stack.cell),
         "period_nm": scenario.stack.period_length,
         "windows": len(scenario.target.windows) if scenario.target else 0,
-        "warnings": list(scenario.warnings),
+        "warnings": _cautions(scenario),
     }
+
+
+def _cautions(scenario: Scenario) -> list[str]:
+    """The scenario's warnings, and where the one-band model ends if that is within what is looked at by itself."""
+    end = model_end(scenario.stack.elements)
+    if end < default_range(scenario.stack)[0]:
+        return list(scenario.warnings)
+    return [*scenario.warnings, f"The one-band model ends at {end * 1e3:.6g} meV, where a layer's mass falls to 0: "
+            "ask for energies above it."]
 
 
 def table(header: Sequence[str], rows: Iterable[Sequence[Any]]) -> str:
@@ -327,7 +337,7 @@ def check_text(scenario: Scenario) -> str:
     """One line that says the scenario is sound, and its warnings."""
     stack = scenario.stack
     first = f"{scenario.title}: sound. {stack.periods} periods of {stack.period_length:.4g} nm."
-    return "\n".join([first, *_warning_lines(scenario)])
+    return "\n".join([first, *(f"warning: {warning}" for warning in _cautions(scenario))])
 
 
 def _warning_lines(scenario: Scenario) -> list[str]:

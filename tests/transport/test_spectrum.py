@@ -1,12 +1,15 @@
 """Spectra: chosen energies miss nothing, closed leads, shapes, and misuse."""
 
+import math
+
 import mpmath
 import numpy as np
 import pytest
+from scipy.integrate import quad
 
 from tests.reference import scattered
 from tests.transport.stacks import ALL, END_WELLS, LEAD, LOSSY, OPAQUE, PLAIN, UNEQUAL, barrier, well
-from transport import Layer, Stack, measured_transmission, spectrum, transmission_map
+from transport import Layer, Lead, Stack, measured_transmission, spectrum, transmission_map
 from transport.spectrum import MOST_PEAKS
 
 NARROW = Stack(LEAD, (barrier(12.0), well(5.0), barrier(12.0)), (well(5.0),), 1, (), LEAD)
@@ -144,3 +147,22 @@ def test_opaque_layers_do_not_overflow() -> None:
     thick = Stack(LEAD, (), (barrier(9000.0), well(5.0)), 1000, (), LEAD)
     assert spectrum(thick, [0.1]).log10_transmission == pytest.approx(-5.4e6, rel=0.1)
     assert spectrum(OPAQUE, [0.3]).transmission[0] > 0  # E = V exactly
+
+
+@pytest.mark.parametrize("right", [0.05, -0.03])
+def test_a_beam_over_a_leads_edge_is_measured_as_by_a_general_quadrature(right: float) -> None:
+    """Against scipy.integrate.quad of T times the beam's Gaussian, the edge being a break point."""
+    stack = Stack(LEAD, (), (barrier(3.0), well(6.0)), 3, (barrier(3.0),), Lead(right, 0.067))
+    sigma, edge = 0.004 / (2 * math.sqrt(2 * math.log(2))), max(right, 0.0)
+
+    def seen(energy: float) -> float:
+        def beam(e: float) -> float:
+            weight = math.exp(-(((energy - e) / sigma) ** 2) / 2) / (sigma * math.sqrt(2 * math.pi))
+            return float(spectrum(stack, e).transmission) * weight
+
+        # E = edge + s^2 takes the square root of T away from the edge.
+        return float(quad(lambda s: 2 * s * beam(edge + s * s), 0, math.sqrt(max(energy - edge, 0) + 9 * sigma),
+                          epsabs=1e-13, epsrel=1e-11, limit=400)[0])
+
+    energy = edge + np.array([-0.002, 0.0, 0.0005, 0.003, 0.01])
+    assert measured_transmission(stack, energy, 0.004) == pytest.approx([seen(float(e)) for e in energy], abs=1e-8)
