@@ -141,6 +141,19 @@ def mass_at(medium: Layer | Lead, energy: Array) -> Any:
     return medium.mass * (1 + medium.nonparabolicity * (energy - medium.band_edge))
 
 
+def flux_factor(lead: Lead, energy: Array, is_open: bool | None = None) -> NDArray[np.complex128]:
+    """g = k/m (1/nm per m0) of the wave that goes out into a lead, its mass continued too.
+
+    An open lead has k = sqrt, a closed one k = i sqrt(-), principal roots; `is_open` says which of the two is continued
+    to complex energies (default: as the real part of each energy lies above or below the lead's edge).
+    """
+    square = (energy - lead.band_edge) / (HBAR2_2M0 * mass_at(lead, energy)) + 0j
+    if is_open is not None:
+        return np.asarray(np.sqrt(square) if is_open else 1j * np.sqrt(-square))
+    opened = np.asarray(energy).real >= lead.band_edge
+    return np.asarray(np.where(opened, 1.0, 1j) * np.sqrt(np.where(opened, square, -square)))
+
+
 def model_end(elements: Sequence[Element]) -> float:
     """The energy (eV) at and below which some layer's mass would not be above 0; -inf where masses are constant."""
     return max((e.band_edge - 1 / e.nonparabolicity for e in elements if isinstance(e, Layer) and e.nonparabolicity),

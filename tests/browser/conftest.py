@@ -37,6 +37,10 @@ class Served:
         """What the log holds; every line of it is a JSON object."""
         return [json.loads(line) for line in self.log.read_text().splitlines()]
 
+    def faults(self, begin: int = 0) -> list[dict[str, object]]:
+        """Lines of the log from `begin` on that tell of a fault."""
+        return [line for line in self.events()[begin:] if line["level"] in FAULTS or "traceback" in line]
+
 
 @pytest.fixture(scope="session")
 def browser() -> Iterator[Browser]:
@@ -56,10 +60,23 @@ def folder(tmp_path: Path) -> Path:
     return place
 
 
-@pytest.fixture
-def served(folder: Path) -> Iterator[Served]:
-    with serving(folder) as server:
+@pytest.fixture(scope="session")
+def lasting(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Served]:
+    """One server for all tests that need none of their own: to start one takes longer than most tests."""
+    place = tmp_path_factory.mktemp("lasting") / "scenarios"
+    shutil.copytree(CHECKOUT / "scenarios", place)
+    with serving(place) as server:
         yield server
+
+
+@pytest.fixture
+def served(lasting: Served) -> Iterator[Served]:
+    """The lasting server with its folder as new; afterwards no fault of this test may stand in its log."""
+    shutil.rmtree(lasting.folder)
+    shutil.copytree(CHECKOUT / "scenarios", lasting.folder)
+    before = len(lasting.events())
+    yield lasting
+    assert lasting.faults(before) == []
 
 
 @contextmanager
@@ -78,7 +95,7 @@ def serving(folder: Path, *options: str, port: int = 0) -> Iterator[Served]:
         finally:
             server.terminate()
         assert server.wait(timeout=20) == 0 or killed, log.read_text()
-    assert [line for line in running.events() if line["level"] in FAULTS or "traceback" in line] == []
+    assert running.faults() == []
 
 
 def _address(output: IO[str], log: Path) -> str:
