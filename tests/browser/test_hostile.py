@@ -4,27 +4,22 @@ from __future__ import annotations
 
 import shutil
 from pathlib import Path
+from urllib.parse import quote
 
-import pytest
 from playwright.sync_api import Browser, Page, expect
 
-from tests.browser.conftest import serving, visiting
+from tests.browser.conftest import Served, visiting
 from tests.browser.test_bench import opened
 
 HOSTILE = "<img src=x onerror='window.XSS=1'><script>window.XSS=1</script>"
 
 
-@pytest.fixture
-def hostile(folder: Path) -> Path:
-    text = (folder / "heron-gate.toml").read_text()
-    (folder / "evil.toml").write_text(
+def test_hostile_text_stays_text_everywhere(browser: Browser, served: Served) -> None:
+    text = (served.folder / "heron-gate.toml").read_text()
+    (served.folder / "evil.toml").write_text(
         text.replace('title = "Heron gate"', f'title = "{HOSTILE}"').replace('note = """', f'note = """{HOSTILE}'))
-    (folder / "broken.toml").write_text(f'format = "{HOSTILE}"')
-    return folder
-
-
-def test_hostile_text_stays_text_everywhere(browser: Browser, hostile: Path) -> None:
-    with serving(hostile) as served, visiting(browser, served, "?scenario=evil.toml") as page:
+    (served.folder / "broken.toml").write_text(f'format = "{HOSTILE}"')
+    with visiting(browser, served, "?scenario=evil.toml") as page:
         expect(page.get_by_role("heading", level=1)).to_have_text(HOSTILE)
         page.locator("#open").click()
         expect(page.locator("#files")).to_contain_text("broken.toml")
@@ -46,26 +41,23 @@ def test_hostile_text_stays_text_everywhere(browser: Browser, hostile: Path) -> 
         assert page.evaluate("window.XSS") is None
 
 
-@pytest.mark.parametrize("name", ["../secret.toml", "/etc/passwd", ".hidden.toml", "a/b.toml", "link.toml", HOSTILE])
-def test_no_name_in_an_address_leads_out_of_the_folder(browser: Browser, folder: Path, name: str) -> None:
-    secret = folder.parent / "secret.toml"
-    shutil.copy(folder / "mill-race.toml", secret)
-    (folder / "link.toml").symlink_to(secret)
-    with serving(folder) as served:
-        context = browser.new_context()
-        page = context.new_page()
-        page.goto(f"{served.address}?scenario={name}")
+def test_no_name_in_an_address_leads_out_of_the_folder(browser: Browser, served: Served) -> None:
+    secret = served.folder.parent / "secret.toml"
+    shutil.copy(served.folder / "mill-race.toml", secret)
+    (served.folder / "link.toml").symlink_to(secret)
+    context = browser.new_context()
+    page = context.new_page()
+    for name in ("../secret.toml", "/etc/passwd", ".hidden.toml", "a/b.toml", "link.toml", HOSTILE):
+        page.goto(f"{served.address}?scenario={quote(name)}")
         expect(page.locator("#notice")).to_contain_text("cannot be opened")
         assert page.evaluate("window.XSS") is None
-        context.close()
+    context.close()
 
 
-@pytest.mark.parametrize("path", ["/assets/../app.py", "/assets/%2e%2e/app.py", "/assets/..%2fapp.py",
-                                  "/scenarios/heron-gate.toml"])
-def test_no_file_of_the_program_or_the_folder_is_served(page: Page, path: str) -> None:
-    address = page.url.split("?")[0].rstrip("/")
-    answer = page.request.get(address + path)
-    assert answer.status in (403, 404) and "def session" not in answer.text()
+def test_no_file_of_the_program_or_the_folder_is_served(page: Page, served: Served) -> None:
+    for path in ("/assets/../app.py", "/assets/%2e%2e/app.py", "/assets/..%2fapp.py", "/scenarios/heron-gate.toml"):
+        answer = page.request.get(served.address.rstrip("/") + path)
+        assert answer.status in (403, 404) and "def session" not in answer.text(), path
 
 
 def test_uploads_are_bounded(page: Page, tmp_path: Path) -> None:
