@@ -18,7 +18,6 @@ from transport.structure import Stack
 FWHM_PER_SIGMA = 2 * math.sqrt(2 * math.log(2))
 _REACH = 9.0  # standard deviations; what lies beyond weighs less than 1e-17
 _STEPS_PER_SIGMA = 2
-_NEAR_EDGE = 0.02  # width of an interval over its distance from the edge, above which the edge is felt
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,25 +68,12 @@ def measured_curves(
     start = math.ceil((end - begin) / sigma * _STEPS_PER_SIGMA) + 2
     samples = resolve(stack.lossless(), counts, np.full(counts.size, begin), np.full(counts.size, end), start)
     joined = np.flatnonzero(samples.joined)
-    node, weight = _nodes(begin, samples.energy[joined], samples.energy[joined + 1])
+    node, weight = gauss_nodes(samples.energy[joined], samples.energy[joined + 1])
     row = np.repeat(samples.row[joined], node.shape[1])
     chain = Chain(stack, node.ravel())
     value = np.minimum(chain.transmission(chain.denominator(chain.powers(counts[row]))), 1.0) * weight.ravel()
     ends = np.searchsorted(row, np.arange(counts.size + 1))
     return [Measured(node.ravel()[i:j], value[i:j], sigma) for i, j in pairwise(ends)]
-
-
-def _nodes(begin: float, low: Floats, high: Floats) -> tuple[Floats, Floats]:
-    """Gauss nodes and weights of every interval, shape (intervals, nodes).
-
-    At a lead's edge, where the range may begin, T grows as a square root; in s, E = begin + s^2, it is smooth. Further
-    up the plain nodes are kept: they lie between neighbouring doubles where squares would not.
-    """
-    node, weight = gauss_nodes(low, high)
-    near = high - low > _NEAR_EDGE * (low - begin)
-    root, share = gauss_nodes(np.sqrt(low[near] - begin), np.sqrt(high[near] - begin))
-    node[near], weight[near] = begin + root**2, 2 * root * share
-    return node, weight
 
 
 def measured_transmission(stack: Stack, energies: ArrayLike, resolution: float) -> Floats:
