@@ -141,7 +141,7 @@ def _refuse_broken_gaps(sheet: Sequence[SheetRow]) -> None:
         refuse_unless(
             gap >= 0, right.key, f"is {right.faces[0].label} beside {left.faces[1].label} ({left.key}), a broken gap: "
             f"the conduction edge of {lower.label} lies {-gap * 1000:.3g} meV below the valence edge of {upper.label}, "
-            "and a one-band model does not hold there; take another material, or part the two by one")
+            "and a one-band model does not hold there; take another material, or put a third between them")
 
 
 def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:

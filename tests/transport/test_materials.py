@@ -7,7 +7,6 @@ import pytest
 from transport import material
 from transport.materials import GapClosedError, is_alloy, material_names, mismatch, substrate_names
 
-
 BINARIES = ("GaAs", "AlAs", "InAs", "InP", "GaSb", "AlSb")
 ALLOYS = ("AlGaAs", "InGaAs", "InAlAs", "GaAsSb", "AlGaSb", "AlAsSb")
 

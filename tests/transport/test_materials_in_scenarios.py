@@ -6,8 +6,8 @@ import pytest
 
 from transport import Scenario, ScenarioError, material, parse_scenario
 
-INAS, GASB, ALSB = ('{ material = "%s", thickness_nm = 2 }' % name for name in ("InAs", "GaSb", "AlSb"))
-REMEDY = "and a one-band model does not hold there; take another material, or part the two by one"
+INAS, GASB, ALSB = (f'{{ material = "{name}", thickness_nm = 2 }}' for name in ("InAs", "GaSb", "AlSb"))
+REMEDY = "and a one-band model does not hold there; take another material, or put a third between them"
 
 
 def scenario(

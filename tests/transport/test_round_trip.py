@@ -29,6 +29,7 @@ from transport.document import (
 )
 from transport.materials import is_alloy, material_names, substrate_names
 from transport.parameters import PARAMETERS
+from transport.refusal import ScenarioError
 
 
 def numbers(name: str) -> st.SearchStrategy[float]:
