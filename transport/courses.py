@@ -58,4 +58,6 @@ def _graded_alloy(media: Media, key: str, record: LayerRecord, first: float, las
     edge, mass, nonparabolicity = (
         Curve("series", tuple(column.tolist())) for column in chebyshev.chebfit(places, values, _DEGREE).T)
     warnings = dict.fromkeys(sentence for share in (0.0, 1.0) for sentence in at(share).warnings)
-    return replace(at(0.5), x=None, warnings=tuple(warnings)), (edge, mass, nonparabolicity)
+    left, right = at(0.0).faces, at(1.0).faces
+    faces = (left[0], right[1]) if left and right else None
+    return replace(at(0.5), x=None, warnings=tuple(warnings), faces=faces), (edge, mass, nonparabolicity)

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 LIMITS = (
     ("One band, one electron, along growth.", "Effective masses with flux-conserving matching; no other valleys, no "
-     "valence band, no charging. `check` warns where an alloy is indirect, a layer strained or a value extrapolated, "
-     "and refuses energies where a non-parabolic mass would vanish."),
+     "valence band, no charging. `check` warns where an alloy is indirect, a layer strained, a value extrapolated or a "
+     "window too high for one band; broken gaps and energies where a non-parabolic mass would vanish are refused."),
     ("Band offsets are known to some 20 meV at best.", "The arithmetic has ten digits and more; the sample has not."),
     ("Coherent.", "`dephasing_meV` counts every scattered electron as lost, although real samples pass many of them in "
      "sequence: what it gives is the coherent part, a lower bound. Interfaces are sharp unless graded by `grading_nm`, "

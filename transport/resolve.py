@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 from transport.checks import written_out
 from transport.courses import courses_of
@@ -11,11 +12,16 @@ from transport.document import Document, LayerRecord, LeadRecord, WindowRecord, 
 from transport.ends import KEY, end_layers
 from transport.graded import lay_out, require_reach
 from transport.materials import OFFSET_WARNING
-from transport.media import Media, Medium
+from transport.media import Edges, Media, Medium
 from transport.parameters import PARAMETERS
 from transport.profiles import Course
 from transport.refusal import ScenarioError, refuse_unless, shown
 from transport.structure import Lead, Stack, Target, Window
+
+HIGHEST_PARABOLIC = 0.2
+"""Share of the gap above a band edge up to which one mass will do: Kane's is then a fifth heavier (common practice)."""
+HIGHEST_BENT = 0.5
+"""The same where masses bend: beyond, Kane's two bands are not enough either (common practice)."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,7 +35,8 @@ class SheetRow:
 
     A layer whose edge or mass runs has a `course` through it, `profile` names it in words, and band edge, mass and
     nonparabolicity are means over the layer; `x_ends`: compositions at the faces of a graded alloy; `grading`:
-    length of its graded interfaces (nm). `slices`: how many elements of the stack the row comes to.
+    length of its graded interfaces (nm). `slices`: how many elements of the stack the row comes to. `faces`: edges of
+    a library material at its left and right face.
     """
 
     where: str
@@ -48,6 +55,7 @@ class SheetRow:
     grading: float | None = None
     course: Course | None = None
     slices: int = 1
+    faces: tuple[Edges, Edges] | None = None
 
 
 def monolayer_of(row: SheetRow) -> float:
@@ -80,9 +88,10 @@ def resolve(document: Document) -> Resolved:
     zero = media.medium("leads.left", document.leads.left).band_edge
     target = _target(document)
     rows = tuple(_sheet(document, media, zero))
+    _refuse_broken_gaps(rows)
     stack, counts = stack_of(rows, target, document.stack.periods, document.conditions.dephasing_meV / 1000)
     sheet = tuple(replace(row, slices=count) for row, count in zip(rows, counts, strict=True))
-    return Resolved(stack, target, sheet, _warnings(sheet, media))
+    return Resolved(stack, target, sheet, _warnings(sheet, media, target))
 
 
 def stack_of(
@@ -120,6 +129,21 @@ def _built_in_drop(left: LeadRecord, right: LeadRecord) -> bool:
     return left != right
 
 
+def _refuse_broken_gaps(sheet: Sequence[SheetRow]) -> None:
+    """Neighbours, the cell's last layer and its first among them; a delta has no thickness and parts nothing."""
+    layers = [row for row in sheet if row.strength is None]
+    cell = [row for row in layers if row.where == "cell"]
+    for left, right in (*pairwise(layers), (cell[-1], cell[0])):
+        if left.faces is None or right.faces is None:
+            continue
+        lower, upper = sorted((left.faces[1], right.faces[0]), key=lambda edges: edges.valence)
+        gap = lower.conduction - upper.valence
+        refuse_unless(
+            gap >= 0, right.key, f"is {right.faces[0].label} beside {left.faces[1].label} ({left.key}), a broken gap: "
+            f"the conduction edge of {lower.label} lies {-gap * 1000:.3g} meV below the valence edge of {upper.label}, "
+            "and a one-band model does not hold there; take another material, or put a third between them")
+
+
 def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:
     stack = document.stack
     left, right = end_layers(stack.ends, stack.cell, lambda *at: courses_of(media, *at)[0]) if stack.ends else ((), ())
@@ -136,7 +160,7 @@ def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:
 
 def _row(where: str, key: str, medium: Medium, zero: float) -> SheetRow:
     return SheetRow(where, key, medium.material, medium.x, band_edge=medium.band_edge - zero, mass=medium.mass,
-                    nonparabolicity=medium.nonparabolicity, warnings=medium.warnings)
+                    nonparabolicity=medium.nonparabolicity, warnings=medium.warnings, faces=medium.faces)
 
 
 def _layer_row(part: str, key: str, record: LayerRecord, media: Media, zero: float) -> SheetRow:
@@ -188,9 +212,27 @@ def _window(window: WindowRecord) -> Window:
     return Window(window.kind, window.from_meV / 1000, window.to_meV / 1000, window.transmission, measure)
 
 
-def _warnings(sheet: tuple[SheetRow, ...], media: Media) -> tuple[str, ...]:
+def _warnings(sheet: tuple[SheetRow, ...], media: Media, target: Target | None) -> tuple[str, ...]:
     """Every sentence once, in the order of the sheet."""
     found = dict.fromkeys(sentence for row in sheet for sentence in row.warnings)
+    if target and target.windows:
+        found |= dict.fromkeys(_too_high(sheet, max(window.top for window in target.windows)))
     if len(media.library) > 1:
         found[OFFSET_WARNING] = None
     return tuple(found)
+
+
+def _too_high(sheet: Sequence[SheetRow], top: float) -> Iterator[str]:
+    """A sentence on the material above whose edge `top` (eV) lies by the largest share of its gap, if one is due."""
+    reaches = [((top - row.band_edge) / _gap(row.faces[0]), row) for row in sheet
+               if row.faces and row.band_edge is not None and row.course is None]
+    share, row = max(reaches, key=lambda reach: reach[0], default=(0.0, sheet[0]))
+    bent = bool(row.nonparabolicity)
+    if row.faces and row.band_edge is not None and share > (HIGHEST_BENT if bent else HIGHEST_PARABOLIC):
+        remedy = "" if bent else "; conditions.nonparabolic = true takes the masses there for heavier"
+        yield (f"Windows reach {(top - row.band_edge) * 1000:.3g} meV above the band edge of {row.faces[0].label}, "
+               f"{share:.2g} of its gap: one band is not enough so high{remedy}.")
+
+
+def _gap(edges: Edges) -> float:
+    return edges.conduction - edges.valence

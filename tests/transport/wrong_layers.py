@@ -148,7 +148,7 @@ WRONG_LAYERS = {
     ),
     "material unknown": (
         '"AlAs"', '"AlSa"',
-        'stack.exit[0].layers[0].material: "AlSa" is neither in the library nor in [materials]; did you mean AlGaAs?',
+        'stack.exit[0].layers[0].material: "AlSa" is neither in the library nor in [materials]; did you mean AlSb?',
     ),
     "material a number": ('"AlAs"', "7", "stack.exit[0].layers[0].material: must be text in quotes, but is 7"),
     "mass on a material layer": (

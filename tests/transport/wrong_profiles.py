@@ -75,7 +75,7 @@ WRONG = {
                            "out, and x_to"),
     "x_from of nothing known": ('material = "AlGaSa", x_from = 0.1, x_to = 0.3, monolayers = 9',
                                 'stack.cell[0].material: "AlGaSa" is neither in the library nor in [materials]; did '
-                                "you mean AlGaAs?"),
+                                "you mean AlGaSb?"),
     "x_from beyond 1": ('material = "AlGaAs", x_from = 0.1, x_to = 1.3, monolayers = 9',
                         "stack.cell[0].x_to: must be from 0 to 1, but is 1.3"),
     "no grading": (BARRIER + ", grading_nm = 0",
