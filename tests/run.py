@@ -12,6 +12,8 @@ from tests.browser.chromium import obtained
 from webapp.environment import CHECKOUT, prepared
 
 STATIC_CHECKS = [["ruff", "check", "."], ["mypy"]]
+TOGETHER = ["--numprocesses=2", "--dist=loadgroup"]
+"""All tests at once: those of the browser on one core, one after another, and the rest on the other."""
 
 
 def main() -> int:
@@ -19,9 +21,8 @@ def main() -> int:
     python = prepared("test")
     obtained(python)
     wanted = sys.argv[1:]
-    checks = [] if wanted else STATIC_CHECKS
-    ends = [subprocess.run([python, "-m", *check], cwd=CHECKOUT, check=False).returncode
-            for check in [*checks, ["pytest", *wanted]]]
+    checks = [["pytest", *wanted]] if wanted else [*STATIC_CHECKS, ["pytest", *TOGETHER]]
+    ends = [subprocess.run([python, "-m", *check], cwd=CHECKOUT, check=False).returncode for check in checks]
     return max(ends, key=abs)
 
 

@@ -7,12 +7,15 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from importlib.metadata import entry_points
+from pathlib import Path
 from typing import NoReturn
 
 import numpy as np
 
 from transport import report
 from transport.allowance import verdict_range
+from transport.handoff import grower_csv
 from transport.lattice import default_range, lattice_bands, lowest_energy
 from transport.matching import matched_ends
 from transport.measured import measured_peaks, read_peaks
@@ -21,7 +24,8 @@ from transport.parameters import PARAMETERS
 from transport.peaks import FIGURES, compare_peaks, fit_peaks
 from transport.periods import no_progress, period_verdict
 from transport.resonance import resonances
-from transport.scenario import Scenario, load_scenario, read_text, save_scenario
+from transport.scenario import Scenario, load_scenario, read_text, save_scenario, save_text
+from transport.sheet import read_rates
 from transport.spectrum import Spectrum, spectrum
 from transport.structure import Stack
 
@@ -105,7 +109,13 @@ def _parser() -> argparse.ArgumentParser:
                          "uncertainty_meV (default: the scenario's [measured])")
     command.add_argument("--fit", metavar="LIST", type=lambda text: text.split(","),
                          help=f"figures to fit, out of {', '.join(FIGURES)}")
-    _command(commands, "layers", _layers, "the grower's sheet")
+    command = _command(commands, "layers", _layers, "the grower's sheet")
+    command.add_argument("--csv", action="store_true",
+                         help="every layer in the order of growth as CSV, in whole monolayers with the rounding shown")
+    command.add_argument("--rate", metavar="LIST", default="",
+                         help="monolayers a second for --csv, for all or by material: 0.8, or GaAs=0.8,AlGaAs=1.1")
+    command = _command(commands, "report", _report, "everything worked out, in one HTML file that works offline")
+    command.add_argument("--save", metavar="FILE", help="the new file to write (default: the scenario's name, .html)")
     return parser
 
 
@@ -148,7 +158,6 @@ def _whole(name: str) -> Callable[[str], int]:
 
 
 def _check(scenario: Scenario, options: argparse.Namespace) -> str:
-    lattice_bands(scenario.stack)  # refuses where the one-band model ends
     return report.to_json(report.check_record(scenario)) if options.json else report.check_text(scenario)
 
 
@@ -227,12 +236,29 @@ def _peaks(scenario: Scenario, options: argparse.Namespace) -> str:
     return report.to_json(report.peaks_record(compared, fit)) if options.json else report.peaks_text(compared, fit)
 
 
+def _report(scenario: Scenario, options: argparse.Namespace) -> str:
+    path = options.save or f"{Path(options.scenario).stem}.html"
+    _refuse_there(path)
+    makers = entry_points(group="colonnade.reports", name="html")
+    if not makers:
+        raise ValueError("report: this installation has no part that makes reports; install the whole project")
+    (maker,) = makers
+    text = maker.load()(scenario)
+    save_text(path, text)
+    size = len(text.encode())
+    return report.to_json({"file": path, "bytes": size}) if options.json else f"{path}, {size / 1e6:.1f} MB"
+
+
+def _refuse_there(path: str) -> None:
+    if os.path.lexists(path):
+        raise ValueError(f"--save: {path} is there already, choose another name")
+
+
 def _save(proposals: Sequence[Scenario], path: str | None) -> None:
     """Write the first proposal to a new file, if that is wanted."""
     if path is None:
         return
-    if os.path.lexists(path):
-        raise ValueError(f"--save: {path} is there already, choose another name")
+    _refuse_there(path)
     if not proposals:
         raise ValueError("--save: there is no proposal to save; leave the option out to read why")
     save_scenario(proposals[0], path)
@@ -248,6 +274,8 @@ def _told(share: float) -> None:
 
 
 def _layers(scenario: Scenario, options: argparse.Namespace) -> str:
+    if options.csv:
+        return grower_csv(scenario, read_rates(options.rate)).rstrip("\n")
     return report.to_json(report.layers_record(scenario)) if options.json else report.layers_text(scenario)
 
 

@@ -18,7 +18,7 @@ from transport.fewest import Asked, fewest_periods
 from transport.oscillation import Floats
 from transport.periods import checked, histories, no_progress
 from transport.refusal import ScenarioError
-from transport.resolve import SheetRow, element_of, lead_of, monolayer_of
+from transport.resolve import SheetRow, monolayer_of, stack_of
 from transport.scenario import Scenario
 from transport.structure import Stack
 
@@ -164,9 +164,7 @@ class Deviations:
         mass = 1 + (rest.pop(0) * self.growth.mass_percent / 100 if self.growth.mass_percent else 0.0)
         errors = dict(zip(self.kinds, rest, strict=True))
         rows = [self._row(row, offset, mass, errors.get(_kind(row), 0)) for row in self.scenario.sheet]
-        entry, cell, exit_ = (tuple(element_of(row) for row in rows if row.where == part)
-                              for part in ("entry", "cell", "exit"))
-        return Stack(lead_of(rows[0]), entry, cell, 1, exit_, lead_of(rows[-1]), self.scenario.stack.dephasing)
+        return stack_of(rows, self.scenario.target, 1, self.scenario.stack.dephasing)[0]
 
     def _row(self, row: SheetRow, offset: float, mass: float, error: int) -> SheetRow:
         if row.strength is not None:
@@ -176,13 +174,14 @@ class Deviations:
             thickness += error * self.growth.monolayer_error * monolayer_of(row)
             if thickness <= 0:
                 raise ScenarioError("growth.monolayer_error", f"would leave nothing of {row.key}; give a smaller one")
+        course = row.course.scaled(thickness or 0.0, offset, mass) if row.course else None
         return replace(row, thickness=thickness, band_edge=(row.band_edge or 0.0) * offset,
-                       mass=(row.mass or 0.0) * mass)
+                       mass=(row.mass or 0.0) * mass, course=course)
 
 
 def _kind(row: SheetRow) -> tuple[object, ...]:
-    """Layers of one kind are grown alike: same material and composition, or same edge and mass."""
-    return (row.material, row.x, row.band_edge, row.mass)
+    """Layers of one kind are grown alike: same material and composition, or same edge, mass and profile."""
+    return (row.material, row.x, row.band_edge, row.mass, row.profile)
 
 
 def _kind_names(rows: list[SheetRow]) -> list[str]:

@@ -23,8 +23,9 @@ from transport.parameters import PARAMETERS
 from transport.refusal import ScenarioError, check_limits, refuse_unless, shown
 
 _ALLOWED = {
-    "material": ("material", "x", "thickness_nm", "monolayers"),
-    "explicit": ("band_edge_eV", "mass", "thickness_nm", "nonparabolicity_per_eV"),
+    "material": ("material", "x", "x_from", "x_to", "thickness_nm", "monolayers", "grading_nm"),
+    "explicit": ("band_edge_eV", "mass", "thickness_nm", "nonparabolicity_per_eV", "grading_nm"),
+    "profile": ("profile", "mass", "thickness_nm", "nonparabolicity_per_eV"),
     "delta": ("delta_eV_nm",),
     "group": ("repeat", "layers"),
 }
@@ -32,10 +33,19 @@ _LEAD_ALLOWED = {
     "material": ("material", "x", "donors_cm3", "fermi_meV"),
     "explicit": ("band_edge_eV", "mass", "nonparabolicity_per_eV", "donors_cm3", "fermi_meV"),
 }
-_KIND_NAMES = {"material": "material layer", "explicit": "layer given by its band edge", "delta": "delta",
-               "group": "repeat group"}
+PROFILE_KEYS = {
+    "linear": ("from_eV", "to_eV"), "cosine": ("mean_eV", "amplitude_eV"), "gaussian": ("height_eV", "width_nm"),
+    "sech2": ("height_eV", "width_nm"), "fermi": ("step_eV", "width_nm"), "parabola": ("height_eV", "width_nm"),
+    "samples": ("potential_eV",),
+}
+"""What each profile needs."""
+BASED_PROFILES = ("gaussian", "sech2")
+"""Profiles that may also have a base_eV."""
+_KIND_NAMES = {"material": "material layer", "explicit": "layer given by its band edge",
+               "profile": "profile layer", "delta": "delta", "group": "repeat group"}
 # The key that makes a layer what it is, in the order in which kinds are named to the user.
-_KIND_KEYS = {"material": "material", "band_edge_eV": "explicit", "delta_eV_nm": "delta", "repeat": "group"}
+_KIND_KEYS = {"material": "material", "band_edge_eV": "explicit", "delta_eV_nm": "delta", "profile": "profile",
+              "repeat": "group"}
 
 
 def check_document(document: Document) -> None:
@@ -131,17 +141,47 @@ def _size(record: LayerRecord) -> int:
 def _check_layer(key: str, record: LayerRecord, groups: bool) -> None:
     given = [name for name in _KIND_KEYS if getattr(record, name) is not None]
     refuse_unless(len(given) > 0, key,
-                  "does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm")
+                  "does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm, or profile")
     refuse_unless(len(given) == 1, f"{key}.{given[-1]}", f"stands beside {given[0]}; keep one of them")
     kind = _KIND_KEYS[given[0]]
-    _refuse_others(key, record, _ALLOWED[kind], f"a {_KIND_NAMES[kind]}")
+    if kind == "profile":
+        _check_profile(key, record)
+    else:
+        _refuse_others(key, record, _ALLOWED[kind], f"a {_KIND_NAMES[kind]}")
     _check_numbers(key, record)
+    _check_composition(key, record)
     if kind == "group":
         _check_group(key, record, groups)
     elif kind != "delta":
         _check_thickness(key, record)
-    refuse_unless(kind != "explicit" or record.mass is not None, f"{key}.mass",
-                  "is missing; a layer given by its band edge needs a mass")
+    refuse_unless(kind not in ("explicit", "profile") or record.mass is not None, f"{key}.mass",
+                  f"is missing; a {_KIND_NAMES[kind]} needs a mass")
+
+
+def _check_profile(key: str, record: LayerRecord) -> None:
+    assert record.profile is not None
+    needed = PROFILE_KEYS[record.profile]
+    based = ("base_eV",) if record.profile in BASED_PROFILES else ()
+    _refuse_others(key, record, (*_ALLOWED["profile"], *needed, *based), f"a {record.profile} profile")
+    for name in needed:
+        refuse_unless(getattr(record, name) is not None, f"{key}.{name}",
+                      f"is missing; a {record.profile} profile needs {' and '.join(needed)}")
+    if record.potential_eV is not None:
+        count, size = PARAMETERS["file_samples"], len(record.potential_eV)
+        refuse_unless(count.admits(size), f"{key}.potential_eV",
+                      f"must have {count.low:g} to {count.high:,g} values, but has {size:,}")
+        for index, value in enumerate(record.potential_eV):
+            check_limits(f"{key}.potential_eV[{index}]", "potential_eV", value)
+
+
+def _check_composition(key: str, record: LayerRecord) -> None:
+    """A composition is one number, or two for a graded alloy."""
+    for name, other in (("x_from", "x_to"), ("x_to", "x_from")):
+        if getattr(record, name) is None:
+            continue
+        refuse_unless(record.x is None, f"{key}.{name}", "stands beside x; keep x, or x_from with x_to")
+        refuse_unless(getattr(record, other) is not None, f"{key}.{other}",
+                      "is missing; a graded alloy runs from x_from to x_to")
 
 
 def _refuse_others(key: str, record: Record, allowed: tuple[str, ...], title: str) -> None:

@@ -16,9 +16,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from transport.cell import Cell
-from transport.constants import HBAR2_2M0
-from transport.propagation import Span, mass_at, transfer
-from transport.structure import Lead, Stack
+from transport.propagation import Span, flux_factor, transfer
+from transport.structure import Stack
 
 Complexes = NDArray[np.complex128]
 Floats = NDArray[np.float64]
@@ -63,12 +62,6 @@ def strips(stack: Stack, low: float, high: float) -> list[Strip]:
         found.append(Strip(below, above, stack.left.band_edge <= a, stack.right.band_edge <= a, a in edges, b in edges,
                            beyond))
     return found
-
-
-def flux_factor(lead: Lead, energy: Complexes, is_open: bool) -> Complexes:
-    """g = k/m (1/nm per m0) at complex energies, the mass continued too."""
-    square = (energy - lead.band_edge) / (HBAR2_2M0 * mass_at(lead, energy))
-    return np.asarray(np.sqrt(square) if is_open else 1j * np.sqrt(-square))
 
 
 @dataclass(frozen=True, slots=True)

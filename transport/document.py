@@ -52,26 +52,41 @@ class Leads(Record, frozen=True):
 
 
 class LayerRecord(Record, frozen=True):
-    """A layer, a delta or a `repeat` group; `kind` says which."""
+    """A layer, a profile layer, a delta or a `repeat` group; `kind` says which."""
 
     material: str | None = None
     x: float | None = None
+    x_from: float | None = None
+    x_to: float | None = None
     thickness_nm: float | None = None
     monolayers: float | None = None
     band_edge_eV: float | None = None
     mass: float | None = None
     nonparabolicity_per_eV: float | None = None
+    grading_nm: float | None = None
+    profile: Literal["linear", "cosine", "gaussian", "sech2", "fermi", "parabola", "samples"] | None = None
+    from_eV: float | None = None
+    to_eV: float | None = None
+    mean_eV: float | None = None
+    amplitude_eV: float | None = None
+    height_eV: float | None = None
+    width_nm: float | None = None
+    base_eV: float | None = None
+    step_eV: float | None = None
+    potential_eV: tuple[float, ...] | None = None
     delta_eV_nm: float | None = None
     repeat: int | None = None
     layers: tuple[LayerRecord, ...] | None = None
 
     @property
-    def kind(self) -> Literal["material", "explicit", "delta", "group"]:
+    def kind(self) -> Literal["material", "explicit", "profile", "delta", "group"]:
         """What the record describes; meaningful once it has been checked."""
         if self.material is not None:
             return "material"
         if self.delta_eV_nm is not None:
             return "delta"
+        if self.profile is not None:
+            return "profile"
         return "explicit" if self.repeat is None else "group"
 
 

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
 
+from transport.graded import lay_out_like
 from transport.materials import material
-from transport.resolve import SheetRow, monolayer_of
+from transport.resolve import SheetRow, altered, monolayer_of
 from transport.scenario import Scenario
 from transport.sensitivity import Slopes, pole_slopes
+from transport.structure import Layer
+
+_FIGURES = ("thickness", "band_edge", "mass", "nonparabolicity")
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,13 +38,20 @@ def sensitivities(scenario: Scenario, energy: float, width: float) -> tuple[Effe
     """What moves the resonance at `energy` (eV) of `width` (eV), the largest effect on its energy first.
 
     A layer of the cell counts for every period. Steps: one monolayer, 0.01 in x (at the same thickness in nm), 10 meV
-    of band edge, one per cent of mass or delta strength. Dephasing is left out.
+    of band edge, one per cent of mass or delta strength. Dephasing is left out, and so is the composition of a layer
+    whose band edge runs (graded alloys, graded interfaces); its thickness is that of the file, widths in nm stay.
     """
     slopes = pole_slopes(scenario.stack.lossless(), [complex(energy, -width / 2)])
-    rows = [row for part in ("entry", "cell", "exit") for row in scenario.sheet if row.where == part]
-    effects = [_effect(row, figure, step, slope)
-               for place, row in enumerate(rows)
-               for figure, step, slope in _steps(scenario, row, _of_row(slopes, place))]
+    starts = itertools.accumulate((row.slices for row in scenario.sheet), initial=0)
+    effects = []
+    for place, (row, start) in enumerate(zip(scenario.sheet, starts, strict=False)):
+        if row.where in ("left lead", "right lead"):
+            continue
+        if row.slices == 1:
+            steps = _steps(scenario, row, _of_row(slopes, start))
+        else:
+            steps = _steps_of_a_course(scenario, place, slopes)
+        effects += [_effect(row, figure, step, shift) for figure, step, shift in steps]
     return tuple(sorted(effects, key=lambda effect: -abs(effect.energy)))
 
 
@@ -65,6 +77,24 @@ def _steps(scenario: Scenario, row: SheetRow, slope: dict[str, complex]) -> Iter
         yield "composition", "0.01 in x", shift * 0.01
 
 
+def _steps_of_a_course(scenario: Scenario, place: int, slopes: Slopes) -> Iterator[tuple[str, str, complex]]:
+    """The same for a row that comes to many layers: each moves as its figure says, and the shifts add up."""
+    row = scenario.sheet[place]
+    small = 1e-3  # of a step: what the layers are, follows from it to rounding
+
+    def shift(**step: float) -> complex:
+        rows = [tuple(altered(r, **{name: sign * small * size for name, size in step.items()}) if r is row else r
+                      for r in scenario.sheet) for sign in (1, -1)]
+        more, less = (lay_out_like(changed, scenario.stack.elements).elements for changed in rows)
+        return sum((complex(getattr(slopes, name)[0, i]) * (getattr(a, name) - getattr(b, name))
+                    for i, (a, b) in enumerate(zip(more, less, strict=True)) if isinstance(a, Layer) and a != b
+                    for name in _FIGURES), 0j) / (2 * small)
+
+    yield "thickness", "1 monolayer", shift(thickness=monolayer_of(row))
+    yield "band edge", "10 meV", shift(band_edge=0.01)
+    yield "mass", "1 %", shift(mass_share=0.01)
+
+
 def composition_slopes(name: str, x: float, temperature: float, substrate: str | None) -> tuple[float, float, float]:
     """d/dx of band edge (eV), mass (m0) and gap (eV) of a library alloy.
 
@@ -80,5 +110,6 @@ def composition_slopes(name: str, x: float, temperature: float, substrate: str |
 
 
 def _effect(row: SheetRow, figure: str, step: str, shift: complex) -> Effect:
-    name = row.material or ("delta" if row.strength is not None else f"layer at {(row.band_edge or 0.0) * 1e3:.4g} meV")
+    known = row.material or row.profile or ("delta" if row.strength is not None else None)
+    name = known or f"layer at {(row.band_edge or 0.0) * 1e3:.4g} meV"
     return Effect(row.key, name, figure, step, shift.real, -2 * shift.imag)

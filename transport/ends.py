@@ -135,6 +135,9 @@ def _lowered(
     if not wells:
         raise ScenarioError(f"{KEY}.of", "is height, but the cell has no layer to count it from; taper the width")
     well = min(wells, key=lambda layer: medium(KEY, layer).band_edge)
+    if record.profile is not None or record.x_from is not None:
+        raise ScenarioError(f"{KEY}.of", "is height, but the band edge of a barrier runs and keeps its height; "
+                            "taper the width")
     if record.band_edge_eV is not None:
         ground = medium(KEY, well).band_edge
         return replace(record, band_edge_eV=ground + share * (record.band_edge_eV - ground))

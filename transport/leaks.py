@@ -25,8 +25,8 @@ from numpy.typing import NDArray
 
 from transport.cell import Cell
 from transport.constants import HBAR2_2M0
-from transport.determinant import Complexes, Floats, Strip, determinant, flux_factor, newton_step
-from transport.propagation import Transfer, element_transfer, mass_at, transfer
+from transport.determinant import Complexes, Floats, Strip, determinant, newton_step
+from transport.propagation import Transfer, element_transfer, flux_factor, mass_at, transfer
 from transport.structure import Element, Lead, Stack
 
 _MOST_VALUES = 500_000  # states held at once

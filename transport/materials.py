@@ -1,7 +1,8 @@
 """The library of materials: band edge, mass, gap and monolayer at a temperature, composition and strain.
 
 Source: Vurgaftman, Meyer and Ram-Mohan, J. Appl. Phys. 89, 5815 (2001); every value with its table number stands in
-materials.toml. The Gamma valley only; masses are those of low temperature, as in the paper.
+materials.toml. The Gamma valley only; masses are those of low temperature, as in the paper. x counts the first-named
+cation or, where there is one cation only, antimony.
 """
 
 from __future__ import annotations
@@ -14,6 +15,8 @@ from dataclasses import dataclass
 from importlib import resources
 
 import msgspec
+
+from transport.refusal import nearest
 
 WARMEST_FITTED = 600.0
 """Temperature (K) above which Varshni's fits are extrapolations (common practice)."""
@@ -47,6 +50,7 @@ class _Alloy(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
     mass_bowing: float = 0.0
     valence_edge_bowing_eV: float = 0.0
     a_c_bowing_eV: float = 0.0
+    indirect: bool = False
     indirect_above: float = 1.0
     indirect_below: float = 0.0
 
@@ -61,7 +65,9 @@ class Material:
     """A material as the engine needs it: energies eV, lengths nm, mass m0.
 
     `band_edge` is the conduction-band edge on the scale of the paper's valence-band offsets (0 = valence edge of
-    InSb), strain included; `gap` and `lattice_constant` are unstrained. `warnings` are sentences for the user.
+    InSb), strain included; `valence_edge`, `gap` and `lattice_constant` are unstrained. `monolayer` is half the
+    lattice constant along growth, which strain against a substrate stretches or shortens. `warnings` are sentences
+    for the user.
     """
 
     name: str
@@ -70,12 +76,9 @@ class Material:
     mass: float
     gap: float
     lattice_constant: float
+    valence_edge: float
+    monolayer: float
     warnings: tuple[str, ...] = ()
-
-    @property
-    def monolayer(self) -> float:
-        """One monolayer along (001): half the lattice constant, nm."""
-        return self.lattice_constant / 2
 
     @property
     def label(self) -> str:
@@ -119,17 +122,20 @@ def base_of(name: str) -> str | None:
 def material(name: str, x: float | None, temperature: float, substrate: str | None = None) -> Material:
     """The library material `name` of composition `x` (None for a binary) at `temperature` (K).
 
-    With `substrate` (a binary) the Gamma edge is shifted by a_c tr(eps) of a layer grown on it along (001):
-    e_par = (a_substrate - a) / a, tr(eps) = 2 e_par (1 - C12/C11). Raises ValueError for a name the library lacks
-    or an x that does not fit, GapClosedError for too high a temperature. Source: see the module.
+    With `substrate` (a binary) the Gamma edge is shifted by a_c tr(eps) of a layer grown on it along [001], and its
+    monolayer is stretched by eps_zz: eps_xx = eps_yy = a_substrate / a - 1, eps_zz = -2 C12/C11 eps_xx. Raises
+    ValueError for a name the library lacks, an x that does not fit or a temperature below 0, GapClosedError for too
+    high a one. Source: see the module.
     """
-    _check_use(name, x, substrate)
+    _check_use(name, x, temperature, substrate)
     bulk = _bulk(name, x, temperature)
     if bulk.gap <= 0:
         raise GapClosedError(f"is {temperature:g} K, where the gap of {name} has closed; lower it")
-    shift = 0.0 if substrate is None else _strain_shift(bulk, _bulk(substrate, None, temperature))
-    edge = bulk.valence_edge + bulk.gap + shift
-    return Material(name, x, edge, bulk.mass, bulk.gap, bulk.lattice_constant, _warnings(name, x, temperature))
+    in_plane, along = (0.0, 0.0) if substrate is None else _strain(bulk, _bulk(substrate, None, temperature))
+    # Compression (a negative trace) raises the edge, because a_c is negative.
+    edge = bulk.valence_edge + bulk.gap + bulk.a_c * (2 * in_plane + along)
+    return Material(name, x, edge, bulk.mass, bulk.gap, bulk.lattice_constant, bulk.valence_edge,
+                    bulk.lattice_constant * (1 + along) / 2, _warnings(name, x, temperature))
 
 
 def mismatch(found: Material, reference: Material) -> float:
@@ -137,11 +143,13 @@ def mismatch(found: Material, reference: Material) -> float:
     return found.lattice_constant / reference.lattice_constant - 1
 
 
-def _check_use(name: str, x: float | None, substrate: str | None) -> None:
+def _check_use(name: str, x: float | None, temperature: float, substrate: str | None) -> None:
     if name not in material_names():
-        raise ValueError(f"name is {name!r}: give one of {', '.join(material_names())}")
+        raise ValueError(f"name is {name!r}: {nearest(str(name), material_names())}")
     if is_alloy(name) != (x is not None) or not 0 <= (x or 0.0) <= 1:
         raise ValueError(f"x is {x!r}: give an alloy a composition from 0 to 1, a binary none")
+    if not 0 <= temperature < math.inf:
+        raise ValueError(f"temperature is {temperature!r}: give kelvin, 0 or above and finite")
     if substrate is not None and substrate not in substrate_names():
         raise ValueError(f"substrate is {substrate!r}: give one of {', '.join(substrate_names())}")
 
@@ -181,10 +189,10 @@ def _bowed(x: float, first: float, second: float, bowing: float = 0.0) -> float:
     return x * first + (1 - x) * second - x * (1 - x) * bowing
 
 
-def _strain_shift(bulk: _Bulk, substrate: _Bulk) -> float:
-    """a_c tr(eps) in eV; compression (a negative trace) raises the edge, because a_c is negative."""
-    in_plane = (substrate.lattice_constant - bulk.lattice_constant) / bulk.lattice_constant
-    return bulk.a_c * 2 * in_plane * (1 - bulk.c12 / bulk.c11)
+def _strain(bulk: _Bulk, substrate: _Bulk) -> tuple[float, float]:
+    """eps_xx = eps_yy and eps_zz of a pseudomorphic layer on (001): free to move along growth only."""
+    in_plane = substrate.lattice_constant / bulk.lattice_constant - 1
+    return in_plane, -2 * bulk.c12 / bulk.c11 * in_plane
 
 
 def _label(name: str, x: float | None) -> str:
@@ -195,7 +203,8 @@ def _warnings(name: str, x: float | None, temperature: float) -> tuple[str, ...]
     label = _label(name, x)
     sentences = []
     if _is_indirect(name, x):
-        sentences.append(f"{label} is indirect: its lowest valley is not Gamma, and only Gamma is counted.")
+        sentences.append(f"{label} is indirect: its lowest valley is not Gamma{_crossover(name)}, and only Gamma is "
+                         "counted.")
     if temperature > WARMEST_FITTED:
         sentences.append(f"The gap of {label} at {temperature:g} K is extrapolated beyond {WARMEST_FITTED:g} K.")
     return tuple(sentences)
@@ -205,4 +214,13 @@ def _is_indirect(name: str, x: float | None) -> bool:
     if x is None:
         return _library().binaries[name].indirect
     alloy = _library().alloys[name]
-    return x > alloy.indirect_above or x < alloy.indirect_below
+    return alloy.indirect or x > alloy.indirect_above or x < alloy.indirect_below
+
+
+def _crossover(name: str) -> str:
+    """Where an alloy turns indirect, in words; nothing for what is indirect throughout."""
+    alloy = _library().alloys.get(name)
+    if alloy is None or alloy.indirect:
+        return ""
+    place = alloy.indirect_above if alloy.indirect_above < 1 else alloy.indirect_below
+    return f" (the crossover is near x = {place:g})"

@@ -80,6 +80,13 @@ def read_peaks(text: str, lever_arm: float | None = None) -> MeasuredRecord:
     return record
 
 
+def format_peaks(record: MeasuredRecord) -> str:
+    """The peaks as a CSV table that `read_peaks` reads back."""
+    used = [name for name in COLUMNS if any(getattr(peak, name) is not None for peak in record.peaks)]
+    rows = [["" if (value := getattr(peak, name)) is None else repr(value) for name in used] for peak in record.peaks]
+    return "".join(",".join(row) + "\n" for row in [used, *rows]) if used else ""
+
+
 def _columns(names: list[str]) -> list[str]:
     for name in names:
         refuse_unless(name in COLUMNS, f"peaks, column {shown(name)}", f"is not known here; {nearest(name, COLUMNS)}")

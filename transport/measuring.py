@@ -18,6 +18,7 @@ from transport.structure import Stack
 FWHM_PER_SIGMA = 2 * math.sqrt(2 * math.log(2))
 _REACH = 9.0  # standard deviations; what lies beyond weighs less than 1e-17
 _STEPS_PER_SIGMA = 2
+_GRADES = 12
 
 
 @dataclass(frozen=True, slots=True)
@@ -68,12 +69,41 @@ def measured_curves(
     start = math.ceil((end - begin) / sigma * _STEPS_PER_SIGMA) + 2
     samples = resolve(stack.lossless(), counts, np.full(counts.size, begin), np.full(counts.size, end), start)
     joined = np.flatnonzero(samples.joined)
-    node, weight = gauss_nodes(samples.energy[joined], samples.energy[joined + 1])
-    row = np.repeat(samples.row[joined], node.shape[1])
+    row, bottom, top = samples.row[joined], samples.energy[joined], samples.energy[joined + 1]
+    edge = max(stack.left.band_edge, stack.right.band_edge)
+    row, bottom, top = _graded(row, bottom, top, edge)
+    node, weight = _edge_nodes(bottom, top, edge)
+    row = np.repeat(row, node.shape[1])
     chain = Chain(stack, node.ravel())
     value = np.minimum(chain.transmission(chain.denominator(chain.powers(counts[row]))), 1.0) * weight.ravel()
     ends = np.searchsorted(row, np.arange(counts.size + 1))
     return [Measured(node.ravel()[i:j], value[i:j], sigma) for i, j in pairwise(ends)]
+
+
+def _graded(
+    row: NDArray[np.int64], low: Floats, high: Floats, edge: float
+) -> tuple[NDArray[np.int64], Floats, Floats]:
+    """Intervals, ascending by row, those that begin at a lead's edge cut ever finer towards it.
+
+    The other lead's edge may lie a hair below: there T bends as closely to this one.
+    """
+    first = np.flatnonzero(low == edge)
+    cut = edge + (high[first, None] - edge) * 4.0 ** np.arange(-_GRADES, 0)
+    place, row_there = np.repeat(first + 1, _GRADES), np.repeat(row[first], _GRADES)
+    upper = np.column_stack([cut[:, 1:], high[first]])
+    high = high.copy()
+    high[first] = cut[:, 0]
+    return (np.insert(row, place, row_there), np.insert(low, place, cut.ravel()),
+            np.insert(high, place, upper.ravel()))
+
+
+def _edge_nodes(low: Floats, high: Floats, edge: float) -> tuple[Floats, Floats]:
+    """Gauss nodes and weights (intervals, nodes) in u with E = edge + u^2: T is smooth in u where a lead opens."""
+    begin = np.sqrt(low - edge)[:, None]
+    extent = (high - low)[:, None] / (begin + np.sqrt(high - edge)[:, None])  # sqrt(high) - sqrt(low), uncancelled
+    share, weight = gauss_nodes(np.zeros(1), np.ones(1))
+    step = extent * share
+    return low[:, None] + step * (2 * begin + step), weight * extent * 2 * (begin + step)
 
 
 def measured_transmission(stack: Stack, energies: ArrayLike, resolution: float) -> Floats:

@@ -16,9 +16,22 @@ from transport.refusal import ScenarioError, nearest, refuse_unless, shown
 
 
 @dataclass(frozen=True, slots=True)
+class Edges:
+    """Valence and conduction edge (eV, from the valence edge of InSb) of the material called `label`, unstrained.
+
+    Unstrained, because the library does not know how strain moves a valence edge.
+    """
+
+    label: str
+    valence: float
+    conduction: float
+
+
+@dataclass(frozen=True, slots=True)
 class Medium:
     """`material` (None where only an edge is given) with `band_edge` on the document's scale (eV), `mass` (m0),
-    `nonparabolicity` (1/eV) and, where they are known, `monolayer` (nm) and `base`: what an alloy is at x = 0."""
+    `nonparabolicity` (1/eV) and, where they are known, `monolayer` (nm), `base`: what an alloy is at x = 0, and
+    `faces`: the edges of a library material at its left and right face."""
 
     material: str | None
     x: float | None
@@ -28,6 +41,7 @@ class Medium:
     monolayer: float | None = None
     warnings: tuple[str, ...] = ()
     base: str | None = None
+    faces: tuple[Edges, Edges] | None = None
 
 
 class Media:
@@ -51,6 +65,10 @@ class Media:
         if record.material in self._users:
             return self._of_the_scenario(key, self._users[record.material], record.x)
         return self._of_the_library(key, record.material, record.x)
+
+    def is_graded(self, name: str) -> bool:
+        """Whether a material may run through compositions: an alloy of the library, and not one of the scenario's."""
+        return name not in self._users and (name not in materials.material_names() or materials.is_alloy(name))
 
     def _find_substrate(self) -> Material | None:
         name = self._conditions.substrate
@@ -89,8 +107,9 @@ class Media:
                 f"[materials.{name}] a band_edge_eV and mass, or the left lead a library material")
         self.library.add(found.label)
         nonparabolicity = 1 / found.gap if self._conditions.nonparabolic else 0.0
+        edges = Edges(found.label, found.valence_edge, found.valence_edge + found.gap)
         return Medium(name, x, found.band_edge - self._zero.band_edge, found.mass, nonparabolicity, found.monolayer,
-                      (*found.warnings, *self._mismatch_warning(found)), materials.base_of(name))
+                      (*found.warnings, *self._mismatch_warning(found)), materials.base_of(name), (edges, edges))
 
     def _mismatch_warning(self, found: Material) -> tuple[str, ...]:
         reference = self._substrate or self._zero

@@ -55,8 +55,8 @@ class PeakFit:
     """A least-squares fit of some figures to the measured peaks.
 
     `values` and `errors` (standard errors; NaN where the data leave none): nm for thicknesses, eV for energies, as
-    changes from the scenario. `warnings` are sentences. `scenario` has the fitted figures in it; None where the file
-    has no place for them (the band edge of a library material).
+    changes from the scenario. `warnings` are sentences. `scenario` has the fitted figures in it, a barrier whose edge
+    was fitted as an explicit layer; None where the file has no place for them (groups, an end treatment).
     """
 
     figures: tuple[str, ...]
@@ -69,13 +69,16 @@ class PeakFit:
     scenario: Scenario | None
 
 
-def compare_peaks(scenario: Scenario, peaks: MeasuredPeaks | None = None) -> PeakComparison:
+def compare_peaks(
+    scenario: Scenario, peaks: MeasuredPeaks | None = None, among: Resonances | None = None
+) -> PeakComparison:
     """Pair the measured peaks of a scenario (or others) with its resonances, never crossing.
 
-    Raises ScenarioError where no peak is measured, and where all lie below both leads.
+    `among`: resonances of its stack that are known already; else those around the peaks are looked for. Raises
+    ScenarioError where no peak is measured, and where all lie below both leads.
     """
     measured = _known(scenario, peaks)
-    return _compared(scenario.stack, measured, 0.0)
+    return _paired(measured, among or resonances(scenario.stack, peak_range(scenario.stack, measured)), 0.0)
 
 
 def fit_peaks(
@@ -88,13 +91,16 @@ def fit_peaks(
 
     Least squares, weighted by the uncertainties where every peak has one, with exact derivatives (`sensitivity.py`).
     Standard errors from the curvature at the minimum; without uncertainties they are scaled by the scatter left.
-    Raises ScenarioError for unknown figures, and for more of them than there are peaks.
+    Raises ScenarioError for unknown figures, for more of them than there are peaks, and for other figures than the
+    shift where a layer's band edge runs.
     """
     from scipy.optimize import least_squares
 
     measured = _known(scenario, peaks)
     _check_figures(figures, measured)
-    before = _compared(scenario.stack, measured, 0.0)
+    if tuple(figures) != ("shift",):
+        _refuse_courses(scenario)
+    before = compare_peaks(scenario, measured)
     model = _Model(scenario.stack.lossless(), measured, tuple(figures))
     steps = 0
 
@@ -132,8 +138,19 @@ def _check_figures(figures: Sequence[str], measured: MeasuredPeaks) -> None:
         raise ScenarioError("fit", f"asks for {len(figures)} figures of {measured.energy.size} peaks; ask for fewer")
 
 
+def _refuse_courses(scenario: Scenario) -> None:
+    """Profiles and graded interfaces are neither barrier nor well: their thicknesses and edges are not fitted."""
+    for row in scenario.sheet:
+        if row.slices > 1:
+            raise ScenarioError(row.key, "has a band edge that runs, which a fit of well, barrier or edge leaves "
+                                "alone; fit the shift only")
+
+
 def _compared(stack: Stack, measured: MeasuredPeaks, shift: float) -> PeakComparison:
-    found = resonances(stack, _range(stack, measured.energy - shift))
+    return _paired(measured, resonances(stack, peak_range(stack, measured, shift)), shift)
+
+
+def _paired(measured: MeasuredPeaks, found: Resonances, shift: float) -> PeakComparison:
     pairs = assigned(measured.energy - shift, found.energy, measured.weight)
     paired = pairs >= 0
     deviation = np.full(measured.energy.size, np.nan)
@@ -141,8 +158,12 @@ def _compared(stack: Stack, measured: MeasuredPeaks, shift: float) -> PeakCompar
     return PeakComparison(measured, found, pairs, deviation)
 
 
-def _range(stack: Stack, energy: Floats) -> tuple[float, float]:
-    """Where to look for resonances: around the measured peaks, with room, and above a lead's edge."""
+def peak_range(stack: Stack, measured: MeasuredPeaks, shift: float = 0.0) -> tuple[float, float]:
+    """Where to look for resonances (eV): around the measured peaks, less their `shift`, with room, above a lead's edge.
+
+    Raises ScenarioError where all lie below both leads.
+    """
+    energy = measured.energy - shift
     open_from = min(stack.left.band_edge, stack.right.band_edge)
     if float(energy[-1]) <= open_from:
         raise ScenarioError("measured.peaks", f"lie below both leads, whose edges begin at {open_from * 1e3:.6g} meV; "
@@ -262,12 +283,14 @@ def _fitted(scenario: Scenario, figures: Sequence[str], values: Floats) -> Scena
     """The scenario with the fitted figures; None where the file has no place for one of them."""
     change = dict(zip(figures, (float(v) for v in values), strict=True))
     level, rows = _middle(scenario.stack), {row.key: row for row in scenario.sheet}
+    zero = scenario.document.leads.left.band_edge_eV or 0.0
     if scenario.document.stack.ends is not None:
         return None
     parts = {}
     for part in ("entry", "cell", "exit"):
         records = getattr(scenario.document.stack, part)
-        found = [_refitted(record, rows.get(f"stack.{part}[{i}]"), change, level) for i, record in enumerate(records)]
+        found = [_refitted(record, rows.get(f"stack.{part}[{i}]"), change, level, zero)
+                 for i, record in enumerate(records)]
         if any(record is None for record in found):
             return None
         parts[part] = tuple(found)
@@ -276,21 +299,19 @@ def _fitted(scenario: Scenario, figures: Sequence[str], values: Floats) -> Scena
 
 
 def _refitted(
-    record: LayerRecord, row: SheetRow | None, change: dict[str, float], level: float
+    record: LayerRecord, row: SheetRow | None, change: dict[str, float], level: float, zero: float
 ) -> LayerRecord | None:
-    """A layer's record with the fitted figures; None for a group, and for the edge of a material."""
+    """A layer's record with the fitted figures; None for a group. `zero`: the left lead's edge on the file's scale."""
     if record.kind == "delta":
         return record
     if row is None or row.thickness is None or row.band_edge is None:
         return None
     wall = row.band_edge > level
     thicker = change.get("barrier" if wall else "well", 0.0)
-    if record.monolayers is not None:
-        record = msgspec.structs.replace(record, monolayers=record.monolayers * (1 + thicker / row.thickness))
-    else:
-        record = msgspec.structs.replace(record, thickness_nm=row.thickness + thicker)
     if wall and "edge" in change:
-        if record.band_edge_eV is None:
-            return None
-        return msgspec.structs.replace(record, band_edge_eV=record.band_edge_eV + change["edge"])
-    return record
+        # A material's edge stands in its table: the layer is written by its own edge and mass instead.
+        return LayerRecord(band_edge_eV=row.band_edge + zero + change["edge"], mass=row.mass,
+                           nonparabolicity_per_eV=row.nonparabolicity or None, thickness_nm=row.thickness + thicker)
+    if record.monolayers is not None:
+        return msgspec.structs.replace(record, monolayers=record.monolayers * (1 + thicker / row.thickness))
+    return msgspec.structs.replace(record, thickness_nm=row.thickness + thicker)

@@ -55,6 +55,7 @@ class Verdict:
     `ripple_floor` and `ripple_floor_energy` (eV): the least limit of the minimum-measured pass windows that lie in a
     miniband; `mean_limit`: the least limit of the mean-measured ones. Both None where no such window exists and with
     dephasing, for which no such limit holds; with a beam resolution they are limits of what is measured.
+    `loses_beyond`: with dephasing, the count beyond which no pass window ever passes more; else None.
     """
 
     fewest: int | None
@@ -65,12 +66,13 @@ class Verdict:
     mean_limit: float | None
     per_period: tuple[PeriodCheck, ...]
     windows: tuple[Window, ...]
+    loses_beyond: int | None = None
 
     @property
     def sentence(self) -> str:
         """The verdict in one sentence."""
         if self.fewest is None:
-            return self.reason or ""
+            return f"{self.reason or ''}{self._losses}"
         check = self.per_period[self.fewest - 1]
         words = f"Fewest periods: {self.fewest}."
         if len(self.meeting) != len(self.per_period) - self.fewest + 1:
@@ -78,7 +80,14 @@ class Verdict:
         if check.limiting_window is not None:
             window = self.windows[check.limiting_window]
             words += f" Limiting: {window_in_words(window)}, {check.margin_dB:.1f} dB to spare."
-        return words
+        return words + self._losses
+
+    @property
+    def _losses(self) -> str:
+        if self.loses_beyond is None:
+            return ""
+        count = "1 period" if self.loses_beyond == 1 else f"{self.loses_beyond} periods"
+        return f" Beyond {count} further ones only lose current (coherent part only)."
 
 
 def window_in_words(window: Window) -> str:
@@ -126,7 +135,17 @@ def period_verdict(
         mean_limit=min(limits, default=None),
         per_period=checks,
         windows=target.windows,
+        loses_beyond=_loses_beyond(records) if scenario.stack.dephasing else None,
     )
+
+
+def _loses_beyond(records: tuple[WindowHistory, ...]) -> int | None:
+    """The count from which on every pass window only loses; None where none passes anything, or all still gain."""
+    passing = [r.log10 for r in records if r.window.kind == "pass" and np.isfinite(r.log10).all()]
+    if not passing:
+        return None
+    last = max(int(np.argmax(log10)) + 1 for log10 in passing)
+    return last if last < passing[0].size else None
 
 
 def histories(

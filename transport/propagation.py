@@ -96,12 +96,16 @@ def transfer(elements: Sequence[Element], energy: Array, span: Span | None = Non
     if not elements:
         return IDENTITY
     span = span or Span.of(energy)
-    known = {element: element_transfer(element, energy, span) for element in dict.fromkeys(elements)}
     scaled = _growth_bound(elements, span) > OPAQUE
-    total = known[elements[0]]
-    for element in elements[1:]:
-        total = known[element] @ total
-        if scaled:
+    last = {element: place for place, element in enumerate(elements)}
+    held: dict[Element, Transfer] = {}  # of elements that come again, and no others: a profile has hundreds of layers
+    total = IDENTITY
+    for place, element in enumerate(elements):
+        step = held.pop(element) if element in held else element_transfer(element, energy, span)
+        if last[element] > place:
+            held[element] = step
+        total = step @ total if place else step
+        if scaled and place:
             total = total.rescaled()
     return total
 
@@ -135,6 +139,19 @@ def mass_at(medium: Layer | Lead, energy: Array) -> Any:
     if not medium.nonparabolicity:
         return medium.mass
     return medium.mass * (1 + medium.nonparabolicity * (energy - medium.band_edge))
+
+
+def flux_factor(lead: Lead, energy: Array, is_open: bool | None = None) -> NDArray[np.complex128]:
+    """g = k/m (1/nm per m0) of the wave that goes out into a lead, its mass continued too.
+
+    An open lead has k = sqrt, a closed one k = i sqrt(-), principal roots; `is_open` says which of the two is continued
+    to complex energies (default: as the real part of each energy lies above or below the lead's edge).
+    """
+    square = (energy - lead.band_edge) / (HBAR2_2M0 * mass_at(lead, energy)) + 0j
+    if is_open is not None:
+        return np.asarray(np.sqrt(square) if is_open else 1j * np.sqrt(-square))
+    opened = np.asarray(energy).real >= lead.band_edge
+    return np.asarray(np.where(opened, 1.0, 1j) * np.sqrt(np.where(opened, square, -square)))
 
 
 def model_end(elements: Sequence[Element]) -> float:
@@ -212,13 +229,19 @@ def _opaque(x: Array) -> tuple[Array, Array, NDArray[np.float64]]:
 
 
 def _growth_bound(elements: Sequence[Element], span: Span) -> float:
-    """A rough upper bound of log |M|: decay in barriers, and something for every mismatch between neighbours."""
-    growth = 0.0
-    for element in elements:
-        if isinstance(element, Delta):
-            growth += math.log1p(abs(element.strength) / HBAR2_2M0)
-        else:
-            unit = element.mass / HBAR2_2M0
-            decay = math.sqrt(max(0.0, element.band_edge - span.low) * unit) + math.sqrt(span.imaginary * unit / 2)
-            growth += 1.0 + decay * element.thickness
+    """A rough upper bound of log |M|: decay in barriers, and something for every mismatch between neighbours.
+
+    A thin layer t does no more than t (m/u + |q| u)/2, q = (E - V)/C, whatever its neighbours: in units where psi'/m
+    counts u times, that is the norm of the part of its generator that makes a solution grow.
+    """
+    layers = [element for element in elements if isinstance(element, Layer)]
+    reach = [max(abs(span.low - e.band_edge), abs(span.high - e.band_edge)) + span.imaginary for e in layers]
+    heavy = math.fsum(e.mass * e.thickness for e in layers)
+    steep = math.fsum(q * e.thickness for q, e in zip(reach, layers, strict=True)) / HBAR2_2M0
+    unit = math.sqrt(heavy / steep) if heavy and 0 < steep < math.inf else 1.0
+    growth = math.fsum(math.log1p(abs(e.strength) / HBAR2_2M0) for e in elements if isinstance(e, Delta))
+    for q, layer in zip(reach, layers, strict=True):
+        share = layer.mass / HBAR2_2M0
+        decay = math.sqrt(max(0.0, layer.band_edge - span.low) * share) + math.sqrt(span.imaginary * share / 2)
+        growth += min(1.0 + decay * layer.thickness, layer.thickness * (layer.mass / unit + q / HBAR2_2M0 * unit) / 2)
     return growth

@@ -12,14 +12,17 @@ import numpy as np
 
 from transport.allowance import VerdictRange
 from transport.document import EndsRecord
-from transport.lattice import Bands
+from transport.lattice import Bands, default_range
 from transport.matching import MatchedEnds
 from transport.measuring import measured_transmission
 from transport.nearest import NearestStacks, Remedy
 from transport.peaks import FIGURES, PeakComparison, PeakFit
 from transport.periods import Verdict
+from transport.propagation import model_end
+from transport.resolve import SheetRow
 from transport.resonance import Resonances
 from transport.scenario import Scenario, format_scenario
+from transport.sheet import CAUTION
 from transport.spectrum import Spectrum
 
 Record = dict[str, Any]
@@ -54,6 +57,8 @@ def spectrum_record(scenario: Scenario, spectrum: Spectrum) -> Record:
     }
     if scenario.resolution:
         record["measured_transmission"] = measured_transmission(spectrum.stack, spectrum.energy, scenario.resolution)
+    if spectrum.narrow is not None:
+        record |= {"from_pole_meV": (spectrum.narrow.energy * 1e3).tolist(), "note": spectrum.note}
     if spectrum.envelope is not None:
         record |= {
             "envelope_lower": np.where(spectrum.envelope.passing, spectrum.envelope.lower, spectrum.transmission),
@@ -89,7 +94,7 @@ def verdict_record(verdict: Verdict) -> Record:
         "sentence": verdict.sentence,
         "ripple_floor": verdict.ripple_floor,
         "ripple_floor_meV": None if energy is None else energy * 1e3,
-        "mean_limit": verdict.mean_limit,
+        "mean_limit": verdict.mean_limit, "loses_beyond_periods": verdict.loses_beyond,
         "per_period": [
             {"periods": c.periods, "meets": c.meets, "margin_dB": c.margin_dB, "limiting_window": c.limiting_window}
             for c in verdict.per_period
@@ -197,7 +202,8 @@ def layers_record(scenario: Scenario) -> Record:
         "layers": [
             {"where": row.where, "material": row.material, "x": row.x, "thickness_nm": row.thickness,
              "monolayers": row.monolayers, "band_edge_eV": row.band_edge, "mass": row.mass,
-             "delta_eV_nm": row.strength}
+             "delta_eV_nm": row.strength, "profile": row.profile, "x_from": row.x_ends and row.x_ends[0],
+             "x_to": row.x_ends and row.x_ends[1], "grading_nm": row.grading}
             for row in scenario.sheet
         ],
         "warnings": list(scenario.warnings),
@@ -213,8 +219,17 @@ def check_record(scenario: Scenario) -> Record:
         "layers_per_cell": len(scenario.stack.cell),
         "period_nm": scenario.stack.period_length,
         "windows": len(scenario.target.windows) if scenario.target else 0,
-        "warnings": list(scenario.warnings),
+        "warnings": _cautions(scenario),
     }
+
+
+def _cautions(scenario: Scenario) -> list[str]:
+    """The scenario's warnings, and where the one-band model ends if that is within what is looked at by itself."""
+    end = model_end(scenario.stack.elements)
+    if end < default_range(scenario.stack)[0]:
+        return list(scenario.warnings)
+    return [*scenario.warnings, f"The one-band model ends at {end * 1e3:.6g} meV, where a layer's mass falls to 0: "
+            "ask for energies above it."]
 
 
 def table(header: Sequence[str], rows: Iterable[Sequence[Any]]) -> str:
@@ -302,21 +317,27 @@ def peaks_text(compared: PeakComparison, fit: PeakFit | None) -> str:
 
 def layers_text(scenario: Scenario) -> str:
     """The grower's sheet as a table, with warnings and the usual caution."""
-    rows = [(r.where, r.material or "-", r.x, r.thickness, r.monolayers, r.band_edge, r.mass) for r in scenario.sheet]
-    header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass")
-    return "\n".join([table(header, rows), *_warning_lines(scenario), CAUTION])
+    graded = any(r.grading for r in scenario.sheet)
+    rows = [(r.where, r.material or r.profile or "-", _composition(r), r.thickness, r.monolayers, r.band_edge, r.mass,
+             *([r.grading] if graded else [])) for r in scenario.sheet]
+    header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass",
+              *(["grading_nm"] if graded else []))
+    means = [_MEANS] if any(r.profile for r in scenario.sheet) else []
+    return "\n".join([table(header, rows), *means, *_warning_lines(scenario), CAUTION])
 
 
-CAUTION = (
-    "Growth uses toxic and pyrophoric materials: follow the site's own rules and the people licensed for the reactor."
-)
+def _composition(row: SheetRow) -> float | str | None:
+    return f"{row.x_ends[0]:g} to {row.x_ends[1]:g}" if row.x_ends else row.x
+
+
+_MEANS = "Band edge and mass of a layer through which they run are means over it."
 
 
 def check_text(scenario: Scenario) -> str:
     """One line that says the scenario is sound, and its warnings."""
     stack = scenario.stack
     first = f"{scenario.title}: sound. {stack.periods} periods of {stack.period_length:.4g} nm."
-    return "\n".join([first, *_warning_lines(scenario)])
+    return "\n".join([first, *(f"warning: {warning}" for warning in _cautions(scenario))])
 
 
 def _warning_lines(scenario: Scenario) -> list[str]:

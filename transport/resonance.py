@@ -21,6 +21,7 @@ from transport.determinant import Complexes, Floats, Strip, newton_step, strips
 from transport.lattice import default_range, lattice_bands
 from transport.leaks import log_widths
 from transport.levels import bound_states
+from transport.narrow import NARROWEST
 from transport.oscillation import rotation
 from transport.sampling import transmission_phase
 from transport.seeds import seeds
@@ -30,8 +31,6 @@ from transport.winding import Box, poles_within
 MOST_RESONANCES = 5_000
 """Resonances listed at most."""
 
-_FROM_POLE = 1e-11
-"""Width (eV) below which T at the real energy cannot be computed in doubles, and its height comes from the pole."""
 _MOST_STEPS = 60
 _MOST_SPLITS = 10
 _SETTLED = 1e-8  # share of the distance to the next pole: the error is of second order in the step
@@ -294,7 +293,7 @@ def _heights(
     """T at each resonance, and where it had to come from the pole."""
     chain = Chain(stack, energy)
     value = np.asarray(chain.transmission(chain.denominator(chain.powers(stack.periods))), dtype=float)
-    from_pole = (width < _FROM_POLE) & chain.open
+    from_pole = (width < NARROWEST) & chain.open
     share = np.exp(log_share)
     return np.where(from_pole, 4 * share * abs(np.expm1(log_share)), np.minimum(value, 1.0)), from_pole
 

@@ -87,8 +87,13 @@ def save_scenario(scenario: Scenario, path: str | os.PathLike[str]) -> None:
     The text goes to a new file in the same folder, which then takes the place (and the mode) of the old one. A
     symbolic link is followed, so that the link stays. Raises ScenarioError with the path as its key.
     """
+    save_text(path, format_scenario(scenario))
+
+
+def save_text(path: str | os.PathLike[str], text: str) -> None:
+    """Write any text to `path` in the same way. Raises ScenarioError with the path as its key."""
     try:
-        _replace(Path(os.path.realpath(_plain_file(path))), format_scenario(scenario).encode())
+        _replace(Path(os.path.realpath(_plain_file(path))), text.encode())
     except OSError as error:
         raise ScenarioError(str(path), f"cannot be saved ({error.strerror}); choose another place") from None
 

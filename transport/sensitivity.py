@@ -20,7 +20,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from transport.constants import HBAR2_2M0
 from transport.oscillation import Floats
-from transport.propagation import Transfer, element_transfer, mass_at
+from transport.propagation import Transfer, element_transfer, flux_factor, mass_at
 from transport.structure import Delta, Element, Layer, Lead, Stack
 
 Complexes = NDArray[np.complex128]
@@ -86,17 +86,11 @@ def _row(stack: Stack, place: int) -> int:
     return before + cell + behind if behind >= 0 else before + (place - before) % cell
 
 
-def _flux_factor(lead: Lead, energy: Complexes) -> Complexes:
-    """g = k/m, the root that decays where the lead is closed."""
-    root = np.sqrt((energy - lead.band_edge) / (HBAR2_2M0 * mass_at(lead, energy)))
-    return np.asarray(np.where((energy.real < lead.band_edge) & (root.imag < 0), -root, root))
-
-
 def _flux_slope(lead: Lead, energy: Complexes) -> Complexes:
     """dg/dE of a lead."""
     mass = mass_at(lead, energy)
     rate = lead.mass * lead.nonparabolicity
-    factor = _flux_factor(lead, energy)
+    factor = flux_factor(lead, energy)
     return np.asarray((1 / mass - (energy - lead.band_edge) * rate / mass**2) / (2 * HBAR2_2M0 * factor))
 
 
@@ -107,9 +101,9 @@ def _faces(stack: Stack, elements: Sequence[Element], energy: Complexes) -> tupl
     both is largest. Any common factor.
     """
     steps = {element: element_transfer(element, energy) for element in dict.fromkeys(elements)}
-    left = _carried([steps[e] for e in elements], -1j * _flux_factor(stack.left, energy))
+    left = _carried([steps[e] for e in elements], -1j * flux_factor(stack.left, energy))
     back = [_inverse(steps[e]) for e in reversed(elements)]
-    right = tuple(part[::-1] for part in _carried(back, 1j * _flux_factor(stack.right, energy)))
+    right = tuple(part[::-1] for part in _carried(back, 1j * flux_factor(stack.right, energy)))
     weight = [np.log(abs(psi) ** 2 + abs(u) ** 2 + 1e-300) / 2 + log for psi, u, log in (left, right)]
     join = np.argmax(weight[0] + weight[1], axis=0)
     rows, here = np.arange(len(elements) + 1)[:, None], (join, np.arange(energy.size))

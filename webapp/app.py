@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import asyncio
-import logging
 from collections.abc import Callable
+from dataclasses import asdict
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -13,20 +13,27 @@ import panel as pn
 from bokeh.document import Document
 from panel.io.document import hold
 
-from transport import Verdict
+from transport import Scenario, ScenarioError, Verdict
 from transport.document import GrowthRecord
 from transport.fewest import Asked
+from webapp import log
 from webapp import messages as say
 from webapp.bench import Bench
+from webapp.compare import Compare
 from webapp.editor import Rail
 from webapp.figures.board import Board
-from webapp.files import Entry, Folder
+from webapp.files import Entry
+from webapp.handing import Handing
+from webapp.jobs import in_line
 from webapp.latest import Latest, Stop
+from webapp.link import Page, Shown, decode, encode
 from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
+from webapp.peaks import Peaks
 from webapp.ranges import Ranges
 from webapp.remedies import Remedies
 from webapp.results import Band, Span, most_periods, natural_span, question
+from webapp.service import Service, Visit
 from webapp.theme import LIGHT, PALETTES, css_variables
 from webapp.wire import Wire
 from webapp.work import Pictures, Wanted, pictures, verdict
@@ -34,16 +41,14 @@ from webapp.work import Pictures, Wanted, pictures, verdict
 _PAGE = Path(__file__).parent / "page.html"
 _POLL = 0.2
 _SLOW = 0.3
-_PAUSE = 0.08
-
-_log = logging.getLogger("webapp")
+_PAUSE, _REST = 0.08, 0.25
 
 
 class Session:
     """Owns the bench of one visitor, its figures and the work behind them."""
 
-    def __init__(self, document: Document, bench: Bench, drags: bool) -> None:
-        self._document, self._bench = document, bench
+    def __init__(self, document: Document, bench: Bench, drags: bool, visit: Visit, linked: Shown | None) -> None:
+        self._document, self._bench, self._visit, self._linked = document, bench, visit, linked
         self._palette = LIGHT
         self._seq, self._version, self._share = 0, 0, 0.0
         self._question: Asked | None = None
@@ -62,11 +67,14 @@ class Session:
         self.wire = Wire(self.hear)
         self._pictures = Latest(pictures, self._later(self._show_pictures), self._later(self._fail_pictures))
         self._verdicts = Latest(self._work_out, self._later(self._show_verdict), self._later(self._fail_verdict),
-                                interrupts=True)
-        self._ranges = Ranges(self._tell_range, self._draw_band, self._later)
-        self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later)
+                                interrupts=True, line=visit.line)
+        self._ranges = Ranges(self._tell_range, self._draw_band, self._later, visit)
+        self._remedies = Remedies(lambda view: self.wire.tell(remedies=view), self._later, visit)
+        self._peaks = Peaks(self.wire.tell, self.board.ticks, self.board.profile, self._later, visit)
+        self._compare = Compare(self.wire.tell, self.board.passes, self._later, visit)
+        self._handing = Handing(self.wire.tell, self._later, visit)
         self._listing: Latest[None, tuple[Entry, ...]] = Latest(
-            lambda _, stop: bench.folder.entries(), self._later(self._show_files), self._later(self._fail_files))
+            lambda _, stop: bench.folder.offered(), self._later(self._show_files), self._later(self._fail_files))
 
     def close(self) -> None:
         """The visitor has gone."""
@@ -74,6 +82,9 @@ class Session:
             worker.cancel()
         self._ranges.forget()
         self._remedies.forget()
+        self._peaks.close()
+        self._compare.close()
+        self._handing.close()
         if self._page is not None:
             self._page.cancel()
 
@@ -85,10 +96,15 @@ class Session:
 
     def _act(self, message: say.AnyMessage) -> None:
         self._seq = message.seq
+        if self._visit.view_only and say.changes_something(message):
+            self._bench.refuse("view", "This page is for looking: sliders move, and nothing else is changed or saved.")
+            self.wire.tell(status=self._status())
+            return
         match message:
             case say.Hello(theme=theme):
                 self._paint(theme)
                 self._follow(reset=True)
+                self._reopen()
             case say.Theme(theme=theme):
                 self._paint(theme)
                 self._tell_verdict()
@@ -106,19 +122,62 @@ class Session:
                 self._remedies.look(self._bench.scenario, what, whole)
             case say.StopProposing():
                 self._remedies.stop()
+            case say.Trace(place=place):
+                self._peaks.choose(place)
+            case say.Density(shown=shown):
+                self._peaks.show_density(shown)
+            case say.Lay(name=name, demo=demo):
+                if laid := self._bench.laid(name, demo):
+                    self._compare.lay(*laid)
+                self.wire.tell(status=self._status())
+            case say.Unlay(place=place):
+                self._compare.take(place)
+            case say.Link(page=page):
+                self.wire.tell(link=self._link(page))
+            case say.Export(what=what, rates=rates):
+                self._handing.make(self._bench.scenario, what, self._span, rates)
+            case say.Sheet(text=text, unit=unit):
+                self._handing.look_at(text, unit)
+            case say.Fit(figures=figures):
+                self._peaks.look(figures)
+            case say.StopFit():
+                self._peaks.stop()
             case say.Save(name=name, agreed=agreed):
                 objections = self._bench.save(name, agreed)
                 if objections:
                     self.wire.tell(objections={"name": name, "sentences": objections})
+                elif (notice := self._bench.notice) and not notice.is_fault:
+                    log.tell("saved", self._bench.place or "")
                 self._tell_rail()
             case say.Slide(periods=periods):
                 self._bench.slide(periods)
                 self._follow(rail=False)
             case say.Settle():
                 self._bench.settle()
-                self.wire.tell(status=self._status())
+                self.wire.tell(status=self._status(), kept=self._bench.kept())
             case _:
                 self._edit(message)
+
+    def _link(self, page: Page) -> dict[str, str]:
+        """An address that reopens this bench, or why there is none."""
+        view = self._view()
+        seen = None if view == self._span else (view[0] * 1e3, view[1] * 1e3)
+        shown = Shown(self._bench.document, page, self.board.passes.scale, seen, self._peaks.shows_density)
+        try:
+            return {"text": encode(shown), "sentence": ""}
+        except ScenarioError as error:
+            return {"text": "", "sentence": str(error)}
+
+    def _reopen(self) -> None:
+        """Show what the link that led here showed, beside its scenario."""
+        if (shown := self._linked) is None:
+            return
+        self._linked = None
+        self.board.passes.switch(shown.scale)
+        self._peaks.show_density(shown.density)
+        if shown.energy_meV is not None:
+            self.board.axis.range.update(start=shown.energy_meV[0], end=shown.energy_meV[1])
+        self.wire.tell(view={"page": shown.page, "scale": shown.scale, "density": shown.density})
 
     def _edit(self, message: say.AnyMessage) -> None:
         bench, place = self._bench, self._bench.place
@@ -130,26 +189,48 @@ class Session:
                 bench.revert(path)
             case say.Layer(path=path, index=index):
                 bench.add_layer(path, index)
-            case say.Window(kind=kind):
-                bench.add_window(kind)
+            case say.Window(kind=which):
+                bench.add_window(which)
             case say.Duplicate(path=path, index=index):
                 bench.duplicate(path, index)
             case say.Delete(path=path, index=index):
                 bench.delete(path, index)
             case say.Move(path=path, index=index, by=by):
                 bench.move(path, index, by)
+            case say.Mirror(path=path):
+                bench.mirror(path)
+            case say.Double(path=path):
+                bench.double(path)
+            case say.Thicken(kind=kind, monolayers=monolayers):
+                bench.thicken(kind, monolayers)
             case say.DropEnds():
                 bench.drop_ends()
             case say.Adopt(index=index):
                 if proposal := self._remedies.chosen(index):
                     self.board.passes.remember()
                     bench.adopt(proposal.scenario, proposal.words)
+            case say.Measure(text=text, lever_arm=lever_arm):
+                bench.measure(text, lever_arm)
+            case say.TakeFit():
+                if fitted := self._peaks.chosen_fit():
+                    self.board.passes.remember()
+                    bench.adopt(fitted, "fit to the measured peaks")
+            case say.TakeSheet(path=path):
+                if layers := self._handing.taken():
+                    bench.take_layers(path, layers)
+            case say.OpenText(name=name, text=text):
+                bench.open_text(name, text)
+            case say.Restore(text=text, drafts=drafts, base=base):
+                bench.restore(text, drafts, base)
             case say.Undo():
                 bench.undo()
             case say.Redo():
                 bench.redo()
-            case say.Open(name=name):
-                bench.open(name)
+            case say.Open(name=name, demo=demo):
+                if demo:
+                    bench.begin_with(name)
+                else:
+                    bench.open(name)
         self._tell_shown()
         self._follow(reset=bench.place != place)
 
@@ -197,14 +278,15 @@ class Session:
 
     def _tell_rail(self) -> None:
         scenario = self._bench.scenario
-        self.wire.tell(status=self._status(), rail=Rail(self._bench).view(), about={
+        self.wire.tell(status=self._status(), kept=self._bench.kept(), rail=Rail(self._bench).view(), about={
             "title": scenario.title, "note": scenario.note, "cautions": scenario.warnings,
-            "beam": f"dashed: seen at {scenario.resolution * 1e3:g} meV" if scenario.resolution else ""})
+            "beam": _extra_curves(scenario)})
 
     def _tell_verdict(self) -> None:
         view = verdict_view(self._verdict, self._bench.scenario.stack.periods, self._palette)
         if self._verdict_state != "known":
-            view = {"state": self._verdict_state, "sentence": "", "present": "", "legend": [], "share": self._share}
+            view = {"state": self._verdict_state, "sentence": "", "present": "", "legend": [], "share": self._share,
+                    "waits": in_line(self._verdicts.waits_behind)}
         self.wire.tell(verdict={**view, "range": self._range})
 
     def _tell_range(self, found: dict[str, str] | None) -> None:
@@ -224,6 +306,7 @@ class Session:
     def _paint(self, theme: str) -> None:
         self._palette = PALETTES[theme]
         self.board.paint(self._palette)
+        self._compare.paint(self._palette)
 
     # The work behind the figures.
 
@@ -231,6 +314,7 @@ class Session:
         """The way of messages and results to the figures: in turn, with the document's lock, as one change."""
 
         def locked(*arguments: Any) -> None:
+            log.SESSION.set(self._visit.number)
             with hold(self._document):
                 show(*arguments)
 
@@ -264,10 +348,18 @@ class Session:
 
     def _show_page(self, wanted: Wanted, found: Pictures) -> None:
         self.wire.tell(texts=self.board.show_page(wanted, found))
+        # What takes longest waits until the slider rests.
+        self._page = asyncio.get_running_loop().call_later(
+            _REST - _PAUSE, lambda: self._later(self._follow_page)(wanted))
+
+    def _follow_page(self, wanted: Wanted) -> None:
+        self._peaks.follow(wanted.scenario, wanted.span, wanted.view)
+        self._compare.follow(wanted.scenario, wanted.view)
 
     def _fail_pictures(self, wanted: Wanted, error: Exception) -> None:
         self.board.clear()
         self.wire.tell(pictured={"version": wanted.version, "fault": in_words(error)})
+        self._peaks.follow(wanted.scenario, wanted.span, wanted.view)
 
     def _ask_verdict(self, asked: Asked) -> None:
         self._question, self._share, self._verdict_state = asked, 0.0, "working"
@@ -277,6 +369,7 @@ class Session:
         asyncio.get_running_loop().create_task(self._watch(asked))
 
     def _work_out(self, asked: Asked, stop: Stop) -> Verdict | None:
+        self._visit.allow(asked.target)
         return verdict(asked, stop, self._progress)
 
     def _progress(self, share: float) -> None:
@@ -313,24 +406,47 @@ class Session:
         self.wire.tell(verdict={"state": "fault", "sentence": in_words(error), "present": "", "legend": []})
 
     def _show_files(self, _: None, entries: tuple[Entry, ...]) -> None:
-        self.wire.tell(files=[{"name": e.name, "title": e.title, "note": e.note, "problem": e.problem}
-                              for e in entries])
+        self.wire.tell(files=[asdict(entry) for entry in entries])
 
     def _fail_files(self, _: None, error: Exception) -> None:
         self.wire.tell(files=[], objection=in_words(error))
 
 
-def session(folder: Folder) -> None:
+def _extra_curves(scenario: Scenario) -> str:
+    """What a caption says of the curves beside T."""
+    beam = [f"dashed: seen at {scenario.resolution * 1e3:g} meV"] if scenario.resolution else []
+    lost = ["dotted: absorbed (T + R + A = 1)"] if scenario.stack.dephasing else []
+    return ", ".join(beam + lost)
+
+
+def _linked(text: bytes) -> tuple[Shown | None, str]:
+    """What the link of an address shows, or a sentence that says why nothing."""
+    if not text:
+        return None, ""
+    try:
+        return decode(text.decode("ascii", "replace")), ""
+    except ScenarioError as error:
+        return None, f"The link cannot be opened: {error}"
+
+
+def session(service: Service) -> None:
     """Fill the document of one visitor; called by the server for each."""
     document = pn.state.curdoc
     wanted = pn.state.session_args.get("scenario", [b""])[0].decode(errors="replace")
     drags = "Mobi" not in pn.state.headers.get("User-Agent", "")
     document.title = "Colonnade"
     document.template = _PAGE.read_text(encoding="utf-8")
-    document.template_variables["variables"] = css_variables()
+    document.template_variables.update(
+        variables=css_variables(), has_login=service.has_login, view_only=service.view_only)
+    share = service.enter()
+    document.on_session_destroyed(lambda context: service.leave(share))
     # One look at all models instead of one for each root halves the time to the page.
     with document.models.freeze():
-        visit = Session(document, Bench(folder, wanted or None), drags)
+        linked, refused = _linked(pn.state.session_args.get("bench", [b""])[0])
+        bench = Bench(service.folder, wanted or None, linked.document if linked else None)
+        if refused:
+            bench.refuse("open", refused)
+        visit = Session(document, bench, drags, share, linked)
         for figure in visit.board.figures:
             document.add_root(figure)
         document.template_variables["figures"] = [figure.name for figure in visit.board.figures]

@@ -7,8 +7,11 @@ computed.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+import hashlib
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
+
+import msgspec
 
 from transport import (
     Document,
@@ -18,12 +21,16 @@ from transport import (
     document_to_data,
     format_scenario,
     parse_scenario,
+    read_peaks,
     scenario_from_document,
 )
+from transport.document import LayerRecord
+from transport.grouping import Kind, thickened
 from webapp import edits
 from webapp.edits import Data, Reorder
-from webapp.fields import applied, name_of, record_of, sentence_beside
-from webapp.files import Folder, with_suffix
+from webapp.enclosed import scenario_from_report
+from webapp.fields import applied, name_of, number, record_of, sentence_beside
+from webapp.files import DEMOS, Folder, with_suffix
 
 MOST_STEPS = 300
 """Steps that undo goes back at most."""
@@ -51,6 +58,9 @@ class Draft:
     message: str = ""
 
 
+Kept = dict[str, str | dict[str, str]]
+"""Unsaved edits as the browser keeps them: `text`, `drafts`, and `base`, a digest of the file they began from."""
+
 Drafts = Mapping[str, Draft]
 """Drafts by the path of their field."""
 
@@ -77,7 +87,7 @@ class Notice:
 class Bench:
     """What one session edits. Methods never raise for what a user wrote: they leave a draft or a `notice`."""
 
-    def __init__(self, folder: Folder, wanted: str | None = None) -> None:
+    def __init__(self, folder: Folder, wanted: str | None = None, linked: Document | None = None) -> None:
         self.folder = folder
         self.notice: Notice | None = None
         self._scenario = parse_scenario(NEW_SCENARIO)
@@ -87,7 +97,11 @@ class Bench:
         self._past: list[State] = []
         self._future: list[State] = []
         self._sliding = False
-        self._open_first(wanted)
+        if linked is not None:
+            self._scenario = scenario_from_document(linked)
+            self._state = State(linked)
+        else:
+            self._open_first(wanted)
 
     @property
     def document(self) -> Document:
@@ -123,6 +137,10 @@ class Bench:
     def redo_step(self) -> str | None:
         """What redo would bring back, in words; None where there is nothing."""
         return self._future[-1].step if self._future else None
+
+    def refuse(self, about: str, sentence: str) -> None:
+        """Tell the user of something that cannot be done; nothing changes."""
+        self.notice = Notice(about, sentence)
 
     # Edits of values.
 
@@ -172,9 +190,26 @@ class Bench:
             self._rearrange(path, lambda data: edits.deleted(data, path, index), "deletion")
 
     def move(self, path: str, index: int, by: int) -> None:
-        """Move an entry of the list at `path` up (by = -1) or down (by = 1)."""
+        """Move an entry of the list at `path` by so many places, up (below 0) or down."""
         if index + by >= 0 and self._holds(f"{path}[{index}]") and self._holds(f"{path}[{index + by}]"):
-            self._rearrange(path, lambda data: edits.exchanged(data, path, index, index + by), "move")
+            self._rearrange(path, lambda data: edits.moved(data, path, index, index + by), "move")
+
+    def mirror(self, path: str) -> None:
+        """Turn a list of layers round."""
+        self._rearrange(path, lambda data: edits.mirrored(data, path), "turning round")
+
+    def double(self, path: str) -> None:
+        """Write a list of layers twice."""
+        self._rearrange(path, lambda data: edits.doubled(data, path), "writing twice")
+
+    def thicken(self, kind: Kind, monolayers: float) -> None:
+        """Make all barriers, or all wells, thicker or thinner by some monolayers."""
+        try:
+            scenario = thickened(self.scenario, kind, monolayers)
+        except ScenarioError as error:
+            self.notice = Notice("layers", str(error))
+            return
+        self._enter(replace(self._state, document=scenario.document, step=f"change of all {kind}"), scenario)
 
     def adopt(self, scenario: Scenario, step: str) -> None:
         """Take on a scenario that was proposed; undo leads back, to the drafts as well."""
@@ -184,6 +219,18 @@ class Bench:
         """Take the end treatment away."""
         self._rearrange("stack.ends", lambda data: (edits.with_value(data, "stack.ends", None), lambda old: old),
                         "ends taken away")
+
+    def measure(self, text: str, lever_arm: str) -> None:
+        """Put the peaks of a table in place of those measured before; without text, take them away."""
+        try:
+            arm = number("measured.lever_arm", lever_arm)
+            record = read_peaks(text, None if arm is None else float(arm)) if text.strip() else None
+            scenario = scenario_from_document(msgspec.structs.replace(self.document, measured=record))
+        except ScenarioError as error:
+            self.notice = Notice("measured", str(error))
+            return
+        self._enter(replace(self._state, document=scenario.document,
+                            step="measured peaks" if record else "measured peaks taken away"), scenario)
 
     def undo(self) -> None:
         """One step back."""
@@ -199,16 +246,79 @@ class Bench:
 
     # Files.
 
+    def begin_with(self, name: str) -> None:
+        """Begin a scenario of one's own with a demo; undo leads back."""
+        if found := self._read(Folder(DEMOS), name):
+            self._enter(State(found[1].document, {}, None, f"beginning with {name}"), found[1])
+
+    def _read(self, folder: Folder, name: str) -> tuple[str, Scenario] | None:
+        """Text and scenario of a file; None, and a notice, where it cannot be opened."""
+        try:
+            text = folder.text(name)
+            return text, parse_scenario(text)
+        except ScenarioError as error:
+            self.notice = Notice("open", f"{name} cannot be opened: {error}")
+            return None
+
     def open(self, name: str) -> None:
         """Open a file of the folder; undo leads back to what was on screen."""
+        found = self._read(self.folder, name)
+        if found is None:
+            return
+        text, scenario = found
+        self._texts[name], self._saved[name] = text, scenario.document
+        self._enter(State(scenario.document, {}, name, f"opening of {name}"), scenario)
+
+    def kept(self) -> Kept | None:
+        """What no file holds yet; None where there is nothing."""
+        if not self.is_changed:
+            return None
+        texts = {path: draft.text for path, draft in self.drafts.items()}
+        base = _digest(self._texts.get(self.place or ""))
+        return {"text": format_scenario(self.scenario), "drafts": texts, "base": base}
+
+    def restore(self, text: str, drafts: Mapping[str, str], base: str) -> None:
+        """Bring back what was never saved; undo leads to the file. `base`: digest of the file it began from."""
         try:
-            text = self.folder.text(name)
             scenario = parse_scenario(text)
+        except ScenarioError as error:
+            self.notice = Notice("kept", f"Edits kept in this browser cannot be read and stay there: {error}")
+            return
+        refused = {path: _refused(scenario, path, Draft(text)) for path, text in drafts.items()}
+        self._enter(State(scenario.document, refused, self.place, "return of unsaved edits"), scenario)
+        sentence = "Edits that were not saved are back; Undo leads to the file."
+        if self.place is not None and base != _digest(self._texts.get(self.place)):
+            # Saving asks first, as for any file that others have changed.
+            self._texts[self.place] = ""
+            sentence += f" {self.place} was changed elsewhere in the meantime."
+        self.notice = Notice("kept", sentence, is_fault=False)
+
+    def laid(self, name: str | None, demo: bool = False) -> tuple[str, Scenario] | None:
+        """A scenario to lay over the bench, with a name for it: the present one, or a file's; None, and a notice."""
+        if name is None:
+            return f"{self.scenario.title}, {self.scenario.stack.periods:,} periods", self.scenario
+        found = self._read(Folder(DEMOS) if demo else self.folder, name)
+        return found and (f"{found[1].title}, {found[1].stack.periods:,} periods", found[1])
+
+    def open_text(self, name: str, text: str) -> None:
+        """Open a file of the user's own, a scenario or a report with one in it; it belongs to no file of the folder."""
+        try:
+            scenario = scenario_from_report(text) if text.lstrip()[:1] == "<" else parse_scenario(text)
         except ScenarioError as error:
             self.notice = Notice("open", f"{name} cannot be opened: {error}")
             return
-        self._texts[name], self._saved[name] = text, scenario.document
-        self._enter(State(scenario.document, {}, name, f"opening of {name}"), scenario)
+        self._enter(State(scenario.document, {}, None, f"opening of {name}"), scenario)
+
+    def take_layers(self, path: str, layers: Sequence[LayerRecord]) -> None:
+        """Put the layers of a sheet in place of a list; drafts in the old list go."""
+        stack = msgspec.structs.replace(self.document.stack, **{name_of(path): tuple(layers)})
+        try:
+            scenario = scenario_from_document(msgspec.structs.replace(self.document, stack=stack))
+        except ScenarioError as error:
+            self.notice = Notice("sheet", str(error))
+            return
+        drafts = {place: draft for place, draft in self.drafts.items() if not place.startswith(f"{path}[")}
+        self._enter(State(scenario.document, drafts, self.place, "layer sheet"), scenario)
 
     def save(self, name: str, agreed: bool) -> tuple[str, ...]:
         """Save under `name`; unless `agreed`, first return what would be lost, as sentences, and leave the file."""
@@ -246,6 +356,9 @@ class Bench:
                 break
             refused = refused or self.notice
         self.notice = refused if wanted else None
+        if not names:
+            self.notice = Notice("open", "The folder holds no scenario yet: this is a new one, which Save as keeps. "
+                                 "Open offers demos to begin with.", is_fault=False)
         self._past.clear()
 
     # How an edit is taken.
@@ -289,6 +402,10 @@ class Bench:
     def _go(self, state: State) -> None:
         self._sliding, self.notice = False, None
         self._state, self._scenario = state, scenario_from_document(state.document)
+
+
+def _digest(text: str | None) -> str:
+    return hashlib.sha256((text or "").encode()).hexdigest()
 
 
 def _with_drafts(scenario: Scenario, drafts: Drafts) -> Scenario:

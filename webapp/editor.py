@@ -9,13 +9,14 @@ from collections.abc import Sequence
 from typing import Any
 
 from transport import describe_ends
+from transport.checks import BASED_PROFILES, PROFILE_KEYS
 from transport.document import GrowthRecord, LayerRecord, LeadRecord, WindowRecord, default_measure
 from transport.materials import material_names, substrate_names
 from transport.parameters import PARAMETERS, default
 from transport.resolve import SheetRow
 from webapp.bench import Bench
-from webapp.edits import DELTA, EXPLICIT, GROUP, MATERIAL
-from webapp.fields import CHOICE, UNIT, written
+from webapp.edits import DELTA, EXPLICIT, GROUP, MATERIAL, PROFILE
+from webapp.fields import CHOICE, GRADED, UNIT, written
 
 View = dict[str, Any]
 Options = Sequence[tuple[str, str]]
@@ -27,7 +28,9 @@ _LABELS = {
     "cells": "cells at each end", "barrier_share": "barrier", "well_share": "well",
     "offset_percent": "band offsets \N{PLUS-MINUS SIGN}", "mass_percent": "masses \N{PLUS-MINUS SIGN}",
     "monolayer_error": "layers \N{PLUS-MINUS SIGN}",
-    "periods": "periods", "most_periods": "most periods", "from_meV": "from", "to_meV": "to",
+    "x_from": "x, left", "x_to": "x, right", "grading_nm": "graded faces", "from_eV": "left", "to_eV": "right",
+    "mean_eV": "mean", "amplitude_eV": "amplitude", "height_eV": "height", "width_nm": "width", "base_eV": "base",
+    "step_eV": "step", "periods": "periods", "most_periods": "most periods", "from_meV": "from", "to_meV": "to",
 }
 _UNITS = {"m0": "m\N{SUBSCRIPT ZERO}", "1/eV": "eV\N{SUPERSCRIPT MINUS}\N{SUPERSCRIPT ONE}", "monolayers": "ML"}
 _CHOICE_NAMES = {EXPLICIT: "band edge and mass", DELTA: "delta", GROUP: "repeat group"}
@@ -37,6 +40,10 @@ _PART_HELP = {
     "cell": "One period: repeated as often as the slider says.",
     "exit": "Grown once, between the last cell and the right lead.",
 }
+
+
+_LIST_ACTS = (("Turn round", "mirror", "the layers in reverse order"),
+              ("Write twice", "double", "the same layers once more behind themselves"))
 
 
 class Rail:
@@ -52,7 +59,7 @@ class Rail:
         return {
             "periods": self._periods(),
             "parts": [self._conditions(), self._lead("left"), *(self._part(name) for name in _PARTS),
-                      self._lead("right"), self._ends(), self._target(), self._growth(), self._about()],
+                      self._layers(), self._lead("right"), self._ends(), self._target(), self._growth(), self._about()],
         }
 
     # One field.
@@ -102,7 +109,19 @@ class Rail:
     def _part(self, name: str) -> View:
         path, layers = f"stack.{name}", getattr(self._document.stack, name)
         return {"id": path, "title": _PARTS[name], "help": _PART_HELP[name], **self._list(path, layers, name != "cell"),
-                "adds": [{"label": "Add layer", "name": "layer"}]}
+                "adds": [{"label": "Add layer", "name": "layer"}], "acts": [
+                    {"label": label, "type": act, "content": {"path": path}, "help": text}
+                    for label, act, text in _LIST_ACTS if len(layers) > (act == "mirror")]}
+
+    def _layers(self) -> View:
+        notice = self._bench.notice
+        return {"id": "layers", "title": "All barriers, all wells", "fields": [],
+                "help": "Of entry, cell and exit at once; barriers are what lies above the middle of the cell.",
+                "message": notice.sentence if notice and notice.about == "layers" else "", "acts": [
+                    {"label": f"{kind} {sign}1 ML", "type": "thicken", "content": {"kind": kind, "monolayers": step},
+                     "help": f"every one of the {kind} one monolayer {way}"}
+                    for kind in ("barriers", "wells")
+                    for sign, step, way in (("\N{MINUS SIGN}", -1, "thinner"), ("+", 1, "thicker"))]}
 
     def _list(self, path: str, layers: Sequence[LayerRecord], groups: bool) -> View:
         notice = self._bench.notice
@@ -125,12 +144,31 @@ class Rail:
         fields = [self._choice(path, record, switches)]
         if isinstance(record, LayerRecord) and record.delta_eV_nm is not None:
             return [*fields, self._number(path, "delta_eV_nm", record.delta_eV_nm)]
-        names = ["x"] if record.material is not None else ["band_edge_eV", "mass", "nonparabolicity_per_eV"]
-        fields += [self._number(path, name, getattr(record, name)) for name in names
-                   if name != "x" or record.x is not None or f"{path}.x" in self._bench.drafts]
+        if isinstance(record, LayerRecord) and record.profile is not None:
+            return [*fields, *self._profile(path, record), *self._thickness(path, record)]
+        names = ["x", "x_from", "x_to"] if record.material is not None else [
+            "band_edge_eV", "mass", "nonparabolicity_per_eV"]
+        fields += [self._number(path, name, getattr(record, name, None)) for name in names
+                   if name[0] != "x" or getattr(record, name, None) is not None
+                   or f"{path}.{name}" in self._bench.drafts]
         if isinstance(record, LayerRecord):
-            fields += self._thickness(path, record)
+            fields += [*self._thickness(path, record), *self._grading(path, record)]
         return fields
+
+    def _profile(self, path: str, layer: LayerRecord) -> list[View]:
+        assert layer.profile is not None
+        names = [*PROFILE_KEYS[layer.profile], *(["base_eV"] if layer.profile in BASED_PROFILES else []),
+                 "mass", "nonparabolicity_per_eV"]
+        return [self._number(path, name, getattr(layer, name)) if name != "potential_eV" else
+                self._field(f"{path}.{name}", layer.potential_eV, "band edges (eV)", kind="text",
+                            help=PARAMETERS[name].help) for name in names]
+
+    def _grading(self, path: str, layer: LayerRecord) -> list[View]:
+        """Graded faces for any layer, a graded composition for an alloy."""
+        runs = layer.x_from is not None
+        switch = [self._field(f"{path}.{GRADED}", runs, "composition runs", kind="check",
+                              help="from one composition at the left face to another at the right")]
+        return [self._number(path, "grading_nm", layer.grading_nm), *(switch if runs or layer.x is not None else [])]
 
     def _thickness(self, path: str, layer: LayerRecord) -> list[View]:
         unit = "thickness_nm" if layer.monolayers is None else "monolayers"
@@ -145,11 +183,14 @@ class Rail:
     def _choice(self, path: str, record: LayerRecord | LeadRecord, switches: Sequence[str]) -> View:
         names = [*self._own, *(name for name in material_names() if name not in self._own)]
         options = [*((MATERIAL + name, name) for name in names),
-                   *((switch, _CHOICE_NAMES[switch]) for switch in (EXPLICIT, *switches))]
+                   *((switch, _CHOICE_NAMES[switch]) for switch in (EXPLICIT, *switches)),
+                   *((PROFILE + kind, f"{kind} profile") for kind in PROFILE_KEYS if isinstance(record, LayerRecord))]
         if record.material is not None:
             value = MATERIAL + record.material
         else:
             value = record.kind if isinstance(record, LayerRecord) else EXPLICIT
+            if isinstance(record, LayerRecord) and record.profile is not None:
+                value = PROFILE + record.profile
         return self._select(f"{path}.{CHOICE}", value, "material", options, "a material, or an edge given by hand")
 
     def _target(self) -> View:

@@ -10,6 +10,7 @@ import re
 from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
+from transport.checks import BASED_PROFILES, PROFILE_KEYS
 from transport.document import default_measure
 from transport.materials import is_alloy, material_names
 from transport.resolve import SheetRow
@@ -19,10 +20,12 @@ Steps = tuple[str | int, ...]
 
 MATERIAL = "material:"
 """How the choice of a material begins in a layer's or lead's `choice`; its name follows."""
+PROFILE = "profile:"
+"""How the choice of a profile begins; its kind follows."""
 EXPLICIT, DELTA, GROUP = "explicit", "delta", "group"
 
 # What a part of the stack starts from where nothing better is known; every value may be edited at once.
-_START_X, _START_DELTA, _START_THICKNESS = 0.3, 0.1, 5.0
+_START_X, _START_DELTA, _START_THICKNESS, _START_FEATURE = 0.3, 0.1, 5.0, 0.1
 _START_TRANSMISSION = {"pass": 0.5, "block": 1e-3}
 _START_WIDTH = 20.0
 _CONVERTED_DIGITS = 6
@@ -81,11 +84,29 @@ def deleted(data: Data, path: str, index: int) -> tuple[Data, Reorder]:
     return new, lambda old: None if old == index else old - 1 if old > index else old
 
 
-def exchanged(data: Data, path: str, index: int, to: int) -> tuple[Data, Reorder]:
-    """The list at `path` with its entries `index` and `to` in each other's place."""
-    entries = list(value_at(data, path))
-    entries[index], entries[to] = entries[to], entries[index]
-    return with_value(data, path, entries), lambda old: {index: to, to: index}.get(old, old)
+def moved(data: Data, path: str, index: int, to: int) -> tuple[Data, Reorder]:
+    """The list at `path` with its entry `index` at position `to`."""
+    return _permuted(data, path, _moved_order(len(value_at(data, path)), index, to))
+
+
+def _moved_order(size: int, index: int, to: int) -> list[int]:
+    order = [place for place in range(size) if place != index]
+    return [*order[:to], index, *order[to:]]
+
+
+def mirrored(data: Data, path: str) -> tuple[Data, Reorder]:
+    """The list at `path` turned round."""
+    return _permuted(data, path, list(range(len(value_at(data, path) or [])))[::-1])
+
+
+def _permuted(data: Data, path: str, order: list[int]) -> tuple[Data, Reorder]:
+    entries = value_at(data, path) or []
+    return with_value(data, path, [entries[old] for old in order]), lambda old: order.index(old)
+
+
+def doubled(data: Data, path: str) -> tuple[Data, Reorder]:
+    """The list at `path` written twice."""
+    return with_value(data, path, 2 * (value_at(data, path) or [])), lambda old: old
 
 
 def reordered(path: str, list_path: str, reorder: Reorder) -> str | None:
@@ -116,9 +137,11 @@ def new_window(data: Data, kind: str) -> Data:
 
 
 def choice_of(record: Mapping[str, Any]) -> str:
-    """What a layer or lead is: `material:NAME`, `explicit`, `delta` or `group`."""
+    """What a layer or lead is: `material:NAME`, `profile:KIND`, `explicit`, `delta` or `group`."""
     if "material" in record:
         return MATERIAL + str(record["material"])
+    if "profile" in record:
+        return PROFILE + str(record["profile"])
     return DELTA if "delta_eV_nm" in record else GROUP if "repeat" in record else EXPLICIT
 
 
@@ -140,7 +163,30 @@ def chosen_layer(record: Data, choice: str, row: SheetRow | None, zero: float, o
         return {"repeat": 2, "layers": [record]}
     if choice_of(record) == GROUP:
         record = record["layers"][0]
-    return _medium(record, choice, row, zero, own) | _thickness(record, row, choice)
+    thickness = _thickness(record, row, EXPLICIT if choice.startswith(PROFILE) else choice)
+    if choice.startswith(PROFILE):
+        return _profile(choice.removeprefix(PROFILE), _medium(record, EXPLICIT, row, zero, own), thickness)
+    return _medium(record, choice, row, zero, own) | thickness
+
+
+def _profile(kind: str, medium: Data, thickness: Data) -> Data:
+    """A profile that begins flat, or with a small feature, at the edge the layer had."""
+    edge, length = medium["band_edge_eV"], thickness["thickness_nm"]
+    start = {"from_eV": edge, "to_eV": edge, "mean_eV": edge, "amplitude_eV": _START_FEATURE,
+             "height_eV": _START_FEATURE, "step_eV": _START_FEATURE, "width_nm": _rounded(length / 8),
+             "potential_eV": [edge, edge]}
+    needed = {key: start[key] for key in PROFILE_KEYS[kind]}
+    base = {"base_eV": edge} if kind in BASED_PROFILES else {}
+    return {"profile": kind, "mass": medium["mass"], "thickness_nm": length} | needed | base
+
+
+def graded(record: Data, on: bool) -> Data:
+    """A layer of an alloy with one composition, or with one at either face."""
+    others = {key: value for key, value in record.items() if key not in ("x", "x_from", "x_to")}
+    if on:
+        x = record.get("x", _START_X)
+        return others | {"x_from": x, "x_to": x}
+    return others | {"x": record.get("x_from", _START_X)}
 
 
 def _medium(record: Data, choice: str, row: SheetRow | None, zero: float, own: Sequence[str]) -> Data:

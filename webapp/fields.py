@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from typing import Any
 
@@ -12,8 +13,8 @@ from transport.resolve import SheetRow
 from webapp import edits
 from webapp.edits import Data
 
-CHOICE, UNIT = "choice", "unit"
-"""Fields that are no keys of the file: what a layer or lead is, and in what its thickness is given."""
+CHOICE, UNIT, GRADED = "choice", "unit", "graded"
+"""Fields that are no keys of the file: what a layer or lead is, the unit of its thickness, whether its alloy runs."""
 
 _TEXTS = ("title", "note", "name", "measure", "substrate", "kind", "of")
 _SWITCHES = ("nonparabolic", "whole_monolayers")
@@ -36,7 +37,7 @@ def applied(data: Data, path: str, text: str, document: Document, rows: Mapping[
     Raises ScenarioError where the text is no number; whether it is a good one is the engine's to say.
     """
     name, record = name_of(path), record_of(path)
-    if name in (CHOICE, UNIT) or (name == "kind" and record.startswith("target.windows")):
+    if name in (CHOICE, UNIT, GRADED) or (name == "kind" and record.startswith("target.windows")):
         return edits.with_value(data, record, _switched(data, record, name, text, document, rows))
     return edits.with_value(data, path, _value(path, name, text))
 
@@ -48,6 +49,8 @@ def _switched(
     record, row = edits.value_at(data, path), rows.get(path)
     if name == "kind":
         return edits.of_kind(record, text)
+    if name == GRADED:
+        return edits.graded(record, text == "true")
     if name == UNIT:
         return edits.in_unit(record, text, row)
     turned = edits.chosen_lead if path.startswith("leads.") else edits.chosen_layer
@@ -67,10 +70,14 @@ def _value(path: str, name: str, text: str) -> Any:
         return text == "true"
     if name in _TEXTS:
         return text if text or name in _EMPTY_IS_TEXT else None
-    return _number(path, text.strip().replace("\N{MINUS SIGN}", "-"), PARAMETERS[name].whole)
+    if name == "potential_eV":
+        return [number(f"{path}[{index}]", part) for index, part in enumerate(re.split(r"[,;\s]+", text.strip()))]
+    return number(path, text, PARAMETERS[name].whole)
 
 
-def _number(path: str, text: str, whole: bool) -> float | int | None:
+def number(path: str, text: str, whole: bool = False) -> float | int | None:
+    """The number a text holds; None for an empty one. Raises ScenarioError where it is none."""
+    text = text.strip().replace("\N{MINUS SIGN}", "-")
     if not text:
         return None
     try:
@@ -97,4 +104,6 @@ def written(value: object) -> str:
         return ""
     if isinstance(value, bool):
         return "true" if value else "false"
+    if isinstance(value, tuple):
+        return ", ".join(written(item) for item in value)
     return repr(value).removesuffix(".0") if isinstance(value, float) else str(value)

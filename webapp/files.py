@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import os
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 from transport import Scenario, ScenarioError, parse_scenario, save_scenario
 from transport.scenario import has_comments, read_text
+from webapp.environment import CHECKOUT
 
+DEMOS = CHECKOUT / "scenarios"
+"""The demo scenarios, which any folder may begin with."""
 MOST_LISTED = 200
 """Files that the list of scenarios shows at most."""
 
@@ -24,6 +27,7 @@ class Entry:
     title: str
     note: str
     problem: str | None = None
+    demo: bool = False
 
 
 class Folder:
@@ -49,6 +53,12 @@ class Folder:
     def entries(self) -> tuple[Entry, ...]:
         """Every scenario with its title and note. Raises ScenarioError where the folder cannot be read."""
         return tuple(self._entry(name) for name in self.names())
+
+    def offered(self) -> tuple[Entry, ...]:
+        """Every scenario, and demos to begin with unless the folder is theirs. Raises ScenarioError."""
+        if not DEMOS.is_dir() or self.path == Path(os.path.realpath(DEMOS)):
+            return self.entries()
+        return (*self.entries(), *(replace(entry, demo=True) for entry in Folder(DEMOS).entries()))
 
     def text(self, name: str) -> str:
         """The text of a file. Raises ScenarioError."""

@@ -6,7 +6,12 @@ import asyncio
 import logging
 import threading
 from collections.abc import Callable
-from typing import Generic, TypeVar
+from typing import TYPE_CHECKING, Generic, TypeVar
+
+from transport.periods import no_progress
+
+if TYPE_CHECKING:
+    from webapp.jobs import Line
 
 Request = TypeVar("Request")
 Result = TypeVar("Result")
@@ -19,14 +24,20 @@ class Stopped(Exception):
 
 
 class Stop:
-    """Tells work in a thread to stop; `check` is called by the work now and then."""
+    """Tells work in a thread to stop; `check` is called by the work now and then, all else on the event loop."""
 
     def __init__(self) -> None:
         self._event = threading.Event()
+        self._told: Callable[[], None] = lambda: None
 
     def set(self) -> None:
         """Ask the work to stop."""
         self._event.set()
+        self._told()
+
+    def then(self, told: Callable[[], None]) -> None:
+        """Call `told` too when the work is asked to stop."""
+        self._told = told
 
     def check(self) -> None:
         """Raise Stopped if the work was asked to stop."""
@@ -34,11 +45,22 @@ class Stop:
             raise Stopped
 
 
+def checked(stop: Stop, progress: Callable[[float], None] = no_progress) -> Callable[[float], None]:
+    """Progress that also stops the work where that is asked."""
+
+    def told(share: float) -> None:
+        stop.check()
+        progress(share)
+
+    return told
+
+
 class Latest(Generic[Request, Result]):
     """Runs `work(request, stop)` in a thread and hands its result to `done(request, result)` on the event loop.
 
     With `interrupts`, a newer request stops the work in hand; without, that is finished and shown, and the newest
     request follows, so that a dragged slider sees its curve move. `failed(request, error)` is told of any exception.
+    Long work waits its turn in a `line`; without one a thread is had at once.
     """
 
     def __init__(
@@ -47,7 +69,9 @@ class Latest(Generic[Request, Result]):
         done: Callable[[Request, Result], None],
         failed: Callable[[Request, Exception], None],
         interrupts: bool = False,
+        line: Line | None = None,
     ) -> None:
+        self._line = line
         self._work, self._done, self._failed, self._interrupts = work, done, failed, interrupts
         self._waiting: list[Request] = []
         self._task: asyncio.Task[None] | None = None
@@ -57,6 +81,11 @@ class Latest(Generic[Request, Result]):
     def is_busy(self) -> bool:
         """Whether work is in hand or waits."""
         return self._task is not None and not self._task.done()
+
+    @property
+    def waits_behind(self) -> int | None:
+        """How many jobs of all visitors come before this one's; None where it does not wait for its turn."""
+        return self._line.before(self._stop) if self._line else None
 
     def ask(self, request: Request) -> None:
         """Want `request` done, in place of any that still waits. Call on the event loop."""
@@ -76,7 +105,8 @@ class Latest(Generic[Request, Result]):
             request = self._waiting.pop()
             self._stop = stop = Stop()
             try:
-                result = await asyncio.to_thread(self._work, request, stop)
+                turn = self._line.run if self._line else asyncio.to_thread
+                result = await turn(self._work, request, stop)
                 stop.check()
             except Stopped:
                 continue

@@ -82,11 +82,30 @@ class Delete(Message, frozen=True):
 
 
 class Move(Message, frozen=True):
-    """An entry moves up or down."""
+    """An entry moves up (below 0) or down by so many places."""
 
     path: str
     index: int
-    by: Literal[-1, 1]
+    by: int
+
+
+class Mirror(Message, frozen=True):
+    """A list of layers is turned round."""
+
+    path: str
+
+
+class Double(Message, frozen=True):
+    """A list of layers is written twice."""
+
+    path: str
+
+
+class Thicken(Message, frozen=True):
+    """All barriers, or all wells, become thicker or thinner."""
+
+    kind: Literal["barriers", "wells"]
+    monolayers: float
 
 
 class DropEnds(Message, frozen=True):
@@ -110,6 +129,86 @@ class Adopt(Message, frozen=True):
     index: int
 
 
+class Trace(Message, frozen=True):
+    """Show the wave of a resonance, by its place in the ledger, and what moves it."""
+
+    place: int
+
+
+class Density(Message, frozen=True):
+    """Draw the local density of states, or no longer."""
+
+    shown: bool
+
+
+class Measure(Message, frozen=True):
+    """A table of measured peaks, in place of those that are there; empty takes them away."""
+
+    text: str
+    lever_arm: str
+
+
+class Fit(Message, frozen=True):
+    """Fit figures of the stack to the measured peaks."""
+
+    figures: tuple[str, ...]
+
+
+class StopFit(Message, frozen=True):
+    """Give up fitting."""
+
+
+class TakeFit(Message, frozen=True):
+    """Take the fitted figures into the stack."""
+
+
+class Lay(Message, frozen=True):
+    """Lay a scenario over the bench: a file of the folder, a demo, or the present one as it is (no name)."""
+
+    name: str | None = None
+    demo: bool = False
+
+
+class Unlay(Message, frozen=True):
+    """Take one of those laid over the bench away."""
+
+    place: int
+
+
+class Link(Message, frozen=True):
+    """Make an address that reopens this bench, on this page."""
+
+    page: Literal["periods", "peaks", "compare", "handoff"]
+
+
+class Export(Message, frozen=True):
+    """Make a file of what is shown."""
+
+    what: Literal["report", "scenario", "python", "grower", "json", "spectrum", "bands", "resonances", "periods",
+                  "peaks", "layers"]
+    rates: str = ""
+
+
+class Sheet(Message, frozen=True):
+    """Read a pasted layer sheet and show what it comes to."""
+
+    text: str
+    unit: Literal["nm", "angstrom", "monolayers"] | None = None
+
+
+class TakeSheet(Message, frozen=True):
+    """Put the layers of the sheet in place of a list."""
+
+    path: Literal["stack.entry", "stack.cell", "stack.exit"]
+
+
+class OpenText(Message, frozen=True):
+    """Open a file of the user's own: a scenario, or a report with one in it."""
+
+    name: str
+    text: str
+
+
 class Undo(Message, frozen=True):
     """One step back."""
 
@@ -123,9 +222,18 @@ class Browse(Message, frozen=True):
 
 
 class Open(Message, frozen=True):
-    """Open a file of the folder."""
+    """Open a file of the folder, or a demo."""
 
     name: str
+    demo: bool = False
+
+
+class Restore(Message, frozen=True):
+    """Edits that were never saved, kept by the browser; `base`: digest of the file they began from."""
+
+    text: str
+    drafts: dict[str, str]
+    base: str
 
 
 class Save(Message, frozen=True):
@@ -143,8 +251,17 @@ class Again(Message, frozen=True):
     """Work out the verdict after all."""
 
 
-AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move | Undo
-              | Redo | DropEnds | Propose | StopProposing | Adopt | Browse | Open | Save | Cancel | Again)
+AnyMessage = (Hello | Theme | Scale | Set | Revert | Slide | Settle | Layer | Window | Duplicate | Delete | Move
+              | Mirror | Double | Thicken | Undo | Redo | DropEnds | Propose | StopProposing | Adopt | Trace
+              | Density | Measure | Fit | StopFit | TakeFit | Link | Export | Sheet | TakeSheet | OpenText | Lay
+              | Unlay | Browse | Open | Restore | Save | Cancel | Again)
+
+
+def changes_something(message: AnyMessage) -> bool:
+    """Whether a message would change or save more than the number of periods, or start long work."""
+    looks = (Hello, Theme, Scale, Slide, Settle, Browse, Open, Undo, Redo, Trace, Density, Lay, Unlay, Link, Export,
+             OpenText, Cancel, Again)
+    return not isinstance(message, looks) and not (isinstance(message, Set) and message.path == "stack.periods")
 
 
 def in_words(error: Exception) -> str:

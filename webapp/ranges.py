@@ -9,6 +9,7 @@ from webapp.latest import Latest
 from webapp.messages import in_words
 from webapp.remedies import Later
 from webapp.results import Band
+from webapp.service import Visit
 from webapp.work import band_of, range_of
 
 
@@ -16,11 +17,12 @@ class Ranges:
     """Follows the verdict: `tell` gets the range in words, `draw` the range of the margins (None: no range)."""
 
     def __init__(
-        self, tell: Callable[[dict[str, str] | None], None], draw: Callable[[Band | None], None], later: Later
+        self, tell: Callable[[dict[str, str] | None], None], draw: Callable[[Band | None], None], later: Later,
+        visit: Visit,
     ) -> None:
         self._tell, self._draw = tell, draw
-        self._ranges = Latest(range_of, later(self._found), later(self._failed), interrupts=True)
-        self._bands = Latest(band_of, later(self._banded), later(self._failed), interrupts=True)
+        self._ranges = Latest(range_of, later(self._found), later(self._failed), interrupts=True, line=visit.line)
+        self._bands = Latest(band_of, later(self._banded), later(self._failed), interrupts=True, line=visit.line)
 
     def ask(self, scenario: Scenario) -> None:
         """Work out the range of a scenario's verdict."""

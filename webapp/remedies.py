@@ -8,10 +8,12 @@ from typing import Any, Literal
 
 from transport import Scenario
 from transport.fewest import Asked
+from webapp.jobs import in_line
 from webapp.latest import Latest, Stop
 from webapp.messages import in_words
 from webapp.pages.remedies import Proposal, remedies_view
 from webapp.results import question
+from webapp.service import Visit
 from webapp.work import Search, proposals
 
 _POLL = 0.2
@@ -23,12 +25,13 @@ Later = Callable[[Callable[..., None]], Callable[..., None]]
 class Remedies:
     """Proposals for the stack on the bench. `tell` draws their list; `later` is the way of results to the page."""
 
-    def __init__(self, tell: Callable[[dict[str, Any]], None], later: Later) -> None:
-        self._tell, self._later = tell, later
+    def __init__(self, tell: Callable[[dict[str, Any]], None], later: Later, visit: Visit) -> None:
+        self._tell, self._later, self._visit = tell, later, visit
         self._state, self._sentence, self._share = "none", "", 0.0
         self._proposals: tuple[Proposal, ...] = ()
         self._about: list[Asked] = []
-        self._search = Latest(self._work, later(self._show), later(self._fail), interrupts=True)
+        self._search = Latest(self._work, later(self._show), later(self._fail), interrupts=True,
+                              line=visit.line)
 
     def look(self, scenario: Scenario, what: Literal["ends", "nearest"], whole: bool) -> None:
         """Look for remedies of a scenario."""
@@ -63,6 +66,7 @@ class Remedies:
         return self._proposals[index] if 0 <= index < len(self._proposals) else None
 
     def _work(self, search: Search, stop: Stop) -> tuple[str, tuple[Proposal, ...]]:
+        self._visit.allow(search.scenario.target)
         return proposals(search, stop, self._progress)
 
     def _progress(self, share: float) -> None:
@@ -85,4 +89,5 @@ class Remedies:
             self._draw()
 
     def _draw(self) -> None:
-        self._tell(remedies_view(self._state, self._sentence, self._proposals, self._share))
+        view = remedies_view(self._state, self._sentence, self._proposals, self._share)
+        self._tell(view | {"waits": in_line(self._search.waits_behind)})

@@ -6,7 +6,7 @@ Frozen results in the engine's units (eV, nm), cached by value; their arrays are
 from __future__ import annotations
 
 import functools
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from itertools import pairwise
 
 import numpy as np
@@ -108,7 +108,8 @@ def _crowded(bands: Bands, span: Span) -> Floats:
 class Passage:
     """What the stack passes over a view: T and log10 T, and what of it a beam would measure.
 
-    `lower` and `upper`: the envelope where there are too many peaks to resolve, with `note` saying so, else None.
+    `from_pole`: peaks (eV) drawn from their poles, too narrow for doubles. `absorbed`: what dephasing takes. `lower`
+    and `upper`: the envelope where there are too many peaks to resolve, with `note` saying so. None: no such thing.
     """
 
     periods: int
@@ -116,9 +117,11 @@ class Passage:
     transmission: Floats
     log10: Floats
     measured: Floats | None = None
+    absorbed: Floats | None = None
     lower: Floats | None = None
     upper: Floats | None = None
     note: str = ""
+    from_pole: Floats = field(default_factory=lambda: np.zeros(0))
 
 
 def passage(stack: Stack, view: Span, resolution: float) -> Passage:
@@ -131,7 +134,9 @@ def passage(stack: Stack, view: Span, resolution: float) -> Passage:
     envelope = found.envelope
     return Passage(
         stack.periods, energy, found.transmission[kept], log10[kept], measured,
+        found.absorption[kept] if stack.dephasing else None,
         envelope.lower[kept] if envelope else None, envelope.upper[kept] if envelope else None, found.note,
+        found.narrow.energy if found.narrow else np.zeros(0),
     )
 
 

@@ -21,8 +21,7 @@ from transport import (
     verdict_range,
 )
 from transport.fewest import Asked
-from transport.periods import no_progress
-from webapp.latest import Stop
+from webapp.latest import Stop, checked
 from webapp.pages.remedies import Proposal, of_ends, of_stacks
 from webapp.results import (
     Band,
@@ -85,24 +84,14 @@ def verdict(asked: Asked, stop: Stop, progress: Callable[[float], None]) -> Verd
     """Work out the verdict; None where no window is asked. Raises Stopped, and ValueError where the model ends."""
     if asked.target is None or not asked.target.windows:
         return None
-    return period_verdict(asked, progress=_checked(stop, progress))
-
-
-def _checked(stop: Stop, progress: Callable[[float], None] = no_progress) -> Callable[[float], None]:
-    """Progress that also stops the work where that is asked."""
-
-    def told(share: float) -> None:
-        stop.check()
-        progress(share)
-
-    return told
+    return period_verdict(asked, progress=checked(stop, progress))
 
 
 def range_of(scenario: Scenario, stop: Stop) -> VerdictRange | None:
     """The range of a scenario's verdict; None where no window is asked. Raises Stopped."""
     if scenario.target is None or not scenario.target.windows:
         return None
-    return verdict_range(scenario, _checked(stop))
+    return verdict_range(scenario, checked(stop))
 
 
 def band_of(asked: tuple[Scenario, VerdictRange], stop: Stop) -> Band | None:
@@ -112,7 +101,7 @@ def band_of(asked: tuple[Scenario, VerdictRange], stop: Stop) -> Band | None:
     if most > MOST_RANGED:
         return None
     counts = np.unique(np.linspace(1, most, min(most, _RANGED)).round().astype(np.int64))
-    return Band(counts, *margin_range(scenario, found, counts, _checked(stop)))
+    return Band(counts, *margin_range(scenario, found, counts, checked(stop)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -126,7 +115,7 @@ class Search:
 
 def proposals(search: Search, stop: Stop, progress: Callable[[float], None]) -> tuple[str, tuple[Proposal, ...]]:
     """What is found, in a sentence and as proposals. Raises Stopped, and ScenarioError where there is nothing to do."""
-    told = _checked(stop, progress)
+    told = checked(stop, progress)
     if search.what == "ends":
         ends = matched_ends(search.scenario, search.whole, progress=told)
         return ends.sentence, of_ends(ends)

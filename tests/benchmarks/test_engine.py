@@ -17,8 +17,10 @@ import pytest
 from tests.benchmarks.harness import machine, median_ms, median_ratio
 from tests.transport.stacks import CLOSED_OFF, PLAIN
 from tests.transport.test_periods import Asked, blocking, passing
-from transport import Layer, Target, lattice_bands, period_verdict, spectrum
+from tests.transport.test_profiles import RUNNING
+from transport import Layer, Lead, Stack, Target, lattice_bands, period_verdict, spectrum
 from transport.constants import HBAR2_2M0
+from transport.profiles import slices
 
 SIZE = 10_000
 
@@ -89,6 +91,16 @@ def test_chosen_energies() -> None:
     stack = CLOSED_OFF.with_periods(50)
     took = median_ms(lambda i: spectrum(stack, between=(0.0, 0.4 + i * 1e-6)).transmission)
     print(f"chosen energies, 50 periods over two minibands: {took:.0f} ms")
+
+
+@pytest.mark.parametrize("name", ["cosine", "running mass", "graded"])
+def test_periods_of_profiles(name: str) -> None:
+    """60 periods of a profile at 2,000 energies: to be at most 60 ms on one core; and resolving it, once."""
+    course, lead = RUNNING[name], Lead(0.0, 0.067)
+    stack = Stack(lead, (), slices(course, 0.0, 0.9), 60, (), lead)
+    took = median_ms(lambda i: spectrum(stack, np.linspace(0.01, 0.5, 2000) + i * 1e-7).transmission)
+    resolved = median_ms(lambda i: slices(course, 0.0, 0.9 + i * 1e-6), 5)
+    print(f"60 periods, 2000 energies, {name}, {len(stack.cell)} slices: {took:.1f} ms; resolved in {resolved:.0f} ms")
 
 
 def test_import() -> None:

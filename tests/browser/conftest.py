@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import json
 import re
 import shutil
 import subprocess
 import sys
 from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import IO
@@ -18,14 +20,34 @@ from tests.browser.chromium import FLAGS, found
 from webapp.environment import CHECKOUT
 
 ADDRESS = re.compile(r"at (http://\S+)")
+FAULTS = ("error", "critical")
+"""Levels of the log that no visit may cause."""
 
 
 @dataclass(frozen=True)
 class Served:
-    """A running server: its address and the folder it serves."""
+    """A running server: its address, the folder it serves, its log, and its process."""
 
     address: str
     folder: Path
+    log: Path
+    process: int
+
+    def events(self) -> list[dict[str, object]]:
+        """What the log holds; every line of it is a JSON object."""
+        return [json.loads(line) for line in self.log.read_text().splitlines()]
+
+    def faults(self, begin: int = 0) -> list[dict[str, object]]:
+        """Lines of the log from `begin` on that tell of a fault."""
+        return [line for line in self.events()[begin:] if line["level"] in FAULTS or "traceback" in line]
+
+
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    """Tests of the browser run one after another, however many run beside them."""
+    here = Path(__file__).parent
+    for item in items:
+        if here in item.path.parents:
+            item.add_marker(pytest.mark.xdist_group("browser"))
 
 
 @pytest.fixture(scope="session")
@@ -39,19 +61,49 @@ def browser() -> Iterator[Browser]:
 
 
 @pytest.fixture
-def served(tmp_path: Path) -> Iterator[Served]:
-    folder = tmp_path / "scenarios"
-    shutil.copytree(CHECKOUT / "scenarios", folder)
-    command = [sys.executable, "-m", "webapp", "--port", "0", str(folder)]
-    log = tmp_path / "server.log"
-    with log.open("w") as written, subprocess.Popen(
+def folder(tmp_path: Path) -> Path:
+    """A copy of the demo scenarios."""
+    place = tmp_path / "scenarios"
+    shutil.copytree(CHECKOUT / "scenarios", place)
+    return place
+
+
+@pytest.fixture(scope="session")
+def lasting(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Served]:
+    """One server for all tests that need none of their own: to start one takes longer than most tests."""
+    place = tmp_path_factory.mktemp("lasting") / "scenarios"
+    shutil.copytree(CHECKOUT / "scenarios", place)
+    with serving(place) as server:
+        yield server
+
+
+@pytest.fixture
+def served(lasting: Served) -> Iterator[Served]:
+    """The lasting server with its folder as new; afterwards no fault of this test may stand in its log."""
+    shutil.rmtree(lasting.folder)
+    shutil.copytree(CHECKOUT / "scenarios", lasting.folder)
+    before = len(lasting.events())
+    yield lasting
+    assert lasting.faults(before) == []
+
+
+@contextmanager
+def serving(folder: Path, *options: str, port: int = 0) -> Iterator[Served]:
+    """A server of a folder; at the end it must stop when told, unless it was killed, and its log hold no fault."""
+    command = [sys.executable, "-m", "webapp", "--port", str(port), *options, str(folder)]
+    log = folder.parent / "server.log"
+    with log.open("a") as written, subprocess.Popen(
         command, cwd=CHECKOUT, stdout=subprocess.PIPE, stderr=written, text=True
     ) as server:
         assert server.stdout is not None
-        yield Served(_address(server.stdout, log), folder)
-        server.terminate()
-        assert server.wait(timeout=20) == 0, log.read_text()
-    assert "Traceback" not in log.read_text(), log.read_text()
+        try:
+            running = Served(_address(server.stdout, log), folder, log, server.pid)
+            yield running
+            killed = server.poll() is not None
+        finally:
+            server.terminate()
+        assert server.wait(timeout=20) == 0 or killed, log.read_text()
+    assert running.faults() == []
 
 
 def _address(output: IO[str], log: Path) -> str:
@@ -65,13 +117,20 @@ def _address(output: IO[str], log: Path) -> str:
 @pytest.fixture
 def page(browser: Browser, served: Served) -> Iterator[Page]:
     """The start page, ready; afterwards no error may stand in its console and no request may have left the server."""
+    with visiting(browser, served) as visited:
+        yield visited
+
+
+@contextmanager
+def visiting(browser: Browser, served: Served, path: str = "") -> Iterator[Page]:
+    """A page of a server, ready, watched for errors and for requests to other servers."""
     context = browser.new_context(viewport={"width": 1280, "height": 800})
     visited = context.new_page()
     faults: list[str] = []
     visited.on("console", lambda message: faults.append(message.text) if message.type == "error" else None)
     visited.on("pageerror", lambda error: faults.append(str(error)))
     visited.on("request", lambda request: None if _local(request.url, served) else faults.append(request.url))
-    visited.goto(served.address)
+    visited.goto(served.address + path)
     ready(visited)
     yield visited
     context.close()

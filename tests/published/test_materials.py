@@ -1,15 +1,19 @@
 """The library of materials against outside tables and round numbers of the trade.
 
 openbandparams 1.0 (PyPI) is an open table after the same paper, Vurgaftman, Meyer and Ram-Mohan, J. Appl. Phys. 89,
-5815 (2001). It differs on purpose in two points, which are compared at 0 K or left out:
+5815 (2001). It differs on purpose in three points, which are compared at 0 K or left out:
 
 * masses of binaries: it computes them from the gap at temperature by k.p, here they are the paper's low-temperature
   values at every temperature; at 0 K both agree;
-* masses of InGaAs and InAlAs: it interpolates the k.p parameters, here the paper's bowing of the mass itself is used.
+* masses of alloys: it interpolates the k.p parameters; here the paper's bowing of the mass itself is used for InGaAs
+  and InAlAs, and the straight line between the ends for the others;
+* the valence edge of AlAsSb: it bows by -0.14 eV, with the paper's -1.71 eV beside it but switched off; here the
+  paper's stands.
 """
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 import openbandparams
@@ -17,14 +21,17 @@ import pytest
 
 from transport import material
 
-BINARIES = ("GaAs", "AlAs", "InAs", "InP")
+BINARIES = ("GaAs", "AlAs", "InAs", "InP", "GaSb", "AlSb")
 # our name: (its name, its x from ours)
-ALLOYS = {"AlGaAs": ("AlGaAs", False), "InGaAs": ("GaInAs", True), "InAlAs": ("AlInAs", True)}
-TEMPERATURES = (4.0, 77.0, 300.0, 500.0)
+ALLOYS = {"AlGaAs": ("AlGaAs", False), "InGaAs": ("GaInAs", True), "InAlAs": ("AlInAs", True),
+          "GaAsSb": ("GaAsSb", True), "AlGaSb": ("AlGaSb", False), "AlAsSb": ("AlAsSb", True)}
+TEMPERATURES = (0.0, 77.0, 300.0, 500.0)
+# the open table's bowing of a valence edge less the paper's, eV
+SWITCHED_OFF = {"AlAsSb": -0.14 + 1.71}
 
 
 def theirs(name: str, x: float | None) -> Any:
-    """The same material in the open table, which counts x for the other cation where it names that one first."""
+    """The same material in the open table, which counts x for the other element where it names that one first."""
     if x is None:
         return getattr(openbandparams, name)
     its_name, swapped = ALLOYS[name]
@@ -41,7 +48,9 @@ def test_gap_edge_and_lattice_constant_are_those_of_the_open_table(
 ) -> None:
     found, other = material(name, x, temperature), theirs(name, x)
     assert found.gap == pytest.approx(other.Eg_Gamma(T=temperature), abs=1e-12)
-    assert found.band_edge == pytest.approx(other.CBO_Gamma(T=temperature), abs=1e-12)
+    bowing = SWITCHED_OFF.get(name, 0.0) * ((x or 0.0) * (1 - (x or 0.0)))
+    assert found.valence_edge == pytest.approx(other.VBO(T=temperature) + bowing, abs=1e-12)
+    assert found.band_edge == pytest.approx(other.CBO_Gamma(T=temperature) + bowing, abs=1e-12)
     assert found.lattice_constant * 10 == pytest.approx(other.a(T=temperature), abs=1e-12)
 
 
@@ -53,13 +62,50 @@ def test_masses_of_binaries_are_those_of_the_open_table_at_low_temperature(name:
 @pytest.mark.parametrize("substrate", BINARIES)
 @pytest.mark.parametrize(("name", "x"), CASES)
 def test_the_strained_edge_follows_from_the_open_table(name: str, x: float | None, substrate: str) -> None:
-    """a_c tr(eps) with the open table's a_c, C11, C12 (formula: Van de Walle, Phys. Rev. B 39, 1871 (1989))."""
+    """a_c tr(eps) with the open table's a_c, C11, C12 (formula: Van de Walle, Phys. Rev. B 39, 1871 (1989)).
+
+    A monolayer of such a layer is half the lattice constant along growth (common practice).
+    """
     other, base = theirs(name, x), theirs(substrate, None)
     in_plane = base.a(T=300) / other.a(T=300) - 1
     along_growth = -2 * other.c12(T=300) / other.c11(T=300) * in_plane
     shift = other.a_c(T=300) * (2 * in_plane + along_growth)
-    found = material(name, x, 300.0, substrate).band_edge - material(name, x, 300.0).band_edge
-    assert found == pytest.approx(shift, abs=1e-12)
+    strained = material(name, x, 300.0, substrate)
+    assert strained.band_edge - material(name, x, 300.0).band_edge == pytest.approx(shift, abs=1e-12)
+    assert strained.monolayer * 20 == pytest.approx(other.a(T=300) * (1 + along_growth), abs=1e-12)
+
+
+def lowest_valley_is_gamma(name: str, x: float, temperature: float) -> bool:
+    other = theirs(name, x)
+    return bool(other.Eg_Gamma(T=temperature) < min(other.Eg_X(T=temperature), other.Eg_L(T=temperature)))
+
+
+@pytest.mark.parametrize(("name", "direct", "indirect"), [
+    ("AlGaAs", 0.40, 0.45), ("InAlAs", 0.38, 0.35), ("AlGaSb", 0.39, 0.41),
+])
+@pytest.mark.parametrize("temperature", [300.0])
+def test_an_alloy_turns_indirect_where_the_open_table_says(
+    name: str, direct: float, indirect: float, temperature: float
+) -> None:
+    """The crossing of the open table lies between the two; it has AlGaAs at 0.41, where 0.45 is common practice."""
+    assert lowest_valley_is_gamma(name, direct, temperature)
+    assert not lowest_valley_is_gamma(name, indirect, temperature)
+    assert not any("is indirect" in sentence for sentence in material(name, direct, temperature).warnings)
+    further = indirect + math.copysign(0.01, indirect - direct)
+    assert any("is indirect" in sentence for sentence in material(name, further, temperature).warnings)
+
+
+@pytest.mark.parametrize(("name", "gamma"), [("GaAsSb", True), ("InGaAs", True), ("AlAsSb", False)])
+@pytest.mark.parametrize("x", [0.0, 0.25, 0.5, 0.75, 1.0])
+def test_an_alloy_without_a_crossing_is_one_or_the_other_throughout(name: str, gamma: bool, x: float) -> None:
+    assert lowest_valley_is_gamma(name, x, 300.0) == gamma
+    assert any("is indirect" in sentence for sentence in material(name, x, 300.0).warnings) != gamma
+
+
+def test_indium_arsenide_beside_gallium_antimonide_has_a_broken_gap() -> None:
+    """The conduction edge of InAs lies about 0.15 eV below the valence edge of GaSb (common practice)."""
+    inside = material("GaSb", None, 4.0).valence_edge - material("InAs", None, 4.0).band_edge
+    assert inside == pytest.approx(0.15, abs=0.02)
 
 
 def test_the_step_of_a_common_barrier_is_a_quarter_of_an_electronvolt() -> None:

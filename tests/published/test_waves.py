@@ -8,7 +8,8 @@ from tests.reference import CHARGE, HBAR, C
 from tests.transport.stacks import ALL, KANE_LEAD, LEAD, LOSSY
 from transport import Delta, Layer, Lead, Stack
 from transport.constants import HBAR2_2M0
-from transport.wave import Side, dwell_time, local_density_of_states, phase_time, wave
+from transport.march import Side
+from transport.wave import dwell_time, local_density_of_states, phase_time, wave
 
 HBAR_EV = HBAR / CHARGE
 UNEVEN = Stack(

@@ -226,3 +226,23 @@ def test_a_terminal_without_the_letters_still_gets_an_answer() -> None:
     command = [sys.executable, "-m", "transport", "periods", "scenarios/heron-gate.toml"]
     run = subprocess.run(command, capture_output=True, text=True, env={"PYTHONIOENCODING": "ascii"}, check=True)
     assert run.stdout.startswith("Fewest periods: 10. Limiting: block 95\\u2013170 meV")
+
+
+def test_a_model_that_ends_above_the_lead_is_a_warning_and_bands_above_it_are_listed(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """m(E) = m (1 + a (E - V)) falls to 0 at V - 1/a = 50 meV (by hand)."""
+    file = tmp_path / "kane.toml"
+    file.write_text("""
+        format = 1
+        leads = { left = { band_edge_eV = 0, mass = 0.067 }, right = { band_edge_eV = 0, mass = 0.067 } }
+        [stack]
+        periods = 3
+        cell = [ { band_edge_eV = 0.3, mass = 0.067, nonparabolicity_per_eV = 4.0, thickness_nm = 3 },
+                 { band_edge_eV = 0, mass = 0.067, thickness_nm = 5 } ]
+    """)
+    assert main(["check", str(file)]) == 0
+    assert "warning: The one-band model ends at 50 meV" in capsys.readouterr().out
+    assert main(["bands", str(file)]) == 2
+    assert "ends at 50 meV" in capsys.readouterr().err
+    assert main(["bands", str(file), "--from-meV", "51", "--to-meV", "400"]) == 0

@@ -8,7 +8,7 @@ from tests.transport.stacks import ALL, CLOSED_OFF, LEAD, PLAIN, barrier, well
 from transport import Delta, Layer, Stack
 from transport.chain import Chain
 from transport.constants import HBAR2_2M0
-from transport.oscillation import first_reaching, rotation, through, zeros
+from transport.oscillation import first_reaching, rotation, through, zeros, zeros_at
 
 
 def box_levels(stack: Stack, below: float) -> np.ndarray:
@@ -55,6 +55,15 @@ def test_a_level_between_two_thick_walls_is_counted_once() -> None:
 def test_the_lifted_bloch_phase_grows_with_energy(name: str) -> None:
     turns = rotation(Chain(ALL[name], np.linspace(-0.2, 3.0, 20_001))).turns
     assert np.diff(turns).min() > -1e-9
+
+
+@pytest.mark.parametrize("name", ALL)
+def test_zeros_at_one_energy_are_those_of_many_energies(name: str) -> None:
+    stack = ALL[name]
+    elements = stack.entry + stack.cell * stack.periods + stack.exit
+    energy = np.concatenate([np.random.default_rng(1).uniform(0.001, 2.0, 300), [0.3]])  # and E = V of the barriers
+    together = np.broadcast_to(through(elements, energy).zeros, energy.shape)
+    assert [zeros_at(elements, at) for at in energy.tolist()] == together.tolist()
 
 
 def test_zeros_accept_a_number_of_periods_for_each_energy() -> None:

@@ -25,7 +25,7 @@ from transport import (
     scenario_from_document,
 )
 from transport.document import MeasuredRecord, PeakRecord
-from transport.measured import assigned
+from transport.measured import assigned, format_peaks
 from transport.scenario import Scenario
 
 HERON = load_scenario("scenarios/heron-gate.toml")
@@ -109,6 +109,27 @@ def test_planted_figures_come_back_exactly_without_noise() -> None:
     assert fit.scenario is not None
     assert fit.scenario.stack.cell[1].thickness == pytest.approx(  # type: ignore[union-attr]
         SHORT.stack.cell[1].thickness + 0.21, abs=1e-6)  # type: ignore[union-attr]
+
+
+def test_a_fitted_edge_of_a_material_is_written_as_an_explicit_layer() -> None:
+    """The fitted stack and the stack of the fitted file are one and the same."""
+    energy = resonances(planted(0.1, 0.0), (0.02, 0.3)).energy
+    fit = fit_peaks(SHORT, ["well", "edge"], peaks_at(energy, 1e-4))
+    assert fit.scenario is not None and fit.scenario.document.stack.cell[0].material is None
+    assert fit.after.resonances.energy == pytest.approx(
+        resonances(fit.scenario.stack, fit.after.resonances.between).energy, abs=1e-12)
+
+
+def test_peaks_written_as_a_table_are_read_back() -> None:
+    record = MeasuredRecord((PeakRecord(bias_V=0.2, width_meV=2.0), PeakRecord(energy_meV=40.0)))
+    assert read_peaks(format_peaks(record)) == record
+    assert format_peaks(MeasuredRecord()) == ""
+
+
+def test_peaks_are_paired_among_resonances_already_known() -> None:
+    found = resonances(SHORT.stack, (0.03, 0.1))
+    compared = compare_peaks(SHORT, peaks_at(found.energy[[1]] + 1e-4), among=found)
+    assert compared.resonances is found and compared.pairs.tolist() == [1]
 
 
 def test_planted_figures_are_recovered_within_two_standard_errors_in_95_of_100_noisy_trials() -> None:

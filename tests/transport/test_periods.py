@@ -14,11 +14,14 @@ from transport import (
     Verdict,
     Window,
     bloch,
+    dwell_time,
     lattice_bands,
+    load_scenario,
     measured_transmission,
     period_verdict,
     spectrum,
 )
+from transport.constants import HBAR
 
 
 @dataclass(frozen=True)
@@ -222,3 +225,24 @@ def test_a_beam_sees_above_a_lead_edge_from_a_window_below_it() -> None:
     expected = measured_transmission(stack, [0.049], 0.03)[0]
     assert found.fewest is None
     assert found.per_period[0].values[0] == pytest.approx(expected, rel=1e-6)
+
+
+def test_with_dephasing_the_verdict_says_beyond_which_count_periods_only_lose_current() -> None:
+    """By definition: no larger count passes more in any pass window, and a smaller one would leave a gain to come."""
+    heron = load_scenario("scenarios/heron-gate.toml")
+    lossy = Asked(replace(heron.stack, dephasing=4e-3), heron.target)
+    verdict = period_verdict(lossy, most=30)
+    place = next(i for i, window in enumerate(verdict.windows) if window.kind == "pass")
+    passed = [check.values[place] for check in verdict.per_period]
+    assert verdict.loses_beyond == 1 + passed.index(max(passed)) < 30
+    assert verdict.sentence.endswith("further ones only lose current (coherent part only).")
+    assert period_verdict(heron, most=30).loses_beyond is None
+
+
+def test_what_is_absorbed_is_what_neither_passes_nor_returns() -> None:
+    """Against the probability stored in the stack: absorbed = dephasing/hbar times the dwell time (continuity)."""
+    heron = load_scenario("scenarios/heron-gate.toml")
+    stack, energy = replace(heron.stack, dephasing=2e-3), np.linspace(0.05, 0.25, 7)
+    expected = stack.dephasing / HBAR * dwell_time(stack, energy)
+    assert spectrum(stack, energy).absorption == pytest.approx(expected, rel=1e-9)
+    assert not spectrum(heron.stack, energy).absorption.any()

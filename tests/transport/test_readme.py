@@ -12,6 +12,7 @@ import pytest
 
 from transport import parse_scenario, period_verdict
 from transport.__main__ import main
+from transport.limits import GROWTH, LIMITS
 from transport.parameters import PARAMETERS
 
 CHECKOUT = Path(__file__).parents[2]
@@ -60,6 +61,13 @@ def test_every_command_answers(
     assert words[:3] == ["python3", "-m", "transport"]
     assert main(words[3:]) == 0
     assert capsys.readouterr().out
+
+
+def test_the_models_limits_are_those_that_reports_carry() -> None:
+    text = " ".join((CHECKOUT / "README.md").read_text().split())
+    for head, rest in LIMITS:
+        assert f"**{head}** {rest}" in text or f"{head} {rest}" in text
+    assert GROWTH.removeprefix("Growth") in text
 
 
 def test_the_limits_are_those_of_the_code() -> None:

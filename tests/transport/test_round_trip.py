@@ -29,6 +29,7 @@ from transport.document import (
 )
 from transport.materials import is_alloy, material_names, substrate_names
 from transport.parameters import PARAMETERS
+from transport.refusal import ScenarioError
 
 
 def numbers(name: str) -> st.SearchStrategy[float]:
@@ -85,8 +86,16 @@ def windows(draw: st.DrawFn) -> WindowRecord:
     return WindowRecord(kind, bottom, top, draw(numbers("transmission")), measure)  # type: ignore[arg-type]
 
 
+def touches_no_broken_gap(document: Document) -> bool:
+    try:
+        scenario_from_document(document)
+    except ScenarioError as error:
+        return "a broken gap" not in error.message
+    return True
+
+
 @st.composite
-def documents(draw: st.DrawFn) -> Document:
+def any_documents(draw: st.DrawFn) -> Document:
     materials = draw(st.lists(
         st.builds(UserMaterial, text("name").map("my {}".format), numbers("band_edge_eV"), numbers("mass"),
                   maybe(numbers("gap_eV")), maybe(numbers("nonparabolicity_per_eV")), maybe(numbers("monolayer_nm"))),
@@ -109,6 +118,10 @@ def documents(draw: st.DrawFn) -> Document:
                                           st.integers(0, 10))),
         materials=tuple(materials),
     )
+
+
+def documents() -> st.SearchStrategy[Document]:
+    return any_documents().filter(touches_no_broken_gap)
 
 
 @settings(deadline=None, max_examples=150)

@@ -1,12 +1,16 @@
 """Spectra: chosen energies miss nothing, closed leads, shapes, and misuse."""
 
+import math
+from itertools import pairwise
+
 import mpmath
 import numpy as np
 import pytest
+from scipy.integrate import quad
 
 from tests.reference import scattered
 from tests.transport.stacks import ALL, END_WELLS, LEAD, LOSSY, OPAQUE, PLAIN, UNEQUAL, barrier, well
-from transport import Layer, Stack, measured_transmission, spectrum, transmission_map
+from transport import Layer, Lead, Stack, measured_transmission, spectrum, transmission_map
 from transport.spectrum import MOST_PEAKS
 
 NARROW = Stack(LEAD, (barrier(12.0), well(5.0), barrier(12.0)), (well(5.0),), 1, (), LEAD)
@@ -19,6 +23,10 @@ def test_straight_lines_between_chosen_energies_stay_within_a_thousandth(stack: 
     where = draw.integers(0, curve.energy.size - 1, 40_000)
     inside = curve.energy[where] + np.diff(curve.energy)[where] * draw.uniform(0, 1, where.size)
     energy = np.concatenate([inside, draw.uniform(0.0, 0.5, 20_000)])
+    if curve.narrow is not None:
+        # There T sampled at doubles is no truth: test_narrow.py has 50 digits.
+        off = abs(energy[:, None] - curve.narrow.energy).min(axis=1)
+        energy = energy[off > 20 * curve.narrow.width.max() + 1e-15]
     error = abs(np.interp(energy, curve.energy, curve.transmission) - spectrum(stack, energy).transmission)
     assert error.max() < 1e-3
 
@@ -113,6 +121,23 @@ def test_a_measured_spectrum_is_the_convolution_with_the_beam() -> None:
     expected = np.trapezoid(kernel * value, grid)
     assert measured_transmission(PLAIN, energy, width) == pytest.approx(expected, rel=1e-6)
     assert measured_transmission(PLAIN, energy, 0.0) == pytest.approx(spectrum(PLAIN, energy).transmission)
+
+
+@pytest.mark.parametrize("right", [0.05, 1e-4, 1e-7, 0.0, -0.05])
+def test_a_beam_across_the_edge_of_a_lead_is_measured_to_a_billionth(right: float) -> None:
+    """Against scipy.integrate.quad with the edges as break points."""
+    thin = Stack(LEAD, (), (barrier(1.0), well(4.0)), 2, (barrier(1.0),), Lead(right, 0.067))
+    edge, width = max(0.0, right), 0.01
+    energy = edge + np.array([-0.02, 0.0, 0.01, 0.07])
+    sigma = width / 2.3548200450309493  # 2 sqrt(2 ln 2), from memory
+    for at, found in zip(energy, measured_transmission(thin, energy, width), strict=True):
+        def beam(u: float, at: float = float(at)) -> float:
+            e = edge + u * u
+            return float(spectrum(thin, e).transmission) * math.exp(-0.5 * ((e - at) / sigma) ** 2) * 2 * u
+
+        breaks = [0.0, 3e-4, 1e-3, 1e-2, 0.05, 0.1, 0.15, 0.2, 0.25, 0.3, 0.36]
+        pieces = [quad(beam, *piece, epsabs=1e-15, epsrel=1e-11)[0] for piece in pairwise(breaks)]
+        assert found == pytest.approx(sum(pieces) / (sigma * math.sqrt(2 * math.pi)), abs=1e-9)
 
 
 @pytest.mark.parametrize("arguments, sentence", [

@@ -10,8 +10,9 @@ from scipy.optimize import brentq, newton
 from tests.transport.stacks import ALL, FREE, KANE, LEAD, LOSSY, OPAQUE, PLAIN, UNEQUAL
 from transport import Delta, Layer, Lead, Stack, scattering_matrix, spectrum
 from transport.constants import HBAR, HBAR2_2M0
+from transport.march import Side
 from transport.propagation import transfer
-from transport.wave import Side, charge, dwell_time, local_density_of_states, phase_time, pole_wave, wave
+from transport.wave import charge, dwell_time, local_density_of_states, phase_time, pole_wave, wave
 
 SIDES: tuple[Side, Side] = ("left", "right")
 ENERGIES = np.linspace(0.0411, 1.2, 211)

@@ -173,8 +173,8 @@ WRONG_FILES = {
         "conditions.nonparabolic: must be true or false, but is 1",
     ),
     "substrate unknown": (
-        "temperature_K = 77", 'substrate = "GaSa"',
-        'conditions.substrate: "GaSa" is not a substrate of the library; known here: GaAs, AlAs, InAs, InP',
+        "temperature_K = 77", 'substrate = "mica"',
+        'conditions.substrate: "mica" is not a substrate of the library; known here: GaAs, AlAs, InAs, InP, GaSb, AlSb',
     ),
     "substrate an alloy": (
         "temperature_K = 77", 'substrate = "AlGaAs"',

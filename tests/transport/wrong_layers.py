@@ -67,11 +67,13 @@ WRONG_LAYERS = {
     "layer a number": ("{ delta_eV_nm = 0.1 }", "5", "stack.entry[0]: must be a table of keys and values, but is 5"),
     "layer empty": (
         "{ delta_eV_nm = 0.1 }", "{ }",
-        "stack.entry[0]: does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm",
+        "stack.entry[0]: does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm, or "
+        "profile",
     ),
     "layer with a mass only": (
         "{ delta_eV_nm = 0.1 }", "{ mass = 0.1 }",
-        "stack.entry[0]: does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm",
+        "stack.entry[0]: does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm, or "
+        "profile",
     ),
     "layer with two natures": (
         "{ delta_eV_nm = 0.1 }", "{ delta_eV_nm = 0.1, band_edge_eV = 0.1 }",
@@ -109,7 +111,7 @@ WRONG_LAYERS = {
     "monolayers of an explicit layer": (
         "thickness_nm = 6.5", "monolayers = 6.5",
         "stack.cell[1].monolayers: does not belong to a layer given by its band edge, which takes "
-        "band_edge_eV, mass, thickness_nm, nonparabolicity_per_eV; take it out",
+        "band_edge_eV, mass, thickness_nm, nonparabolicity_per_eV, grading_nm; take it out",
     ),
     "monolayers negative": (
         "monolayers = 9", "monolayers = -9",
@@ -137,24 +139,22 @@ WRONG_LAYERS = {
         'stack.exit[0].layers[1].x: does not belong to "mine", which [materials] defines without one; take it out',
     ),
     "graded x": (
-        "x = 0.3", "x_from = 0.3, x_to = 0.1",
-        "stack.cell[0].x_from: is not a key of a layer; known here: material, x, thickness_nm, monolayers, "
-        "band_edge_eV, mass, nonparabolicity_per_eV, delta_eV_nm, repeat, layers",
+        "x = 0.3", "x = 0.3, x_from = 0.3, x_to = 0.1",
+        "stack.cell[0].x_from: stands beside x; keep x, or x_from with x_to",
     ),
     "profile": (
         "{ delta_eV_nm = 0.1 }", '{ profile = "cosine", mass = 0.1, thickness_nm = 5 }',
-        "stack.entry[0].profile: is not a key of a layer; known here: material, x, thickness_nm, monolayers, "
-        "band_edge_eV, mass, nonparabolicity_per_eV, delta_eV_nm, repeat, layers",
+        "stack.entry[0].mean_eV: is missing; a cosine profile needs mean_eV and amplitude_eV",
     ),
     "material unknown": (
         '"AlAs"', '"AlSa"',
-        'stack.exit[0].layers[0].material: "AlSa" is neither in the library nor in [materials]; did you mean AlGaAs?',
+        'stack.exit[0].layers[0].material: "AlSa" is neither in the library nor in [materials]; did you mean AlSb?',
     ),
     "material a number": ('"AlAs"', "7", "stack.exit[0].layers[0].material: must be text in quotes, but is 7"),
     "mass on a material layer": (
         "monolayers = 9", "monolayers = 9, mass = 0.1",
-        "stack.cell[0].mass: does not belong to a material layer, which takes material, x, thickness_nm, "
-        "monolayers; take it out",
+        "stack.cell[0].mass: does not belong to a material layer, which takes material, x, x_from, x_to, "
+        "thickness_nm, monolayers, grading_nm; take it out",
     ),
     "mass missing": (
         "mass = 0.07, ", "",
@@ -196,7 +196,8 @@ WRONG_LAYERS = {
     ),
     "layers without repeat": (
         "{ delta_eV_nm = 0.1 }", "{ layers = [ { delta_eV_nm = 0.1 } ] }",
-        "stack.entry[0]: does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm",
+        "stack.entry[0]: does not say what it is; give material, or band_edge_eV and mass, or delta_eV_nm, or "
+        "profile",
     ),
     "repeat zero": (
         "repeat = 2", "repeat = 0",

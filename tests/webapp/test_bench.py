@@ -12,6 +12,7 @@ import pytest
 
 from transport import ScenarioError, load_scenario, matched_ends
 from webapp.bench import Bench
+from webapp.editor import Rail
 from webapp.environment import CHECKOUT
 from webapp.files import Folder
 from webapp.latest import Latest, Stop
@@ -212,3 +213,62 @@ def test_of_many_requests_the_latest_wins() -> None:
         aside.submit(asyncio.run, visit()).result(timeout=30)
     assert done == [4]
     assert started[-1] == 4 and 3 not in started
+
+
+def test_a_list_is_turned_round_and_written_twice_with_its_drafts(bench: Bench) -> None:
+    before = bench.document.stack.cell
+    bench.set(BARRIER, "x")
+    bench.mirror("stack.cell")
+    assert bench.document.stack.cell == before[::-1]
+    assert set(bench.drafts) == {BARRIER.replace("[0]", "[1]")}
+    bench.double("stack.cell")
+    assert bench.document.stack.cell == 2 * before[::-1]
+    bench.undo()
+    bench.undo()
+    assert bench.document.stack.cell == before and set(bench.drafts) == {BARRIER}
+
+
+def test_a_layer_is_moved_by_many_places(bench: Bench) -> None:
+    bench.double("stack.cell")
+    first, second = bench.document.stack.cell[:2]
+    bench.move("stack.cell", 0, 3)
+    assert bench.document.stack.cell == (second, first, second, first)
+    bench.move("stack.cell", 3, 1)
+    assert bench.document.stack.cell == (second, first, second, first)
+
+
+def test_all_barriers_change_at_once_and_too_thin_ones_are_refused(bench: Bench) -> None:
+    bench.thicken("barriers", 1)
+    assert bench.document.stack.cell[0].monolayers == 8 and bench.document.stack.exit[0].monolayers == 8
+    assert bench.undo_step == "change of all barriers"
+    before = bench.document
+    bench.thicken("barriers", -20)
+    assert bench.notice is not None and "must stay above 0" in bench.notice.sentence and bench.document == before
+
+
+@pytest.mark.parametrize("kind", ["linear", "cosine", "gaussian", "sech2", "fermi", "parabola", "samples"])
+def test_a_layer_becomes_a_profile_that_is_accepted_at_once_and_back(bench: Bench, kind: str) -> None:
+    bench.set("stack.cell[1].choice", f"profile:{kind}")
+    assert bench.document.stack.cell[1].profile == kind and not bench.drafts
+    assert any(field["path"] == "stack.cell[1].mass" for field in Rail(bench).view()["parts"][3]["rows"][1]["fields"])
+    bench.set("stack.cell[1].choice", "material:GaAs")
+    assert bench.document.stack.cell[1].material == "GaAs"
+
+
+def test_samples_of_a_profile_are_typed_as_a_list(bench: Bench) -> None:
+    bench.set("stack.cell[1].choice", "profile:samples")
+    bench.set("stack.cell[1].potential_eV", "0, 0.05; -0.01")
+    assert bench.document.stack.cell[1].potential_eV == (0.0, 0.05, -0.01)
+    bench.set("stack.cell[1].potential_eV", "0, high")
+    assert "must be a number" in bench.drafts["stack.cell[1].potential_eV"].message
+
+
+def test_an_alloy_is_graded_through_its_layer_and_at_its_faces(bench: Bench) -> None:
+    bench.set("stack.cell[0].graded", "true")
+    bench.set("stack.cell[0].x_to", "0.1")
+    assert (bench.document.stack.cell[0].x_from, bench.document.stack.cell[0].x_to) == (0.3, 0.1)
+    bench.set("stack.cell[0].graded", "false")
+    assert bench.document.stack.cell[0].x == 0.3
+    bench.set("stack.exit[0].grading_nm", "0.4")
+    bench.set("stack.cell[0].grading_nm", "0.4")
+    assert bench.document.stack.cell[0].grading_nm == 0.4

@@ -18,16 +18,14 @@ export function startBench(given) {
   }
   byId("energy").addEventListener("input", () => readAt(byId("energy").valueAsNumber, { fromField: true }))
   byId("energy").addEventListener("keydown", stepEnergy)
-  window.Bokeh.documents[0].on_event("connection_lost", () => { byId("lost").hidden = false })
 }
 
 export const heldVersion = () => model("rows").tags[0]
 
 // A number of periods: from the slider it is drawn at once out of the rows held here, and the exact curve follows.
 export function showPeriods(periods, { fromServer }) {
-  const sliding = document.activeElement?.id === "period-slider"
-  // While the slider has the focus its position is ahead of the session's.
-  if (fromServer && sliding && Number(byId("period-slider").value) !== periods) return
+  // A slider that moves is ahead of the session.
+  if (fromServer && !app.knowsSlider()) return
   wanted = periods
   byId("periods-shown").textContent = periods === 1 ? "1 period" : `${periods.toLocaleString("en")} periods`
   byId("pass-verb").textContent = periods === 1 ? "passes" : "pass"
@@ -81,7 +79,9 @@ function passed(energy) {
   if (log10 === null) return ""
   if (log10 <= -329) return "T = 0"
   const size = log10 > -3 ? (10 ** log10).toPrecision(3) : `10^${log10.toFixed(2)}`
-  return `T = ${size} (${(10 * log10).toFixed(1).replace("-", "−")} dB)`
+  const lost = interpolated(model("absorbed").data.energy, model("absorbed").data.drawn, energy)
+  const share = lost === null ? "" : `, A = ${(model("passes-range").tags[0] === "log" ? 10 ** lost : lost).toPrecision(3)}`
+  return `T = ${size} (${(10 * log10).toFixed(1).replace("-", "−")} dB)${share}`
 }
 
 function infinite(energy) {

@@ -2,6 +2,14 @@
 
 export const byId = (id) => document.getElementById(id)
 
+// How far work is; `waits`: its place in line, said in place of what it does.
+export function drawProgress(id, share, waits) {
+  const label = document.querySelector(`label[for="${id}"]`)
+  label.dataset.words ??= label.textContent
+  label.textContent = waits || label.dataset.words
+  byId(id).value = share
+}
+
 export function element(tag, properties = {}, ...children) {
   const made = document.createElement(tag)
   for (const [name, value] of Object.entries(properties)) {

@@ -4,15 +4,17 @@ import { byId, element } from "./dom.js"
 
 let send = () => {}
 let asked = null
+let chosen = null
+const MOST_BYTES = 8_000_000
 
 export function startFiles(sender, status) {
   send = sender
   byId("open").addEventListener("click", () => {
-    byId("files").replaceChildren(element("li", { class: "quiet" }, "Reading the folder"))
+    browse("Open a scenario", ({ name, demo }) => send("open", { name, demo }))
     byId("open-warning").hidden = !status()?.changed
-    byId("open-dialog").showModal()
-    send("browse")
   })
+  byId("own-button").addEventListener("click", () => byId("own-file").click())
+  byId("own-file").addEventListener("change", openOwn)
   byId("save").addEventListener("click", () => askToSave(send, status()))
   byId("save-as").addEventListener("click", () => askForName(status()))
   byId("save-cancel").addEventListener("click", () => byId("save-dialog").close())
@@ -24,6 +26,26 @@ export function startFiles(sender, status) {
   byId("objections-dialog").addEventListener("close", () => {
     if (byId("objections-dialog").returnValue === "save") send("save", { name: asked, agreed: true })
   })
+}
+
+// Let the user choose a scenario; `then` is told which.
+export function browse(title, then) {
+  chosen = then
+  byId("open-title").textContent = title
+  byId("open-warning").hidden = true
+  byId("open-own").hidden = title !== "Open a scenario"
+  byId("files").replaceChildren(element("li", { class: "quiet" }, "Reading the folder"))
+  byId("open-dialog").showModal()
+  send("browse")
+}
+
+async function openOwn() {
+  const [file] = byId("own-file").files
+  byId("own-file").value = ""
+  if (!file) return
+  byId("open-dialog").close()
+  const text = file.size > MOST_BYTES ? "" : await file.text()
+  send("opentext", { name: file.name, text })
 }
 
 export function askToSave(sender, status) {
@@ -38,15 +60,19 @@ function askForName(status) {
 }
 
 export function drawFiles(files, status) {
-  const entries = files.map(({ name, title, note, problem }) => {
-    const opening = () => { byId("open-dialog").close(); send("open", { name }) }
+  const card = ({ name, title, note, problem, demo }) => {
+    const opening = () => { byId("open-dialog").close(); chosen({ name, demo }) }
     return element("li", {}, element("button", { type: "button", class: "file", disabled: Boolean(problem),
-      "aria-current": name === status?.place ? "true" : null, onclick: opening },
+      "aria-current": !demo && name === status?.place ? "true" : null, onclick: opening },
     element("span", { class: "file-title" }, title), element("span", { class: "file-name" }, name),
     element("span", { class: problem ? "file-problem" : "file-note" }, problem ?? note)))
-  })
+  }
+  const own = files.filter(({ demo }) => !demo)
+  const demos = files.filter(({ demo }) => demo)
   const empty = element("li", { class: "quiet" }, "The folder holds no scenario yet; Save as makes one.")
-  byId("files").replaceChildren(...(entries.length ? entries : [empty]))
+  const heading = element("li", { class: "files-title" }, "Demos to begin with")
+  byId("files").replaceChildren(...(own.length ? own.map(card) : [empty]),
+    ...(demos.length ? [heading, ...demos.map(card)] : []))
 }
 
 export function drawObjections({ name, sentences }) {

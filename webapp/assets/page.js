@@ -1,15 +1,20 @@
 // The page: hears the session, hands each part to the module that draws it, and sends what the user does.
 
-import { byId, element, icon } from "./dom.js"
+import { byId, drawProgress, element, icon } from "./dom.js"
 import { drawRail, periodsFromRail } from "./rail.js"
 import { heldVersion, showPeriods, startBench } from "./bench.js"
 import { drawRemedies, startRemedies } from "./remedies.js"
+import { drawChosen, drawFit, drawLedger, drawMeasured, drawMeasuredFault, drawResonance, startPeaks } from "./peaks.js"
+import { drawCompare, startCompare } from "./compare.js"
+import { download, drawHandoff, drawLink, drawSheet, startHandoff } from "./handoff.js"
+import { showPage, startTabs } from "./tabs.js"
+import { comeBack, heard, keep, keptFor, sent, takeUnheard } from "./keep.js"
 import { askToSave, drawFiles, drawObjections, startFiles } from "./files.js"
 
-const page = { status: null, pictured: null, sequence: 0, edited: 0, wire: null, palette: null }
+const page = { status: null, pictured: null, sequence: 0, edited: 0, slid: 0, wire: null, unheard: [] }
 
 const EDITS = new Set(["set", "revert", "layer", "window", "duplicate", "delete", "move", "undo", "redo", "open",
-  "dropends", "adopt"])
+  "dropends", "adopt", "measure", "takefit", "restore", "mirror", "double", "thicken", "takesheet", "opentext"])
 
 function send(type, content = {}) {
   page.sequence += 1
@@ -17,8 +22,13 @@ function send(type, content = {}) {
     page.edited = page.sequence
     markPending()
   }
+  if (type === "slide") page.slid = page.sequence
+  if (EDITS.has(type) || type === "slide") sent(type, page.sequence, content)
   page.wire?.send({ type, seq: page.sequence, ...content })
 }
+
+// Whether the session knows where the slider is by now.
+const knowsSlider = () => page.status !== null && page.slid <= page.status.seq
 
 // The rows the browser holds may be shown only while no edit of the stack is on its way.
 function mayPreview() {
@@ -27,12 +37,15 @@ function mayPreview() {
 
 const parts = {
   status(status) {
+    const first = page.status === null
     page.status = status
+    heard(status.seq)
     byId("place").textContent = status.place ?? "not saved yet"
     byId("changed").hidden = !status.changed
     command("undo", status.undo)
     command("redo", status.redo)
     drawNotice(status.notice)
+    drawMeasuredFault(status.notice)
     showPeriods(status.periods, { fromServer: true })
     if (status.place) {
       const address = new URL(location)
@@ -40,8 +53,12 @@ const parts = {
       if (address.href !== location.href) history.replaceState(history.state, "", address)
     }
     markPending()
+    const kept = keptFor(status.place, status.notice?.about === "save" && !status.notice.fault)
+    if (kept && !status.changed) send("restore", kept)
+    if (first) for (const { type, content } of page.unheard) send(type, content)
   },
-  rail(rail) { drawRail(rail, send) },
+  kept(kept) { keep(page.status.place, kept) },
+  rail(rail) { drawRail(rail, send, knowsSlider()) },
   about({ title, note, cautions, beam }) {
     byId("beam").textContent = beam
     byId("title").textContent = title
@@ -56,8 +73,8 @@ const parts = {
     const { state, sentence, present, legend } = verdict
     byId("answer").dataset.state = state
     byId("sign").replaceChildren(icon(state))
-    byId("working").hidden = state !== "working" || !verdict.share
-    byId("progress").value = verdict.share ?? 0
+    byId("working").hidden = state !== "working" || !(verdict.share || verdict.waits)
+    drawProgress("progress", verdict.share ?? 0, verdict.waits)
     byId("again").hidden = state !== "stopped"
     if (state === "stopped") byId("sentence").textContent = "The verdict was not worked out."
     else if (sentence) byId("sentence").textContent = sentence
@@ -90,6 +107,21 @@ const parts = {
     byId("earlier").hidden = !earlier
   },
   remedies(remedies) { drawRemedies(remedies) },
+  ledger(ledger) { drawLedger(ledger) },
+  chosen(place) { drawChosen(place) },
+  resonance(resonance) { drawResonance(resonance) },
+  measured(measured) { drawMeasured(measured) },
+  fit(fit) { drawFit(fit) },
+  compare(compare) { drawCompare(compare) },
+  link(link) { drawLink(link) },
+  handoff(handoff) { drawHandoff(handoff) },
+  download(file) { download(file) },
+  sheet(sheet) { drawSheet(sheet) },
+  view({ page: name, scale, density }) {
+    showPage(name)
+    document.querySelector(`input[name=scale][value=${scale}]`).checked = true
+    byId("density").checked = density
+  },
   files(files) { drawFiles(files, page.status) },
   objections(objections) { drawObjections(objections) },
 }
@@ -102,7 +134,7 @@ function command(id, step) {
 }
 
 function drawNotice(notice) {
-  const shown = notice && (notice.about === "open" || notice.about === "save")
+  const shown = notice && ["open", "save", "kept", "view", "sheet"].includes(notice.about)
   byId("notice").hidden = !shown
   byId("notice").textContent = shown ? notice.sentence : ""
   byId("notice").dataset.fault = String(Boolean(notice?.fault))
@@ -122,13 +154,13 @@ function setTheme(theme) {
 
 function start() {
   for (const id of ["undo", "redo", "theme"]) byId(id).append(icon(id))
-  document.querySelector("#open-dialog .close").append(icon("close"))
+  for (const button of document.querySelectorAll("dialog .close")) button.append(icon("close"))
+  byId("help").addEventListener("click", () => byId("help-dialog").showModal())
   setTheme(document.documentElement.dataset.theme)
   byId("undo").addEventListener("click", () => send("undo"))
   byId("redo").addEventListener("click", () => send("redo"))
   byId("cancel").addEventListener("click", () => send("cancel"))
   byId("again").addEventListener("click", () => send("again"))
-  byId("reload").addEventListener("click", () => location.reload())
   byId("theme").addEventListener("click", () => {
     const theme = document.documentElement.dataset.theme === "dark" ? "light" : "dark"
     localStorage.setItem("colonnade-theme", theme)
@@ -138,13 +170,18 @@ function start() {
   for (const choice of document.querySelectorAll("input[name=scale]")) {
     choice.addEventListener("change", () => send("scale", { scale: choice.value }))
   }
+  startTabs()
   startRemedies(send)
+  startPeaks(send)
+  startCompare(send)
+  startHandoff(send)
   startFiles(send, () => page.status)
   document.addEventListener("keydown", shortcuts)
-  addEventListener("beforeunload", (event) => { if (page.status?.changed) event.preventDefault() })
 }
 
 function shortcuts(event) {
+  const writes = event.target.matches?.("input:not([type=radio], [type=checkbox], [type=range]), textarea, select")
+  if (event.key === "?" && !writes && !document.querySelector("dialog[open]")) byId("help-dialog").showModal()
   if (!(event.ctrlKey || event.metaKey) || event.altKey) return
   const key = event.key.toLowerCase()
   if (key === "s") {
@@ -164,7 +201,12 @@ document.addEventListener("colonnade:wire", ({ detail: wire }) => {
   wire.listen((news) => {
     for (const name of Object.keys(parts)) if (name in news) parts[name](news[name])
   })
-  startBench({ send, mayPreview, chosen: periodsFromRail })
+  startBench({ send, mayPreview, knowsSlider, chosen: periodsFromRail })
+  page.unheard = takeUnheard()
+  window.Bokeh.documents[0].on_event("connection_lost", () => {
+    byId("lost").hidden = false
+    comeBack()
+  })
   send("hello", { theme: document.documentElement.dataset.theme })
 })
 

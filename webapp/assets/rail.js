@@ -9,16 +9,20 @@ import { showPeriods } from "./bench.js"
 let send = () => {}
 let drawn = new Map()
 let focusNext = null
+let dragged = null
 
-export function drawRail(rail, sender) {
+export function drawRail(rail, sender, knowsSlider) {
   send = sender
   const place = byId("rail")
   const focused = document.activeElement?.dataset?.key ?? null
   const lost = focusNext ?? focused
   focusNext = null
   place.firstElementChild ?? place.append(periodsPart(rail.periods))
-  updatePeriods(rail.periods)
+  updatePeriods(rail.periods, knowsSlider)
   for (const [index, part] of rail.parts.entries()) drawPart(place, part, index + 1)
+  if (document.documentElement.dataset.view === "only") {
+    for (const control of place.querySelectorAll(".part :is(input, select, textarea, button)")) control.disabled = true
+  }
   if (lost && document.activeElement?.dataset?.key !== lost) {
     place.querySelector(`[data-key="${CSS.escape(lost)}"]`)?.focus()
   }
@@ -49,9 +53,12 @@ function drawPart(place, part, index) {
 
 function body(part) {
   const fields = part.fields?.length ? [element("div", { class: "fields" }, ...part.fields.map(field))] : []
-  const acts = (part.acts ?? []).map(({ label, type }) => element("button", { type: "button", class: "add",
-    "data-key": `${part.id}#${type}`, onclick: () => send(type) }, label))
-  return part.list === undefined ? [...fields, ...acts] : [...list(part), ...fields]
+  const buttons = (part.acts ?? []).map(({ label, type, content, help }) => element("button", { type: "button", class: "add",
+    "data-key": `${part.id}#${label}`, title: help ?? "", onclick: () => send(type, content ?? {}) }, label))
+  const acts = buttons.length ? [element("div", { class: "adds" }, ...buttons)] : []
+  const fault = part.list === undefined && part.message !== undefined
+    ? [element("p", { class: "message", "data-list": part.id, role: "alert", hidden: true })] : []
+  return [...(part.list === undefined ? [] : list(part)), ...fields, ...acts, ...fault]
 }
 
 function list(part) {
@@ -91,10 +98,39 @@ function drawRow(part, row) {
       act("move", "Move down", "down", { by: 1 }, at(row.index + 1, "move1"), last),
       act("duplicate", "Duplicate", "copy", {}, at(row.index + 1, "duplicate")),
       act("delete", "Delete", "remove", {}, at(last ? row.index - 1 : row.index, "delete"))))
-  return element("li", { class: "row", "aria-label": row.name, "data-row": row.path }, head,
+  return draggable(part, row, element("li", { class: "row", "aria-label": row.name, "data-row": row.path }, head,
     element("div", { class: "fields" }, ...others.map(field)),
     element("p", { class: "resolved", "data-resolved": row.path, hidden: true }),
-    row.rows ? element("div", { class: "nested" }, ...list(row)) : null)
+    row.rows ? element("div", { class: "nested" }, ...list(row)) : null))
+}
+
+// A row is dragged by its head to another place of its own list; the arrows do the same by keyboard.
+function draggable(part, row, node) {
+  const head = node.querySelector(".row-head")
+  head.draggable = true
+  head.addEventListener("dragstart", (event) => {
+    event.stopPropagation()
+    event.dataTransfer.setData("text/plain", row.path)
+    event.dataTransfer.effectAllowed = "move"
+    dragged = { list: part.list, index: row.index }
+  })
+  const here = () => dragged?.list === part.list && dragged.index !== row.index
+  node.addEventListener("dragover", (event) => {
+    if (!here()) return
+    event.preventDefault()
+    event.stopPropagation()
+    node.dataset.drop = dragged.index < row.index ? "after" : "before"
+  })
+  node.addEventListener("dragleave", () => { delete node.dataset.drop })
+  node.addEventListener("drop", (event) => {
+    delete node.dataset.drop
+    if (!here()) return
+    event.preventDefault()
+    event.stopPropagation()
+    send("move", { path: part.list, index: dragged.index, by: row.index - dragged.index })
+    dragged = null
+  })
+  return node
 }
 
 // One field: label, control, unit, help and message, tied together for those who do not see them.
@@ -150,7 +186,9 @@ function textual(control, view) {
 
 function update(node, part) {
   for (const view of part.fields ?? []) updateField(node, view)
-  if (part.list !== undefined) updateMessage(node.querySelector(`[data-list="${CSS.escape(part.list)}"]`), part.message)
+  if (part.message !== undefined) {
+    updateMessage(node.querySelector(`[data-list="${CSS.escape(part.list ?? part.id)}"]`), part.message)
+  }
   for (const row of part.rows ?? []) {
     update(node, row)
     const line = node.querySelector(`[data-resolved="${CSS.escape(row.path)}"]`)
@@ -189,11 +227,11 @@ function periodsPart(view) {
     element("span", { class: "ends", "aria-hidden": "true" }, element("span", {}, "1"), element("span", { id: "most" })))
 }
 
-function updatePeriods(view) {
+function updatePeriods(view, knowsSlider) {
   const slider = byId("period-slider")
   slider.max = view.most
   byId("most").textContent = view.most
-  if (document.activeElement !== slider || view.message) slider.value = view.count
+  if (knowsSlider) slider.value = view.count
   updateField(byId("rail"), { ...view, kind: "number" })
 }
 

@@ -1,6 +1,7 @@
 // Remedies: the list of proposals, each with a small picture of its band edge, and the way to take one.
 
-import { byId, element } from "./dom.js"
+import { byId, drawProgress, element } from "./dom.js"
+import { showPage } from "./tabs.js"
 
 let send = () => {}
 
@@ -10,6 +11,7 @@ export function startRemedies(sender) {
   byId("find-stacks").addEventListener("click", () => propose("nearest"))
   byId("mend").addEventListener("click", () => {
     propose("nearest")
+    showPage("periods")
     byId("remedies").scrollIntoView({ block: "start" })
     byId("find-stacks").focus({ preventScroll: true })
   })
@@ -20,9 +22,9 @@ function propose(what) {
   send("propose", { what, whole: byId("whole").checked })
 }
 
-export function drawRemedies({ state, sentence, share, proposals }) {
+export function drawRemedies({ state, sentence, share, waits, proposals }) {
   byId("proposing").hidden = state !== "working"
-  byId("proposing-progress").value = share
+  drawProgress("proposing-progress", share, waits)
   byId("remedies-sentence").textContent = state === "working" ? "" : sentence
   byId("remedies-sentence").dataset.fault = String(state === "fault")
   byId("proposals").replaceChildren(...proposals.map(card))

@@ -12,6 +12,7 @@ from webapp.figures.lattice import LatticeFigure, Minibands, describe_lattice
 from webapp.figures.margins import describe_margins
 from webapp.figures.passes import PassesFigure, describe_passes
 from webapp.figures.profile import ProfileFigure, describe_profile
+from webapp.figures.ticks import Ticks
 from webapp.pages.periods import PeriodsPage
 from webapp.results import Emergence, Lattice, Span
 from webapp.theme import Palette
@@ -33,6 +34,10 @@ class Board:
         self.periods = PeriodsPage(self.axis, self.minibands, drags)
         self.minibands.shade(self.profile.figure)
         self.minibands.shade(self.passes.figure)
+        self.ticks = Ticks()
+        self.ticks.draw(self.profile.figure)
+        self.ticks.draw(self.passes.figure, measured=True)
+        self.ticks.draw(self.lattice.figure)
         self._lattice: Lattice | None = None
         self._emergence: Emergence | None = None
         self._version = -1
@@ -46,7 +51,7 @@ class Board:
 
     def paint(self, palette: Palette) -> None:
         """Take on the colours of a theme."""
-        for part in (self.profile, self.passes, self.lattice, self.minibands, self.periods):
+        for part in (self.profile, self.passes, self.lattice, self.minibands, self.ticks, self.periods):
             part.paint(palette)
 
     def show(self, wanted: Wanted, found: Pictures) -> Texts:
@@ -66,6 +71,7 @@ class Board:
         return {
             "profile": describe_profile(stack, found.profile),
             "passes": describe_passes(found.passage, windows),
+            "curve-note": found.passage.note,
             "lattice": describe_lattice(found.lattice),
             "certificate": found.lattice.bands.certificate.sentence,
         }

@@ -25,6 +25,8 @@ from webapp.theme import Palette
 Scale = Literal["log", "linear"]
 
 _CURVE = ("energy", "log10", "drawn")
+_DASHES = ([10, 3], [5, 3], [10, 3, 2, 3])
+"""Lines of other stacks laid over this one, told apart without colour too."""
 _LOWEST_DECADE = -330.0
 _LABEL = "transmission T (share passed)"
 _RIGHT = {"log": 0.35, "linear": 1.06}
@@ -53,10 +55,14 @@ class PassesFigure:
         # `drawn` is T or its logarithm, as the axis has it; `log10` is for the readout.
         self._curve = ColumnDataSource({name: [] for name in _CURVE}, name="curve")
         self._beam = ColumnDataSource({"energy": [], "drawn": []})
+        self._absorbed = ColumnDataSource({"energy": [], "drawn": []}, name="absorbed")
         self._rows = ColumnDataSource({"energy": [], "rows": [], "counts": []}, name="rows", tags=[-1])
         self._preview = ColumnDataSource({"energy": [], "log10": [], "drawn": []}, name="preview")
         self._envelope = ColumnDataSource({"energy": [], "lower": [], "upper": []})
+        self._poles = ColumnDataSource({"energy": [], "drawn": []}, name="from-pole")
         self._before = ColumnDataSource({"energy": [], "drawn": []}, name="before")
+        self._laid = [ColumnDataSource({"energy": [], "drawn": []}, name=f"laid-{n}") for n in range(len(_DASHES))]
+        self._others: tuple[Passage, ...] = ()
         self._brackets = ColumnDataSource({"xs": [], "ys": []})
         self._hatched = ColumnDataSource({"left": [], "right": [], "bottom": [], "top": []})
         self._names = ColumnDataSource({"x": [], "y": [], "text": [], "align": [], "offset": []})
@@ -82,9 +88,13 @@ class PassesFigure:
         self._hatching = draw.quad("left", "right", "top", "bottom", source=self._hatched, hatch_pattern="/",
                                    hatch_scale=9, hatch_weight=1, fill_alpha=0.35, line_width=1.5)
         self._between = draw.harea(x1="lower", x2="upper", y="energy", source=self._envelope, fill_alpha=0.5)
+        self._over = [draw.line("drawn", "energy", source=source, line_width=1.8, line_dash=dash)
+                      for source, dash in zip(self._laid, _DASHES, strict=True)]
         self._past = draw.line("drawn", "energy", source=self._before, line_width=1.5, line_dash=[2, 3])
         self._line = draw.line("drawn", "energy", source=self._curve, line_width=2, name="curve-line")
+        self._loss = draw.line("drawn", "energy", source=self._absorbed, line_width=1.5, line_dash=[2, 2])
         self._measured = draw.line("drawn", "energy", source=self._beam, line_width=2, line_dash=[6, 3])
+        self._stars = draw.scatter("drawn", "energy", source=self._poles, marker="star", size=9, line_width=1)
         self._held = draw.line("drawn", "energy", source=self._preview, line_width=2, name="preview-line",
                                visible=False)
         self._line.syncable = self._held.syncable = False
@@ -108,8 +118,12 @@ class PassesFigure:
         drawn = passage.log10 if log else passage.transmission
         self._curve.data = {"energy": passage.energy * MEV, "log10": passage.log10.astype(np.float32),
                             "drawn": drawn.astype(np.float32)}
-        beam, lower, upper = (np.zeros(0) if side is None else _decades(side) if log else side
-                              for side in (passage.measured, passage.lower, passage.upper))
+        top = 0.0 if log else 1.0
+        _replace(self._poles, {"energy": passage.from_pole * MEV, "drawn": np.full(passage.from_pole.size, top)})
+        beam, absorbed, lower, upper = (
+            np.zeros(0) if side is None else _decades(side) if log else side
+            for side in (passage.measured, passage.absorbed, passage.lower, passage.upper))
+        _replace(self._absorbed, {"energy": passage.energy[: absorbed.size] * MEV, "drawn": absorbed})
         _replace(self._beam, {"energy": passage.energy[: beam.size] * MEV, "drawn": beam})
         _replace(self._envelope, {"energy": passage.energy[: lower.size] * MEV, "lower": lower, "upper": upper})
 
@@ -134,11 +148,19 @@ class PassesFigure:
             "energy": passage.energy * MEV, "drawn": passage.log10 if log else passage.transmission}
         _replace(self._before, data)
 
+    def lay(self, others: Sequence[Passage]) -> None:
+        """Lay the curves of other stacks over this one's, in place of those that were."""
+        self._others = tuple(others)
+        for place, source in enumerate(self._laid):
+            other = self._others[place] if place < len(self._others) else None
+            drawn = np.zeros(0) if other is None else other.log10 if self.scale == "log" else other.transmission
+            _replace(source, {"energy": np.zeros(0) if other is None else other.energy * MEV, "drawn": drawn})
+
     def clear(self) -> None:
         """Take the curve away, and the rows the browser holds."""
         self._passage = None
         self._line.tags = [-1]
-        for source in (self._curve, self._beam, self._envelope):
+        for source in (self._curve, self._poles, self._beam, self._absorbed, self._envelope):
             source.data = {name: [] for name in source.data}
         self.hold(None, -1)
 
@@ -166,6 +188,7 @@ class PassesFigure:
         self._rescale()
         self._show_curve()
         self._show_before()
+        self.lay(self._others)
 
     @property
     def floor(self) -> float:
@@ -210,7 +233,11 @@ class PassesFigure:
         for renderer in (self._line, self._held):
             renderer.glyph.line_color = palette.warm
         self._measured.glyph.line_color = palette.warm_deep
+        self._stars.glyph.update(line_color=palette.warm_deep, fill_color=palette.card)
+        self._loss.glyph.line_color = palette.missed
         self._past.glyph.line_color = palette.muted
+        for renderer, colour in zip(self._over, palette.windows[1:], strict=False):
+            renderer.glyph.line_color = colour
         self._between.glyph.fill_color = palette.warm
         self._bracket.glyph.line_color = palette.target
         self._hatching.glyph.update(line_color=palette.target, hatch_color=palette.target, hatch_alpha=0.4,

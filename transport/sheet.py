@@ -1,0 +1,223 @@
+"""Layer sheets: the grower's list out, with monolayers rounded and times; lists of layers in, from a pasted table."""
+
+from __future__ import annotations
+
+import csv
+import io
+import re
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+from transport.document import LayerRecord
+from transport.materials import is_alloy, material_names
+from transport.parameters import PARAMETERS
+from transport.refusal import ScenarioError, nearest, refuse_unless, shown
+from transport.resolve import SheetRow
+from transport.scenario import Scenario
+
+CAUTION = (
+    "Growth uses toxic and pyrophoric materials: follow the site's own rules and the people licensed for the reactor."
+)
+"""What stands on every sheet that leaves for growth."""
+
+_MOST_BYTES = 1_000_000
+
+
+@dataclass(frozen=True, slots=True)
+class GrowerRow:
+    """A layer as it is grown, in order.
+
+    Lengths nm. `whole`: monolayers rounded, `rounding` what that adds (nm); `height`: top of the layer above the first
+    face; `seconds` at the given rate; None where the material has no monolayer, or no rate is known.
+    """
+
+    number: int
+    where: str
+    material: str
+    x: str
+    thickness: float
+    monolayers: float | None
+    whole: int | None
+    rounding: float | None
+    height: float
+    seconds: float | None
+
+
+def read_rates(text: str) -> dict[str, float]:
+    """Growth rates (monolayers a second) by material, "" for all others: `0.8`, or `GaAs=0.8,AlGaAs=1.1`.
+
+    Raises ScenarioError for what is no rate.
+    """
+    found = {}
+    for part in filter(None, (part.strip() for part in text.split(","))):
+        name, _, value = part.rpartition("=")
+        try:
+            found[name.strip()] = float(value)
+        except ValueError:
+            raise ScenarioError("rate", f"{shown(part)} is none; write 0.8 for all materials, or GaAs=0.8,AlGaAs=1.1 "
+                                "(monolayers a second)") from None
+    return found
+
+
+def grower_rows(scenario: Scenario, rates: Mapping[str, float] | None = None) -> tuple[GrowerRow, ...]:
+    """Every layer to be grown, all periods written out, from the left lead's side up.
+
+    `rates`: monolayers a second by material, "" for all others. Raises ScenarioError for a rate that is not above 0,
+    and for more rows than a file may have layers times 50.
+    """
+    rates = rates or {}
+    for name, rate in rates.items():
+        refuse_unless(0 < rate < 1e6, f"rate {name}".strip(), f"is {rate:g}; give monolayers a second, above 0")
+    parts = {part: [row for row in scenario.sheet if row.where == part and row.strength is None]
+             for part in ("entry", "cell", "exit")}
+    total = len(parts["entry"]) + len(parts["cell"]) * scenario.stack.periods + len(parts["exit"])
+    most = 50 * int(PARAMETERS["file_layers"].high)
+    refuse_unless(total <= most, "stack.periods", f"makes {total:,} layers to grow; at most {most:,} are written out")
+    rows: list[GrowerRow] = []
+    height = 0.0
+    for row, where in _in_order(parts, scenario.stack.periods):
+        height += row.thickness or 0.0
+        rows.append(_grown(len(rows) + 1, row, where, height, rates))
+    return tuple(rows)
+
+
+def _in_order(parts: Mapping[str, Sequence[SheetRow]], periods: int) -> list[tuple[SheetRow, str]]:
+    cells = [(row, f"period {n + 1}") for n in range(periods) for row in parts["cell"]]
+    return [*((row, "entry") for row in parts["entry"]), *cells, *((row, "exit") for row in parts["exit"])]
+
+
+def _grown(number: int, row: SheetRow, where: str, height: float, rates: Mapping[str, float]) -> GrowerRow:
+    thickness, monolayers = row.thickness or 0.0, row.monolayers
+    whole = None if monolayers is None else max(1, round(monolayers))
+    rounding = None if monolayers is None or whole is None else (whole - monolayers) * thickness / monolayers
+    rate = rates.get(row.material or "", rates.get(""))
+    seconds = None if monolayers is None or rate is None else monolayers / rate
+    composition = f"{row.x_ends[0]:g} to {row.x_ends[1]:g}" if row.x_ends else "" if row.x is None else f"{row.x:g}"
+    name = row.material or row.profile or f"edge {(row.band_edge or 0.0) * 1e3:.6g} meV"
+    return GrowerRow(number, where, name, composition, thickness, monolayers, whole, rounding, height, seconds)
+
+
+# Lists of layers in.
+
+_SPELLINGS = {
+    "thickness": ("thickness", "thick", "d", "width", "length", "nm", "angstrom", "ml", "monolayers", "monolayer"),
+    "material": ("material", "mat", "layer", "alloy", "compound", "semiconductor"),
+    "x": ("x", "composition", "comp", "content", "fraction", "mole fraction", "al", "x(al)", "al content"),
+}
+_UNITS = {"nm": 1.0, "nanometre": 1.0, "nanometer": 1.0, "å": 0.1, "a": 0.1, "angstrom": 0.1, "ångström": 0.1,
+          "ångstrom": 0.1}
+_MONOLAYERS = ("ml", "mls", "monolayer", "monolayers")
+UNITS = ("nm", "angstrom", "monolayers")
+"""In what a table may give its thicknesses."""
+
+
+@dataclass(frozen=True, slots=True)
+class ReadSheet:
+    """The layers of a table, and a sentence for each line that is none; both in the order of the lines."""
+
+    layers: tuple[LayerRecord, ...]
+    faults: tuple[str, ...]
+
+
+def read_layer_sheet(text: str, unit: str | None = None) -> ReadSheet:
+    """Layers of a CSV table with a line of headers: thickness, material, and x for alloys.
+
+    Header names in the usual spellings; the unit of thickness stands in its header ("thickness (nm)", "d [Å]", "ML") or
+    in `unit`. Separators: comma, semicolon or tab; lines that begin with # are left out, and so are the columns of this
+    project's own sheet that are worked out. Raises ScenarioError where no table can be made out; a line that is no
+    layer is a sentence in `faults`.
+    """
+    refuse_unless(len(text.encode("utf-8", "surrogatepass")) <= _MOST_BYTES, "sheet",
+                  f"is larger than {_MOST_BYTES:,} bytes; cut it to its layers")
+    lines = [(number, line) for number, line in enumerate(text.lstrip("\ufeff").splitlines(), 1)
+             if line.strip() and not line.lstrip().startswith("#")]
+    refuse_unless(bool(lines), "sheet", "is empty; begin it with headers such as thickness (nm), material, x")
+    separator = next((mark for mark in "\t;," if mark in lines[0][1]), ",")
+    try:
+        rows = list(csv.reader(io.StringIO("\n".join(line for _, line in lines)), delimiter=separator, strict=True))
+    except csv.Error as error:
+        raise ScenarioError("sheet", f"is no table ({error}); give plain CSV") from None
+    refuse_unless(len(rows) == len(lines), "sheet", "has cells that run over several lines; give one layer a line")
+    columns, found = _columns(rows[0], unit)
+    most = int(PARAMETERS["file_layers"].high)
+    refuse_unless(len(rows) - 1 <= most, "sheet", f"lists {len(rows) - 1:,} layers; at most {most:,} are read")
+    refuse_unless(len(rows) > 1, "sheet", "has headers but no layer; add a line for each")
+    layers, faults = [], []
+    for (number, _), row in zip(lines[1:], rows[1:], strict=True):
+        try:
+            layers.append(_layer(number, columns, row, found))
+        except ScenarioError as error:
+            faults.append(str(error))
+    return ReadSheet(tuple(layers), tuple(faults))
+
+
+def _columns(header: Sequence[str], unit: str | None) -> tuple[dict[str, int], str]:
+    """Where thickness, material and x stand, and the unit of thickness."""
+    places: dict[str, int] = {}
+    units: dict[str, str | None] = {}
+    for place, title in enumerate(header):
+        name, stated = _title(title)
+        kind = next((kind for kind, spellings in _SPELLINGS.items() if name in spellings), None)
+        if kind is not None and (kind not in places or (kind == "thickness" and units[kind] is None)):
+            places[kind], units[kind] = place, stated
+    for kind in ("thickness", "material"):
+        refuse_unless(kind in places, "sheet", f"has no column {kind}; its headers are {shown(', '.join(header))}")
+    found = unit or units["thickness"]
+    refuse_unless(found is not None, "sheet", "does not say in what its thicknesses are; write thickness (nm), "
+                  "thickness (A) or thickness (ML), or choose the unit")
+    assert found is not None
+    return places, found
+
+
+def _title(title: str) -> tuple[str, str | None]:
+    """A header's name in lower case without its unit, and the unit it states."""
+    words = re.sub(r"[\[\](){}/,_]+", " ", title.strip().lower()).split()
+    known = (*_UNITS, *_MONOLAYERS)
+    stated = next((word for word in words if word in known and not (word == "a" and len(words) == 1)), None)
+    name = " ".join(word for word in words if word != stated) or (stated or "")
+    if stated is None:
+        return name, None
+    return name, "monolayers" if stated in _MONOLAYERS else "nm" if _UNITS[stated] == 1 else "angstrom"
+
+
+def _layer(line: int, columns: Mapping[str, int], row: Sequence[str], unit: str) -> LayerRecord:
+    def cell(kind: str) -> str:
+        place = columns.get(kind)
+        return row[place].strip() if place is not None and place < len(row) else ""
+
+    name, x = _material(line, cell("material"), cell("x"))
+    thickness = _number(line, "thickness", cell("thickness"))
+    key = "monolayers" if unit == "monolayers" else "thickness_nm"
+    value = thickness / 10 if unit == "angstrom" else thickness
+    refuse_unless(PARAMETERS[key].admits(value), f"line {line}, thickness",
+                  f"{PARAMETERS[key].requirement}, but is {value:g}")
+    return LayerRecord(material=name, x=x, **{key: float(f"{value:.12g}")})  # type: ignore[arg-type]
+
+
+_COMPOSED = re.compile(r"([A-Z][a-z]?)(0?\.\d+)([A-Z][a-z]?)(?:(0?\.\d+))?([A-Z][a-z]?)(?:(0?\.\d+))?")
+
+
+def _material(line: int, text: str, x: str) -> tuple[str, float | None]:
+    """The material's name and composition; Al0.3Ga0.7As is read as AlGaAs with x = 0.3."""
+    where = f"line {line}, material"
+    refuse_unless(bool(text), where, "is missing; name it, as in GaAs or AlGaAs")
+    if (composed := _COMPOSED.fullmatch(text.replace(" ", ""))) and not x:
+        text, x = composed[1] + composed[3] + composed[5], composed[2]
+    names = {name.lower(): name for name in material_names()}
+    name = names.get(text.lower())
+    if name is None:
+        raise ScenarioError(where, f"{shown(text)} is not known here; {nearest(text, material_names())}")
+    if not is_alloy(name):
+        refuse_unless(not x, f"line {line}, x", f"stands beside {name}, which is no alloy; leave it empty")
+        return name, None
+    refuse_unless(bool(x), f"line {line}, x", f"is missing; {name} needs a composition from 0 to 1")
+    share = _number(line, "x", x.removesuffix("%")) / (100 if x.endswith("%") else 1)
+    refuse_unless(0 <= share <= 1, f"line {line}, x", f"must be from 0 to 1, but is {share:g}")
+    return name, share
+
+
+def _number(line: int, column: str, text: str) -> float:
+    try:
+        return float(text.replace("\N{MINUS SIGN}", "-"))
+    except ValueError:
+        raise ScenarioError(f"line {line}, {column}", f"must be a number, but is {shown(text)}") from None
