@@ -6,6 +6,7 @@ import csv
 import hashlib
 import io
 import json
+import re
 import sys
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
@@ -24,6 +25,8 @@ from transport.resonance import resonances
 from transport.scenario import Scenario, format_scenario
 from transport.sheet import CAUTION, grower_rows
 from transport.spectrum import spectrum
+
+_FORMULA_INSIDE = re.compile(r"([,;]\s*)(?=[=+\-@])")
 
 Record = dict[str, Any]
 Span = tuple[float, float]
@@ -136,7 +139,7 @@ def grower_csv(scenario: Scenario, rates: Mapping[str, float] | None = None) -> 
 
 def _with_header(lines: Iterable[str], rows: Iterable[Record]) -> str:
     out = io.StringIO()
-    out.writelines(f"# {' '.join(line.split())}\n" for line in lines)
+    out.writelines(f"# {_comment(line)}\n" for line in lines)
     writer, header = csv.writer(out, lineterminator="\n"), None
     for row in rows:
         if header is None:
@@ -144,6 +147,11 @@ def _with_header(lines: Iterable[str], rows: Iterable[Record]) -> str:
             writer.writerow(header)
         writer.writerow([_cell(value) for value in row.values()])
     return out.getvalue()
+
+
+def _comment(line: str) -> str:
+    """One line of text: no quote in it opens a cell, and where a separator cuts it no formula begins."""
+    return _FORMULA_INSIDE.sub(r"\1'", " ".join(line.split()).replace('"', "'"))
 
 
 def _cell(value: Any) -> Any:
@@ -156,8 +164,10 @@ def _cell(value: Any) -> Any:
 def python_script(scenario: Scenario, span: Span | None = None) -> str:
     """A script of its own that works the numbers of the screen out again with `transport`, and prints them as JSON."""
     low, high = span or default_range(scenario.stack)
-    return _SCRIPT.format(title=json.dumps(scenario.title), sha=scenario_hash(scenario),
-                          text=json.dumps(format_scenario(scenario)), low=repr(float(low)), high=repr(float(high)))
+    # Literals of Python, not of JSON, which writes letters beyond 16 bits as two halves.
+    lines = (f"    {line!r}" for line in format_scenario(scenario).splitlines(keepends=True))
+    return _SCRIPT.format(title=repr(scenario.title), sha=scenario_hash(scenario), text="\n".join(lines),
+                          low=repr(float(low)), high=repr(float(high)))
 
 
 _SCRIPT = '''\
@@ -169,7 +179,9 @@ import transport
 
 TITLE = {title}
 SHA256 = "{sha}"
-SCENARIO = {text}
+SCENARIO = (
+{text}
+)
 LOW, HIGH = {low}, {high}  # eV
 
 scenario = transport.parse_scenario(SCENARIO)

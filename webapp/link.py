@@ -10,12 +10,16 @@ from typing import Literal
 import msgspec
 
 from transport import Document, ScenarioError, document_from_data, document_to_data, scenario_from_document
+from transport.parameters import PARAMETERS
 from transport.refusal import refuse_unless
 
 LONGEST = 2_000
 """Characters a link may have: longer ones are broken by mail programs and chats."""
 _VERSION = "1"
 _MOST_BYTES = 1_000_000
+_FARTHEST = PARAMETERS["energy_eV"].high * 1e3
+_NARROWEST = 1e-6
+"""meV; what is narrower no figure can tell apart, and the engine would be asked for energies that are one double."""
 
 Page = Literal["periods", "peaks", "compare", "handoff"]
 
@@ -41,7 +45,8 @@ class _Carried(msgspec.Struct, frozen=True, forbid_unknown_fields=True, omit_def
 
 
 def encode(shown: Shown) -> str:
-    """The text of a link. Raises ScenarioError where it would be longer than LONGEST."""
+    """The text of a link. Raises ScenarioError where it would be longer than LONGEST, or `decode` would refuse it."""
+    _require_range(shown.energy_meV)
     carried = _Carried(document_to_data(shown.document), shown.page, shown.scale, shown.energy_meV, shown.density)
     packed = zlib.compress(msgspec.json.encode(carried), level=9)
     text = _VERSION + base64.urlsafe_b64encode(packed).decode().rstrip("=")
@@ -66,7 +71,12 @@ def decode(text: str) -> Shown:
         raise ScenarioError("link", "was altered or cut off on its way; ask for it again, or for the file") from None
     document = document_from_data(carried.s)
     scenario_from_document(document)
-    if carried.energy is not None:
-        low, high = carried.energy
-        refuse_unless(low < high, "link", "shows an energy range that is reversed; ask for it again")
+    _require_range(carried.energy)
     return Shown(document, carried.page, carried.scale, carried.energy, carried.density)
+
+
+def _require_range(energy: tuple[float, float] | None) -> None:
+    """Refuse energies (meV) that the engine could never finish with."""
+    low, high = energy or (0.0, 1.0)
+    refuse_unless(low >= -_FARTHEST and high <= _FARTHEST and high - low >= _NARROWEST, "link",
+                  "shows an energy range that is reversed, or that no figure has; ask for it again")

@@ -71,6 +71,25 @@ def test_a_title_that_a_spreadsheet_would_run_stays_text() -> None:
     assert rows_of(to_csv(user, table(user, "layers")))[1]["material"] == "'=cmd"
 
 
+def test_a_title_in_a_comment_neither_runs_nor_swallows_the_lines_below() -> None:
+    title = 'gate, =HYPERLINK("x");+1,"open'
+    other = scenario_from_document(msgspec.structs.replace(HERON.document, title=title))
+    text = to_csv(other, table(other, "bands"))
+    for separator in ",;":
+        for row in csv.reader(io.StringIO(text), delimiter=separator, skipinitialspace=True):
+            assert not any(cell.lstrip().startswith(("=", "+", "@")) for cell in row)
+    assert len(list(csv.reader(io.StringIO(text)))) == len(text.splitlines())
+
+
+def test_the_script_holds_any_text_a_title_may_be(tmp_path: Path) -> None:
+    title = "gate \N{ROCKET} \N{MATHEMATICAL ITALIC SMALL DELTA} \\ ' \" {x} \"\"\""
+    other = scenario_from_document(msgspec.structs.replace(HERON.document, title=title, note=title + "\n" + 3 * "'"))
+    names: dict[str, str] = {}
+    program = python_script(other, SPAN).partition("scenario = transport")[0]
+    exec(compile(program, "again.py", "exec"), names)
+    assert names["TITLE"] == title and parse_scenario(names["SCENARIO"]) == other
+
+
 def test_the_script_works_the_numbers_of_the_screen_out_again(tmp_path: Path) -> None:
     script = tmp_path / "again.py"
     script.write_text(python_script(HERON, SPAN))

@@ -12,7 +12,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from transport import ScenarioError, load_scenario
+from transport import ScenarioError, document_to_data, load_scenario
 from webapp.link import LONGEST, Shown, decode, encode
 
 HERON = load_scenario("scenarios/heron-gate.toml").document
@@ -66,3 +66,13 @@ def test_garbage_is_refused_in_one_sentence(text: str) -> None:
 def test_what_is_odd_about_a_link_is_said(text: str, sentence: str) -> None:
     with pytest.raises(ScenarioError, match=sentence):
         decode(text)
+
+
+@pytest.mark.parametrize("seen", [
+    (-1e300, 1e300), (0.0, 1e9), (5.0, 5.0), (6.0, 5.0), (0.0, 1e-300), (50.0, 50.000000000000007)])
+def test_a_link_asks_the_engine_for_no_range_that_it_could_never_finish(seen: tuple[float, float]) -> None:
+    plain = msgspec.json.encode({"s": document_to_data(HERON), "energy": seen})
+    with pytest.raises(ScenarioError, match="energy range that is reversed, or that no figure has"):
+        decode(packed(plain))
+    with pytest.raises(ScenarioError, match="energy range that is reversed, or that no figure has"):
+        encode(Shown(HERON, energy_meV=seen))
