@@ -14,7 +14,7 @@ from html import escape
 from pathlib import Path
 
 from bokeh.embed import components
-from bokeh.resources import INLINE
+from bokeh.resources import Resources
 
 from transport import Scenario, ScenarioError, Verdict, period_verdict, verdict_range
 from transport.constants import ELECTRON_MASS, ELEMENTARY_CHARGE, HBAR2_2M0, PLANCK
@@ -34,6 +34,23 @@ from webapp.work import Pictures, Wanted, pictures
 
 _STYLE = Path(__file__).parent / "assets" / "report.css"
 _MOST_ROWS = 300
+# Figures do not follow the width of paper: there each keeps its size on screen, and the row is scaled as one picture.
+_PAPER = """<script>
+const measure = () => {
+  if (matchMedia("print").matches) return
+  for (const row of document.querySelectorAll(".figures")) {
+    const cards = [...row.children]
+    for (const card of cards) {
+      card.style.setProperty("--wide", card.offsetWidth)
+      card.style.setProperty("--tall", card.querySelector(".canvas").offsetHeight)
+    }
+    const gaps = (cards.length - 1) * parseFloat(getComputedStyle(row).columnGap)
+    row.style.setProperty("--wide", cards.reduce((sum, card) => sum + card.offsetWidth, gaps))
+  }
+}
+addEventListener("resize", measure)
+measure()
+</script>"""
 
 
 @dataclass(frozen=True)
@@ -68,6 +85,10 @@ class Matter:
         """The script that draws all figures, which share their energy axis, and the place of each by its name."""
         board = self._board()
         parts = (board.profile, board.passes, board.lattice, board.periods.margins, board.periods.emergence)
+        for part in parts:
+            # Lines that stay sharp on paper, which has no pointer for the tools either.
+            part.figure.output_backend = "svg"
+            part.figure.toolbar.autohide = True
         script, places = components({part.figure.name: part.figure for part in parts})
         return script, dict(places)
 
@@ -178,9 +199,10 @@ def report_html(scenario: Scenario) -> str:
         "<!DOCTYPE html>\n<html lang='en'><head><meta charset='utf-8'>"
         "<meta name='viewport' content='width=device-width, initial-scale=1'>"
         f"<title>{escape(scenario.title)} \u00b7 Colonnade</title><style>{css_variables()}{_STYLE.read_text()}</style>"
-        f"{INLINE.render()}</head><body><main><header><h1>{escape(scenario.title)}</h1>"
+        f"{Resources(mode='inline', components=['bokeh']).render()}</head><body><main><header>"
+        f"<h1>{escape(scenario.title)}</h1>"
         f"<p class='quiet'>{said}</p>{note}</header>"
-        f"{body}</main>{script}{enclosed(scenario)}</body></html>\n"
+        f"{body}</main>{script}{_PAPER}{enclosed(scenario)}</body></html>\n"
     )
 
 

@@ -12,6 +12,13 @@ from transport import load_scenario, scenario_from_document
 from webapp.report import report_html
 
 HOSTILE = "</script><script>window.XSS = 1</script><img src=x onerror='window.XSS = 1'>"
+A4_WITHIN_MARGINS = (210 - 2 * 12) * 96 / 25.4 + 1
+"""Pixels of CSS, 96 to the inch, and one for rounding."""
+# The width of every card over its height, and how far its figure fills it.
+_SHAPES = """[...document.querySelectorAll(".canvas")].flatMap((card) => {
+  const outer = card.getBoundingClientRect(), inner = card.firstElementChild.getBoundingClientRect()
+  return [outer.width / outer.height, inner.width / outer.width, inner.height / outer.height]
+})"""
 
 
 @pytest.mark.parametrize("width", [390, 1280])
@@ -32,6 +39,11 @@ def test_a_report_is_alive_offline_and_prints(browser: Browser, tmp_path: Path, 
     page.wait_for_function("() => Bokeh.documents.length && Bokeh.documents.every((one) => one.is_idle)")
     assert page.evaluate("document.documentElement.scrollWidth") <= width
     assert page.evaluate("window.XSS") is None
-    assert page.pdf(format="A4").startswith(b"%PDF")
+    on_screen = page.evaluate(_SHAPES)
+    page.emulate_media(media="print")
+    assert page.evaluate(_SHAPES) == pytest.approx(on_screen, rel=0.02), "paper shows figures cut or squeezed"
+    widths = page.evaluate("[...document.querySelectorAll('.figures')].map((row) => row.getBoundingClientRect().width)")
+    assert max(widths) <= A4_WITHIN_MARGINS
+    assert page.pdf(prefer_css_page_size=True).startswith(b"%PDF")
     context.close()
     assert not faults
