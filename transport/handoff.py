@@ -19,11 +19,12 @@ from transport import report
 from transport.document import document_to_data
 from transport.fewest import Asked
 from transport.lattice import default_range, lattice_bands
+from transport.limits import GROWTH
 from transport.peaks import compare_peaks
 from transport.periods import period_verdict
 from transport.resonance import resonances
 from transport.scenario import Scenario, format_scenario
-from transport.sheet import CAUTION, grower_rows
+from transport.sheet import grower_rows
 from transport.spectrum import spectrum
 
 _FORMULA_INSIDE = re.compile(r"([,;]\s*)(?=[=+\-@])")
@@ -79,7 +80,7 @@ def _periods_table(scenario: Scenario, span: Span) -> Table:
 
 
 def _layers_table(scenario: Scenario, span: Span) -> Table:
-    return Table("Layers as written", tuple(report.layers_record(scenario)["layers"]), (*scenario.warnings, CAUTION))
+    return Table("Layers as written", tuple(report.layers_record(scenario)["layers"]), (*scenario.warnings, GROWTH))
 
 
 def _peaks_table(scenario: Scenario, span: Span) -> Table:
@@ -126,13 +127,13 @@ def grower_csv(scenario: Scenario, rates: Mapping[str, float] | None = None) -> 
     Raises ScenarioError as `sheet.grower_rows` does.
     """
     rows = [
-        {"number": r.number, "where": r.where, "material": r.material, "x": r.x, "thickness_nm": round(r.thickness, 6),
+        {"number": r.number, "where": r.where, "material": r.material, "x": r.x, "thickness_nm": r.thickness,
          "monolayers": None if r.monolayers is None else round(r.monolayers, 4), "whole_monolayers": r.whole,
          "rounding_nm": None if r.rounding is None else round(r.rounding, 5), "height_nm": round(r.height, 5),
          "growth_s": None if r.seconds is None else round(r.seconds, 3)}
         for r in grower_rows(scenario, rates)
     ]
-    lines = [f"Layers to grow, in order: {scenario.title}", f"sha256: {scenario_hash(scenario)}", CAUTION,
+    lines = [f"Layers to grow, in order: {scenario.title}", f"sha256: {scenario_hash(scenario)}", GROWTH,
              *scenario.warnings]
     return _with_header(lines, rows)
 

@@ -16,6 +16,7 @@ LIMITS = (
 )
 """What the model leaves out, each as a heading and what it means."""
 
-GROWTH = ("Growth uses toxic and pyrophoric gases and sources, and hot reactors. A layer list from this tool is a "
-          "proposal: follow the rules of your site, and leave the growth to those licensed and trained for it.")
-"""The caution on growth chemistry."""
+GROWTH = ("Growth uses toxic and pyrophoric gases and sources (arsine, phosphine, antimony, solid arsenic), and hot "
+          "reactors. A layer list from this tool is a proposal: the rules of your site and licensed, trained practice "
+          "come first.")
+"""The caution on growth chemistry: what stands wherever layers leave for growth."""

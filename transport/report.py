@@ -13,6 +13,7 @@ import numpy as np
 from transport.allowance import VerdictRange
 from transport.document import EndsRecord
 from transport.lattice import Bands, default_range
+from transport.limits import GROWTH
 from transport.matching import MatchedEnds
 from transport.measuring import measured_transmission
 from transport.nearest import NearestStacks, Remedy
@@ -22,7 +23,6 @@ from transport.propagation import model_end
 from transport.resolve import SheetRow
 from transport.resonance import Resonances
 from transport.scenario import Scenario, format_scenario
-from transport.sheet import CAUTION
 from transport.spectrum import Spectrum
 
 Record = dict[str, Any]
@@ -323,7 +323,7 @@ def layers_text(scenario: Scenario) -> str:
     header = ("where", "material", "x", "thickness_nm", "monolayers", "band_edge_eV", "mass",
               *(["grading_nm"] if graded else []))
     means = [_MEANS] if any(r.profile for r in scenario.sheet) else []
-    return "\n".join([table(header, rows), *means, *_warning_lines(scenario), CAUTION])
+    return "\n".join([table(header, rows), *means, *_warning_lines(scenario), GROWTH])
 
 
 def _composition(row: SheetRow) -> float | str | None:

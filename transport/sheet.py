@@ -9,16 +9,11 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from transport.document import LayerRecord
-from transport.materials import is_alloy, material_names
+from transport.materials import base_of, is_alloy, material_names
 from transport.parameters import PARAMETERS
 from transport.refusal import ScenarioError, nearest, refuse_unless, shown
 from transport.resolve import SheetRow
 from transport.scenario import Scenario
-
-CAUTION = (
-    "Growth uses toxic and pyrophoric materials: follow the site's own rules and the people licensed for the reactor."
-)
-"""What stands on every sheet that leaves for growth."""
 
 _MOST_BYTES = 1_000_000
 
@@ -106,6 +101,8 @@ _SPELLINGS = {
 }
 _UNITS = {"nm": 1.0, "nanometre": 1.0, "nanometer": 1.0, "å": 0.1, "a": 0.1, "angstrom": 0.1, "ångström": 0.1,
           "ångstrom": 0.1}
+# A lone # is the header of a column that numbers the layers.
+_COMMENT = re.compile(r"\s*#(?!\s*[,;\t])")
 _MONOLAYERS = ("ml", "mls", "monolayer", "monolayers")
 UNITS = ("nm", "angstrom", "monolayers")
 """In what a table may give its thicknesses."""
@@ -123,36 +120,38 @@ def read_layer_sheet(text: str, unit: str | None = None) -> ReadSheet:
     """Layers of a CSV table with a line of headers: thickness, material, and x for alloys.
 
     Header names in the usual spellings; the unit of thickness stands in its header ("thickness (nm)", "d [Å]", "ML") or
-    in `unit`. Separators: comma, semicolon or tab; lines that begin with # are left out, and so are the columns of this
-    project's own sheet that are worked out. Raises ScenarioError where no table can be made out; a line that is no
-    layer is a sentence in `faults`.
+    in `unit`. Separators: comma, semicolon or tab; with the last two, decimals may have a comma. Lines that begin with
+    # are left out, and so are the columns of this project's own sheet that are worked out. Raises ScenarioError where
+    no table can be made out; a line that is no layer is a sentence in `faults`.
     """
     refuse_unless(len(text.encode("utf-8", "surrogatepass")) <= _MOST_BYTES, "sheet",
                   f"is larger than {_MOST_BYTES:,} bytes; cut it to its layers")
     lines = [(number, line) for number, line in enumerate(text.lstrip("\ufeff").splitlines(), 1)
-             if line.strip() and not line.lstrip().startswith("#")]
+             if line.strip() and not _COMMENT.match(line)]
     refuse_unless(bool(lines), "sheet", "is empty; begin it with headers such as thickness (nm), material, x")
     separator = next((mark for mark in "\t;," if mark in lines[0][1]), ",")
     try:
         rows = list(csv.reader(io.StringIO("\n".join(line for _, line in lines)), delimiter=separator, strict=True))
     except csv.Error as error:
         raise ScenarioError("sheet", f"is no table ({error}); give plain CSV") from None
+    if separator != ",":
+        rows = [rows[0], *([cell.replace(",", ".") for cell in row] for row in rows[1:])]
     refuse_unless(len(rows) == len(lines), "sheet", "has cells that run over several lines; give one layer a line")
-    columns, found = _columns(rows[0], unit)
+    columns, found, percent = _columns(rows[0], unit)
     most = int(PARAMETERS["file_layers"].high)
     refuse_unless(len(rows) - 1 <= most, "sheet", f"lists {len(rows) - 1:,} layers; at most {most:,} are read")
     refuse_unless(len(rows) > 1, "sheet", "has headers but no layer; add a line for each")
     layers, faults = [], []
     for (number, _), row in zip(lines[1:], rows[1:], strict=True):
         try:
-            layers.append(_layer(number, columns, row, found))
+            layers.append(_layer(number, columns, row, found, percent))
         except ScenarioError as error:
             faults.append(str(error))
     return ReadSheet(tuple(layers), tuple(faults))
 
 
-def _columns(header: Sequence[str], unit: str | None) -> tuple[dict[str, int], str]:
-    """Where thickness, material and x stand, and the unit of thickness."""
+def _columns(header: Sequence[str], unit: str | None) -> tuple[dict[str, int], str, bool]:
+    """Where thickness, material and x stand, the unit of thickness, and whether x is in percent."""
     places: dict[str, int] = {}
     units: dict[str, str | None] = {}
     for place, title in enumerate(header):
@@ -163,61 +162,91 @@ def _columns(header: Sequence[str], unit: str | None) -> tuple[dict[str, int], s
     for kind in ("thickness", "material"):
         refuse_unless(kind in places, "sheet", f"has no column {kind}; its headers are {shown(', '.join(header))}")
     found = unit or units["thickness"]
+    refuse_unless(found != "%", "sheet", "gives thicknesses in %; write thickness (nm), (A) or (ML)")
     refuse_unless(found is not None, "sheet", "does not say in what its thicknesses are; write thickness (nm), "
                   "thickness (A) or thickness (ML), or choose the unit")
     assert found is not None
-    return places, found
+    return places, found, units.get("x") == "%"
 
 
 def _title(title: str) -> tuple[str, str | None]:
     """A header's name in lower case without its unit, and the unit it states."""
     words = re.sub(r"[\[\](){}/,_]+", " ", title.strip().lower()).split()
-    known = (*_UNITS, *_MONOLAYERS)
+    known = (*_UNITS, *_MONOLAYERS, "%")
     stated = next((word for word in words if word in known and not (word == "a" and len(words) == 1)), None)
     name = " ".join(word for word in words if word != stated) or (stated or "")
     if stated is None:
         return name, None
+    if stated == "%":
+        return name, stated
     return name, "monolayers" if stated in _MONOLAYERS else "nm" if _UNITS[stated] == 1 else "angstrom"
 
 
-def _layer(line: int, columns: Mapping[str, int], row: Sequence[str], unit: str) -> LayerRecord:
+def _layer(line: int, columns: Mapping[str, int], row: Sequence[str], unit: str, percent: bool) -> LayerRecord:
     def cell(kind: str) -> str:
         place = columns.get(kind)
         return row[place].strip() if place is not None and place < len(row) else ""
 
-    name, x = _material(line, cell("material"), cell("x"))
+    share = cell("x")
+    name, x = _material(line, cell("material"), f"{share}%" if percent and share else share)
     thickness = _number(line, "thickness", cell("thickness"))
     key = "monolayers" if unit == "monolayers" else "thickness_nm"
-    value = thickness / 10 if unit == "angstrom" else thickness
+    value = float(f"{thickness / 10:.12g}") if unit == "angstrom" else thickness
     refuse_unless(PARAMETERS[key].admits(value), f"line {line}, thickness",
                   f"{PARAMETERS[key].requirement}, but is {value:g}")
-    return LayerRecord(material=name, x=x, **{key: float(f"{value:.12g}")})  # type: ignore[arg-type]
+    return LayerRecord(material=name, x=x, **{key: value})  # type: ignore[arg-type]
 
 
-_COMPOSED = re.compile(r"([A-Z][a-z]?)(0?\.\d+)([A-Z][a-z]?)(?:(0?\.\d+))?([A-Z][a-z]?)(?:(0?\.\d+))?")
+_NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+_ELEMENT = re.compile(r"([A-Z][a-z]?)\(?([0-9]*\.?[0-9]+)?\)?")
+_CATIONS = ("Al", "Ga", "In")
 
 
 def _material(line: int, text: str, x: str) -> tuple[str, float | None]:
     """The material's name and composition; Al0.3Ga0.7As is read as AlGaAs with x = 0.3."""
     where = f"line {line}, material"
     refuse_unless(bool(text), where, "is missing; name it, as in GaAs or AlGaAs")
-    if (composed := _COMPOSED.fullmatch(text.replace(" ", ""))) and not x:
-        text, x = composed[1] + composed[3] + composed[5], composed[2]
     names = {name.lower(): name for name in material_names()}
-    name = names.get(text.lower())
+    plain, composed = _composed(line, text.replace(" ", ""))
+    name = names.get(plain.lower())
     if name is None:
         raise ScenarioError(where, f"{shown(text)} is not known here; {nearest(text, material_names())}")
+    blank = x in ("", "-", "%", "-%")
+    share = None if blank else _number(line, "x", x.removesuffix("%").strip())
     if not is_alloy(name):
-        refuse_unless(not x, f"line {line}, x", f"stands beside {name}, which is no alloy; leave it empty")
+        refuse_unless(not share, f"line {line}, x", f"stands beside {name}, which is no alloy; leave it empty")
         return name, None
-    refuse_unless(bool(x), f"line {line}, x", f"is missing; {name} needs a composition from 0 to 1")
-    share = _number(line, "x", x.removesuffix("%")) / (100 if x.endswith("%") else 1)
+    if share is not None and x.endswith("%"):
+        share = float(f"{share / 100:.12g}")
+    refuse_unless(composed is None or share is None or abs(composed - share) < 1e-6, f"line {line}, x",
+                  f"is not that of {shown(text)} as it is written; keep one of them")
+    share = composed if share is None else share
+    if share is None:
+        raise ScenarioError(f"line {line}, x", f"is missing; {name} needs a composition from 0 to 1")
     refuse_unless(0 <= share <= 1, f"line {line}, x", f"must be from 0 to 1, but is {share:g}")
     return name, share
 
 
+def _composed(line: int, text: str) -> tuple[str, float | None]:
+    """A formula of three elements, in any order, as the library's name and x; other text as it is, and None."""
+    parts = _ELEMENT.findall(text)
+    shares = {element: float(share) for element, share in parts if share}
+    same = [name for name in material_names() if is_alloy(name)
+            and {element for element, _ in _ELEMENT.findall(name)} == {element for element, _ in parts}]
+    if not (shares and same and _ELEMENT.sub("", text) == "" and len(parts) == 3):
+        return text, None
+    base = base_of(same[0]) or ""
+    (varied,) = (element for element, _ in parts if element not in base)
+    (other,) = (element for element, _ in parts
+                if element != varied and (element in _CATIONS) == (varied in _CATIONS))
+    x = shares.get(varied, 1 - shares.get(other, 0.0))
+    refuse_unless(set(shares) <= {varied, other} and abs(x + shares.get(other, 1 - x) - 1) < 1e-6,
+                  f"line {line}, material", f"{shown(text)} has shares that do not add up to 1; mend them")
+    return same[0], float(f"{x:.12g}")
+
+
 def _number(line: int, column: str, text: str) -> float:
-    try:
-        return float(text.replace("\N{MINUS SIGN}", "-"))
-    except ValueError:
-        raise ScenarioError(f"line {line}, {column}", f"must be a number, but is {shown(text)}") from None
+    plain = text.replace("\N{MINUS SIGN}", "-")
+    refuse_unless(_NUMBER.fullmatch(plain) is not None, f"line {line}, {column}",
+                  f"must be a number, but is {shown(text)}")
+    return float(plain)

@@ -16,7 +16,8 @@ A4_WITHIN_MARGINS = (210 - 2 * 12) * 96 / 25.4 + 1
 """Pixels of CSS, 96 to the inch, and one for rounding."""
 # The width of every card over its height, and how far its figure fills it.
 _SHAPES = """[...document.querySelectorAll(".canvas")].flatMap((card) => {
-  const outer = card.getBoundingClientRect(), inner = card.firstElementChild.getBoundingClientRect()
+  const outer = card.getBoundingClientRect()
+  const inner = card.querySelector(".bk-Figure").getBoundingClientRect()
   return [outer.width / outer.height, inner.width / outer.width, inner.height / outer.height]
 })"""
 

@@ -11,13 +11,16 @@ from pathlib import Path
 
 import msgspec
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from transport import lattice_bands, load_scenario, parse_scenario, period_verdict, resonances, scenario_from_document
 from transport.handoff import TABLES, grower_csv, python_script, scenario_hash, table, to_csv, to_json
 from transport.lattice import default_range
+from transport.limits import GROWTH
 from transport.refusal import ScenarioError
 from transport.scenario import format_scenario
-from transport.sheet import CAUTION, grower_rows, read_layer_sheet
+from transport.sheet import grower_rows, read_layer_sheet
 
 HERON = load_scenario("scenarios/heron-gate.toml")
 SPAN = default_range(HERON.stack)
@@ -110,14 +113,13 @@ def test_the_growers_rows_add_up_and_show_their_rounding() -> None:
     assert (rows[0].monolayers, rows[0].whole) == (7.4, 7)
     assert rows[0].rounding == pytest.approx(-0.4 * rows[0].thickness / 7.4)
     assert rows[0].seconds == pytest.approx(7.4 / 0.5) and rows[1].seconds == pytest.approx(20 / 2.0)
-    assert CAUTION in grower_csv(soft)
+    assert GROWTH in grower_csv(soft)
 
 
 def test_the_growers_sheet_is_read_back_as_the_same_layers() -> None:
     read = read_layer_sheet(grower_csv(HERON))
     assert not read.faults
-    assert [layer.thickness_nm for layer in read.layers] == pytest.approx(
-        [row.thickness for row in grower_rows(HERON)], abs=1e-6)
+    assert [layer.thickness_nm for layer in read.layers] == [row.thickness for row in grower_rows(HERON)]
     assert {layer.material for layer in read.layers} == {"AlGaAs", "GaAs"}
 
 
@@ -126,11 +128,51 @@ def test_the_growers_sheet_is_read_back_as_the_same_layers() -> None:
     ("layer\tthick\tcomposition\nalgaas\t25\t30%", "angstrom", 2.5), ("ML,mat,x\n9,AlGaAs,0.3", None, 9.0),
     ("# grown twice\nlayer, thickness/A\n\nAl0.3Ga0.7As, 25\n", None, 2.5),
     ("thickness_nm,monolayers,material,x\n2.5,8.8,AlGaAs,0.3", None, 2.5),
+    ("Material;x;thickness (nm)\nAlGaAs;0,3;2,5", None, 2.5), ("material\tAl (%)\tnm\nAlGaAs\t30\t2,5", None, 2.5),
+    ("#,material,nm\n1,Ga0.7Al0.3As,2.5", None, 2.5), ("material,x,nm\nAl(0.3)Ga(0.7)As,0.3,2.5", None, 2.5),
 ])
 def test_sheets_are_read_in_several_spellings_and_units(text: str, unit: str | None, thickness: float) -> None:
     (layer,) = read_layer_sheet(text, unit).layers
     assert (layer.material, layer.x) == ("AlGaAs", 0.3)
     assert (layer.thickness_nm or layer.monolayers) == pytest.approx(thickness)
+
+
+@pytest.mark.parametrize(("formula", "name", "x"), [
+    ("In0.53Ga0.47As", "InGaAs", 0.53), ("Ga0.47In0.53As", "InGaAs", 0.53), ("GaAs0.51Sb0.49", "GaAsSb", 0.49),
+    ("AlAs.56Sb.44", "AlAsSb", 0.44), ("Ga0.48AlSb", "AlGaSb", 0.52)])
+def test_a_formula_is_the_librarys_alloy_in_whatever_order_it_is_written(formula: str, name: str, x: float) -> None:
+    (layer,) = read_layer_sheet(f"material,nm\n{formula},3").layers
+    assert (layer.material, layer.x) == (name, x)
+
+
+@pytest.mark.parametrize("blank", ["", "0", "0.0", "-"])
+def test_a_binary_may_say_that_it_has_no_composition(blank: str) -> None:
+    (layer,) = read_layer_sheet(f"material,x,nm\nGaAs,{blank},3").layers
+    assert layer.x is None
+
+
+cells = st.text("AlGaInAsSb0123456789.()%+-=eE#\"' \u00c5\u2212x", max_size=12)
+
+
+@given(st.lists(st.tuples(cells, cells, cells), max_size=4), st.sampled_from(",;\t"), st.text(max_size=20))
+def test_any_table_is_layers_or_sentences(rows: list[tuple[str, str, str]], separator: str, header: str) -> None:
+    lines = (separator.join(cells) for cells in (("material", "x", "nm"), *rows))
+    for text in ("\n".join(lines), header, f"{header}{separator}material{separator}nm\n1{separator}GaAs{separator}2"):
+        try:
+            read = read_layer_sheet(text)
+        except ScenarioError as error:
+            assert "\n" not in str(error)
+        else:
+            assert all(layer.thickness_nm or layer.monolayers for layer in read.layers)
+
+
+@pytest.mark.parametrize(("row", "sentence"), [
+    ("Al0.3Ga0.6As,,3", "line 2, material: \"Al0.3Ga0.6As\" has shares that do not add up to 1; mend them"),
+    ("Al0.3Ga0.7As,0.4,3", "line 2, x: is not that of \"Al0.3Ga0.7As\" as it is written; keep one of them"),
+    ("GaAs,,1_0", 'line 2, thickness: must be a number, but is "1_0"'),
+    ("GaAs,,inf", 'line 2, thickness: must be a number, but is "inf"')])
+def test_a_row_that_contradicts_itself_is_one_sentence(row: str, sentence: str) -> None:
+    assert read_layer_sheet(f"material,x,nm\n{row}").faults == (sentence,)
 
 
 @pytest.mark.parametrize(("text", "sentence"), [
