@@ -130,11 +130,14 @@ def grower_csv(scenario: Scenario, rates: Mapping[str, float] | None = None) -> 
         {"number": r.number, "where": r.where, "material": r.material, "x": r.x, "thickness_nm": r.thickness,
          "monolayers": None if r.monolayers is None else round(r.monolayers, 4), "whole_monolayers": r.whole,
          "rounding_nm": None if r.rounding is None else round(r.rounding, 5), "height_nm": round(r.height, 5),
-         "growth_s": None if r.seconds is None else round(r.seconds, 3)}
+         "growth_s": None if r.seconds is None else round(r.seconds, 3), "band_edge_eV": r.band_edge, "mass": r.mass,
+         "nonparabolicity_per_eV": r.nonparabolicity}
         for r in grower_rows(scenario, rates)
     ]
     lines = [f"Layers to grow, in order: {scenario.title}", f"sha256: {scenario_hash(scenario)}", GROWTH,
              *scenario.warnings]
+    if any(row.strength is not None for row in scenario.sheet):
+        lines.append("Deltas have no thickness and are left out here: the stack as grown is not the one worked out.")
     return _with_header(lines, rows)
 
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from transport.document import LayerRecord
 from transport.materials import base_of, is_alloy, material_names
 from transport.parameters import PARAMETERS
-from transport.refusal import ScenarioError, nearest, refuse_unless, shown
+from transport.refusal import ScenarioError, check_limits, nearest, refuse_unless, shown
 from transport.resolve import SheetRow
 from transport.scenario import Scenario
 
@@ -23,7 +23,8 @@ class GrowerRow:
     """A layer as it is grown, in order.
 
     Lengths nm. `whole`: monolayers rounded, `rounding` what that adds (nm); `height`: top of the layer above the first
-    face; `seconds` at the given rate; None where the material has no monolayer, or no rate is known.
+    face; `seconds` at the given rate; None where the material has no monolayer, or no rate is known. A layer of no
+    material is its `band_edge` (eV), `mass` (m0) and `nonparabolicity` (1/eV), which all others leave None.
     """
 
     number: int
@@ -36,6 +37,9 @@ class GrowerRow:
     rounding: float | None
     height: float
     seconds: float | None
+    band_edge: float | None = None
+    mass: float | None = None
+    nonparabolicity: float | None = None
 
 
 def read_rates(text: str) -> dict[str, float]:
@@ -57,12 +61,16 @@ def read_rates(text: str) -> dict[str, float]:
 def grower_rows(scenario: Scenario, rates: Mapping[str, float] | None = None) -> tuple[GrowerRow, ...]:
     """Every layer to be grown, all periods written out, from the left lead's side up.
 
-    `rates`: monolayers a second by material, "" for all others. Raises ScenarioError for a rate that is not above 0,
-    and for more rows than a file may have layers times 50.
+    `rates`: monolayers a second by material, "" for all others. Raises ScenarioError for a rate that is not above 0 or
+    of a material that is not grown, and for more rows than a file may have layers times 50.
     """
     rates = rates or {}
     for name, rate in rates.items():
         refuse_unless(0 < rate < 1e6, f"rate {name}".strip(), f"is {rate:g}; give monolayers a second, above 0")
+    grown = {row.material for row in scenario.sheet[1:-1]} - {None}
+    for name in rates:
+        refuse_unless(not name or name in grown, "rate", f"names {shown(name)}, which is not grown here; "
+                      f"{nearest(name, sorted(name for name in grown if name))}")
     parts = {part: [row for row in scenario.sheet if row.where == part and row.strength is None]
              for part in ("entry", "cell", "exit")}
     total = len(parts["entry"]) + len(parts["cell"]) * scenario.stack.periods + len(parts["exit"])
@@ -87,13 +95,16 @@ def _grown(number: int, row: SheetRow, where: str, height: float, rates: Mapping
     rounding = None if monolayers is None or whole is None else (whole - monolayers) * thickness / monolayers
     rate = rates.get(row.material or "", rates.get(""))
     seconds = None if monolayers is None or rate is None else monolayers / rate
-    composition = f"{row.x_ends[0]:g} to {row.x_ends[1]:g}" if row.x_ends else "" if row.x is None else f"{row.x:g}"
-    name = row.material or row.profile or f"edge {(row.band_edge or 0.0) * 1e3:.6g} meV"
-    return GrowerRow(number, where, name, composition, thickness, monolayers, whole, rounding, height, seconds)
+    composition = f"{row.x_ends[0]:g} to {row.x_ends[1]:g}" if row.x_ends else "" if row.x is None else repr(row.x)
+    name = row.material or row.profile or ""
+    explicit = () if name else (row.band_edge, row.mass, row.nonparabolicity)
+    return GrowerRow(number, where, name, composition, thickness, monolayers, whole, rounding, height, seconds,
+                     *explicit)
 
 
 # Lists of layers in.
 
+_EXPLICIT = ("band_edge_eV", "mass", "nonparabolicity_per_eV")
 _SPELLINGS = {
     "thickness": ("thickness", "thick", "d", "width", "length", "nm", "angstrom", "ml", "monolayers", "monolayer"),
     "material": ("material", "mat", "layer", "alloy", "compound", "semiconductor"),
@@ -117,7 +128,7 @@ class ReadSheet:
 
 
 def read_layer_sheet(text: str, unit: str | None = None) -> ReadSheet:
-    """Layers of a CSV table with a line of headers: thickness, material, and x for alloys.
+    """Layers of a CSV table with a line of headers: thickness, material, and x for alloys; or band_edge_eV and mass.
 
     Header names in the usual spellings; the unit of thickness stands in its header ("thickness (nm)", "d [Å]", "ML") or
     in `unit`. Separators: comma, semicolon or tab; with the last two, decimals may have a comma. Lines that begin with
@@ -155,12 +166,16 @@ def _columns(header: Sequence[str], unit: str | None) -> tuple[dict[str, int], s
     places: dict[str, int] = {}
     units: dict[str, str | None] = {}
     for place, title in enumerate(header):
+        if title.strip() in _EXPLICIT:
+            places[title.strip()] = place
+            continue
         name, stated = _title(title)
         kind = next((kind for kind, spellings in _SPELLINGS.items() if name in spellings), None)
         if kind is not None and (kind not in places or (kind == "thickness" and units[kind] is None)):
             places[kind], units[kind] = place, stated
     for kind in ("thickness", "material"):
-        refuse_unless(kind in places, "sheet", f"has no column {kind}; its headers are {shown(', '.join(header))}")
+        refuse_unless(kind in places or (kind == "material" and "band_edge_eV" in places), "sheet",
+                      f"has no column {kind}; its headers are {shown(', '.join(header))}")
     found = unit or units["thickness"]
     refuse_unless(found != "%", "sheet", "gives thicknesses in %; write thickness (nm), (A) or (ML)")
     refuse_unless(found is not None, "sheet", "does not say in what its thicknesses are; write thickness (nm), "
@@ -187,13 +202,19 @@ def _layer(line: int, columns: Mapping[str, int], row: Sequence[str], unit: str,
         place = columns.get(kind)
         return row[place].strip() if place is not None and place < len(row) else ""
 
-    share = cell("x")
-    name, x = _material(line, cell("material"), f"{share}%" if percent and share else share)
     thickness = _number(line, "thickness", cell("thickness"))
     key = "monolayers" if unit == "monolayers" else "thickness_nm"
     value = float(f"{thickness / 10:.12g}") if unit == "angstrom" else thickness
     refuse_unless(PARAMETERS[key].admits(value), f"line {line}, thickness",
                   f"{PARAMETERS[key].requirement}, but is {value:g}")
+    if not cell("material") and cell("band_edge_eV") and key == "thickness_nm":
+        figures = {name: _number(line, name, cell(name) or "0") for name in _EXPLICIT}
+        for name, figure in figures.items():
+            check_limits(f"line {line}, {name}", name, figure)
+        bend = figures.pop("nonparabolicity_per_eV") or None
+        return LayerRecord(thickness_nm=value, nonparabolicity_per_eV=bend, **figures)  # type: ignore[arg-type]
+    share = cell("x")
+    name, x = _material(line, cell("material"), f"{share}%" if percent and share else share)
     return LayerRecord(material=name, x=x, **{key: value})  # type: ignore[arg-type]
 
 

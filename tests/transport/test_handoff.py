@@ -123,6 +123,38 @@ def test_the_growers_sheet_is_read_back_as_the_same_layers() -> None:
     assert {layer.material for layer in read.layers} == {"AlGaAs", "GaAs"}
 
 
+def test_layers_by_their_edge_and_shares_of_many_digits_come_back_to_the_last_digit() -> None:
+    scenario = parse_scenario("""
+        format = 1
+        leads = { left = { material = "GaAs" }, right = { material = "GaAs" } }
+        [stack]
+        periods = 2
+        [[stack.cell]]
+        band_edge_eV = 0.271828182845904
+        mass = 0.0912345678901
+        thickness_nm = 2.7182818284590452
+        nonparabolicity_per_eV = 0.31
+        [[stack.cell]]
+        material = "AlGaAs"
+        x = 0.12345678901234
+        thickness_nm = 5.1234567890123456
+    """)
+    read = read_layer_sheet(grower_csv(scenario))
+    assert (read.layers, read.faults) == (scenario.document.stack.cell * 2, ())
+
+
+def test_a_sheet_without_the_deltas_says_so() -> None:
+    comb = load_scenario("scenarios/pebble-comb.toml")
+    deltas = any(row.strength is not None for row in comb.sheet)
+    assert deltas and "Deltas have no thickness" in grower_csv(comb)
+    assert "Deltas" not in grower_csv(HERON)
+
+
+def test_a_rate_of_what_is_not_grown_is_refused() -> None:
+    with pytest.raises(ScenarioError, match="rate: names \"Gaas\", which is not grown here; did you mean GaAs"):
+        grower_rows(HERON, {"Gaas": 0.5})
+
+
 @pytest.mark.parametrize(("text", "unit", "thickness"), [
     ("thickness (nm),material,x\n2.5,AlGaAs,0.3", None, 2.5), ("Material;d [\u00c5];Al\nAlGaAs;25;0.3", None, 2.5),
     ("layer\tthick\tcomposition\nalgaas\t25\t30%", "angstrom", 2.5), ("ML,mat,x\n9,AlGaAs,0.3", None, 9.0),
