@@ -243,7 +243,12 @@ def _report(scenario: Scenario, options: argparse.Namespace) -> str:
     if not makers:
         raise ValueError("report: this installation has no part that makes reports; install the whole project")
     (maker,) = makers
-    text = maker.load()(scenario)
+    try:
+        make = maker.load()
+    except ImportError as error:
+        raise ValueError(f"report: the part that makes reports lacks something ({error}); install the whole project"
+                         ) from None
+    text = make(scenario)
     save_text(path, text)
     size = len(text.encode())
     return report.to_json({"file": path, "bytes": size}) if options.json else f"{path}, {size / 1e6:.1f} MB"

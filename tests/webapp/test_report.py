@@ -5,6 +5,9 @@ from __future__ import annotations
 import base64
 import json
 import re
+import subprocess
+import sys
+from importlib.metadata import EntryPoint
 from pathlib import Path
 
 import msgspec
@@ -86,3 +89,19 @@ def test_an_installation_that_makes_no_reports_says_so(
     monkeypatch.setattr(command_line, "entry_points", lambda **wanted: ())
     assert command_line.main(["report", "scenarios/heron-gate.toml", "--save", str(tmp_path / "a.html")]) == 2
     assert capsys.readouterr().err.startswith("report: this installation has no part that makes reports")
+
+
+def test_an_installation_whose_reports_lack_a_library_says_which(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    lacking = EntryPoint("html", "a_library_nobody_has:report_html", "colonnade.reports")
+    monkeypatch.setattr(command_line, "entry_points", lambda **wanted: (lacking,))
+    assert command_line.main(["report", "scenarios/heron-gate.toml", "--save", str(tmp_path / "a.html")]) == 2
+    assert "No module named 'a_library_nobody_has'" in capsys.readouterr().err
+    assert not list(tmp_path.iterdir())
+
+
+@pytest.mark.parametrize("module", ["panel", "bokeh", "webapp"])
+def test_the_command_line_alone_does_not_bring(module: str) -> None:
+    program = f"import sys, transport.__main__; sys.exit(any(m.split('.')[0] == {module!r} for m in sys.modules))"
+    assert subprocess.run([sys.executable, "-c", program], check=False).returncode == 0
