@@ -42,14 +42,6 @@ class Served:
         return [line for line in self.events()[begin:] if line["level"] in FAULTS or "traceback" in line]
 
 
-def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
-    """Tests of the browser run one after another, however many run beside them."""
-    here = Path(__file__).parent
-    for item in items:
-        if here in item.path.parents:
-            item.add_marker(pytest.mark.xdist_group("browser"))
-
-
 @pytest.fixture(scope="session")
 def browser() -> Iterator[Browser]:
     place = found(Path(sys.executable))
