@@ -70,7 +70,7 @@ def remembered(work: Callable[Concatenate[Request, Rest], Result]) -> Callable[C
     kept: OrderedDict[Request, Result] = OrderedDict()
     lock = threading.Lock()
 
-    def answered(request: Request, *rest: Rest.args, **more: Rest.kwargs) -> Result:
+    def answered(request: Request, /, *rest: Rest.args, **more: Rest.kwargs) -> Result:
         with lock:
             if request in kept:
                 kept.move_to_end(request)
