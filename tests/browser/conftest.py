@@ -14,12 +14,14 @@ from pathlib import Path
 from typing import IO
 
 import pytest
-from playwright.sync_api import Browser, Page, sync_playwright
+from playwright.sync_api import Browser, Page, expect, sync_playwright
 
 from tests.browser.chromium import FLAGS, found
 from webapp.environment import CHECKOUT
 
 ADDRESS = re.compile(r"at (http://\S+)")
+# What is expected comes when it comes: on a busy machine later than Playwright's own 5 s.
+expect.set_options(timeout=20_000)
 FAULTS = ("error", "critical")
 """Levels of the log that no visit may cause."""
 
