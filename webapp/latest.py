@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import asyncio
+import functools
 import logging
 import threading
+from collections import OrderedDict
 from collections.abc import Callable
-from typing import TYPE_CHECKING, Generic, TypeVar
+from typing import TYPE_CHECKING, Concatenate, Generic, ParamSpec, TypeVar
 
 from transport.periods import no_progress
 
@@ -15,6 +17,7 @@ if TYPE_CHECKING:
 
 Request = TypeVar("Request")
 Result = TypeVar("Result")
+Rest = ParamSpec("Rest")
 
 _log = logging.getLogger("webapp")
 
@@ -53,6 +56,34 @@ def checked(stop: Stop, progress: Callable[[float], None] = no_progress) -> Call
         progress(share)
 
     return told
+
+
+_KEPT = 64
+"""Results that a `remembered` work keeps."""
+
+
+def remembered(work: Callable[Concatenate[Request, Rest], Result]) -> Callable[Concatenate[Request, Rest], Result]:
+    """The work, its last results kept by request: what one session has had worked out is there for all.
+
+    Requests must be frozen values, results must not be changed. Work that raises is not kept.
+    """
+    kept: OrderedDict[Request, Result] = OrderedDict()
+    lock = threading.Lock()
+
+    def answered(request: Request, /, *rest: Rest.args, **more: Rest.kwargs) -> Result:
+        with lock:
+            if request in kept:
+                kept.move_to_end(request)
+                return kept[request]
+        result = work(request, *rest, **more)
+        with lock:
+            kept[request] = result
+            while len(kept) > _KEPT:
+                kept.popitem(last=False)
+        return result
+
+    functools.update_wrapper(answered, work)
+    return answered
 
 
 class Latest(Generic[Request, Result]):

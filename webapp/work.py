@@ -21,7 +21,7 @@ from transport import (
     verdict_range,
 )
 from transport.fewest import Asked
-from webapp.latest import Stop, checked
+from webapp.latest import Stop, checked, remembered
 from webapp.pages.remedies import Proposal, of_ends, of_stacks
 from webapp.results import (
     Band,
@@ -80,6 +80,7 @@ def pictures(wanted: Wanted, stop: Stop) -> Pictures:
     )
 
 
+@remembered
 def verdict(asked: Asked, stop: Stop, progress: Callable[[float], None]) -> Verdict | None:
     """Work out the verdict; None where no window is asked. Raises Stopped, and ValueError where the model ends."""
     if asked.target is None or not asked.target.windows:
@@ -87,6 +88,7 @@ def verdict(asked: Asked, stop: Stop, progress: Callable[[float], None]) -> Verd
     return period_verdict(asked, progress=checked(stop, progress))
 
 
+@remembered
 def range_of(scenario: Scenario, stop: Stop) -> VerdictRange | None:
     """The range of a scenario's verdict; None where no window is asked. Raises Stopped."""
     if scenario.target is None or not scenario.target.windows:
@@ -94,6 +96,7 @@ def range_of(scenario: Scenario, stop: Stop) -> VerdictRange | None:
     return verdict_range(scenario, checked(stop))
 
 
+@remembered
 def band_of(asked: tuple[Scenario, VerdictRange], stop: Stop) -> Band | None:
     """The range of the margins; None for more counts than are worth the wait. Raises Stopped."""
     scenario, found = asked

@@ -14,12 +14,14 @@ from pathlib import Path
 from typing import IO
 
 import pytest
-from playwright.sync_api import Browser, Page, sync_playwright
+from playwright.sync_api import Browser, Page, expect, sync_playwright
 
 from tests.browser.chromium import FLAGS, found
 from webapp.environment import CHECKOUT
 
 ADDRESS = re.compile(r"at (http://\S+)")
+# What is expected comes when it comes: on a busy machine later than Playwright's own 5 s.
+expect.set_options(timeout=20_000)
 FAULTS = ("error", "critical")
 """Levels of the log that no visit may cause."""
 
@@ -40,14 +42,6 @@ class Served:
     def faults(self, begin: int = 0) -> list[dict[str, object]]:
         """Lines of the log from `begin` on that tell of a fault."""
         return [line for line in self.events()[begin:] if line["level"] in FAULTS or "traceback" in line]
-
-
-def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
-    """Tests of the browser run one after another, however many run beside them."""
-    here = Path(__file__).parent
-    for item in items:
-        if here in item.path.parents:
-            item.add_marker(pytest.mark.xdist_group("browser"))
 
 
 @pytest.fixture(scope="session")

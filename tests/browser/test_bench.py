@@ -183,11 +183,13 @@ def test_text_of_a_file_is_never_markup(page: Page, served: Served) -> None:
     assert page.evaluate("() => window.hostile") is None
 
 
-@pytest.mark.parametrize("width", [390, 1280, 1920, 2560])
-def test_the_page_fits_its_width(page: Page, width: int) -> None:
-    page.set_viewport_size({"width": width, "height": 900})
-    page.wait_for_function(f"() => document.documentElement.scrollWidth <= {width}")
-    expect(page.locator("#trio canvas").first).to_be_visible()
+def test_every_page_fits_its_width(page: Page) -> None:
+    for name in ("Periods", "Peaks", "Compare", "Hand-off"):
+        page.get_by_role("tab", name=name).click()
+        for width in (390, 1280, 1920, 2560):
+            page.set_viewport_size({"width": width, "height": 900})
+            page.wait_for_function(f"() => document.documentElement.scrollWidth <= {width}")
+            expect(page.locator("#trio canvas").first).to_be_visible()
 
 
 def test_the_three_figures_share_their_energy_axis(page: Page) -> None:

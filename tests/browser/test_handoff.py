@@ -51,7 +51,7 @@ def test_a_link_reopens_the_same_bench_in_another_browser(handoff: Page, served:
     other.context.close()
 
 
-@pytest.mark.parametrize("text", ["1abc", "2" + "a" * 50, "%00%FF", "<img src=x onerror=alert(1)>"])
+@pytest.mark.parametrize("text", ["1abc", "<img src=x onerror=alert(1)>"])
 def test_an_odd_link_opens_the_start_page_with_a_sentence(page: Page, served: Served, text: str) -> None:
     page.goto(f"{served.address}?bench={text}")
     ready(page)
@@ -100,10 +100,10 @@ def test_data_carry_the_hash_and_the_engines_numbers(handoff: Page, served: Serv
     assert name == "heron-gate.py" and b"import transport" in content
 
 
-@pytest.mark.parametrize(("kind", "begin"), [("SVG", b"<svg"), ("PNG", b"\x89PNG")])
-def test_figures_leave_as_pictures(handoff: Page, kind: str, begin: bytes) -> None:
-    name, content = downloaded(handoff, kind)
-    assert name == f"colonnade-profile.{kind.lower()}" and content.startswith(begin)
+def test_figures_leave_as_pictures(handoff: Page) -> None:
+    for kind, begin in (("SVG", b"<svg"), ("PNG", b"\x89PNG")):
+        name, content = downloaded(handoff, kind)
+        assert name == f"colonnade-profile.{kind.lower()}" and content.startswith(begin)
 
 
 def test_the_growers_sheet_leaves_with_times_and_a_wrong_rate_is_said(handoff: Page) -> None:
