@@ -53,6 +53,7 @@ class _Alloy(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
     indirect: bool = False
     indirect_above: float = 1.0
     indirect_below: float = 0.0
+    doubt: str = ""
 
 
 class _Library(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
@@ -207,6 +208,8 @@ def _warnings(name: str, x: float | None, temperature: float) -> tuple[str, ...]
                          "counted.")
     if temperature > WARMEST_FITTED:
         sentences.append(f"The gap of {label} at {temperature:g} K is extrapolated beyond {WARMEST_FITTED:g} K.")
+    if x is not None and (doubt := _library().alloys[name].doubt):
+        sentences.append(f"{label}: {doubt}")
     return tuple(sentences)
 
 
