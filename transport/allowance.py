@@ -174,9 +174,9 @@ class Deviations:
             thickness += error * self.growth.monolayer_error * monolayer_of(row)
             if thickness <= 0:
                 raise ScenarioError("growth.monolayer_error", f"would leave nothing of {row.key}; give a smaller one")
-        course = row.course.scaled(thickness or 0.0, offset, mass) if row.course else None
+        variation = row.variation.scaled(thickness or 0.0, offset, mass) if row.variation else None
         return replace(row, thickness=thickness, band_edge=(row.band_edge or 0.0) * offset,
-                       mass=(row.mass or 0.0) * mass, course=course)
+                       mass=(row.mass or 0.0) * mass, variation=variation)
 
 
 def _kind(row: SheetRow) -> tuple[object, ...]:

@@ -50,7 +50,7 @@ def sensitivities(scenario: Scenario, energy: float, width: float) -> tuple[Effe
         if row.slices == 1:
             steps = _steps(scenario, row, _of_row(slopes, start))
         else:
-            steps = _steps_of_a_course(scenario, place, slopes)
+            steps = _steps_of_a_variation(scenario, place, slopes)
         effects += [_effect(row, figure, step, shift) for figure, step, shift in steps]
     return tuple(sorted(effects, key=lambda effect: -abs(effect.energy)))
 
@@ -77,7 +77,7 @@ def _steps(scenario: Scenario, row: SheetRow, slope: dict[str, complex]) -> Iter
         yield "composition", "0.01 in x", shift * 0.01
 
 
-def _steps_of_a_course(scenario: Scenario, place: int, slopes: Slopes) -> Iterator[tuple[str, str, complex]]:
+def _steps_of_a_variation(scenario: Scenario, place: int, slopes: Slopes) -> Iterator[tuple[str, str, complex]]:
     """The same for a row that comes to many layers: each moves as its figure says, and the shifts add up."""
     row = scenario.sheet[place]
     small = 1e-3  # of a step: what the layers are, follows from it to rounding

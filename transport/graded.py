@@ -15,7 +15,7 @@ from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from transport.parameters import PARAMETERS
-from transport.profiles import MOST_SLICES, Course, CourseError, Face, flat, like, slices
+from transport.profiles import MOST_SLICES, Face, Variation, VariationError, flat, like, slices
 from transport.refusal import ScenarioError, refuse_unless
 from transport.structure import Delta, Element, Layer
 
@@ -41,8 +41,8 @@ class LaidOut:
         return self.entry + self.cell + self.exit
 
 
-Slicer = Callable[[int, Course, int], tuple[Layer, ...]]
-"""The constant layers of a course of the row at a place: all of the row (0), its left (-1) or its right end (1)."""
+Slicer = Callable[[int, Variation, int], tuple[Layer, ...]]
+"""The constant layers of a variation of the row at a place: all of the row (0), its left (-1) or its right end (1)."""
 
 
 def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
@@ -54,10 +54,10 @@ def lay_out(rows: Sequence[SheetRow], tops: Sequence[float] = ()) -> LaidOut:
     """
     low, high = _range(rows, tops)
 
-    def resolved(place: int, course: Course, end: int) -> tuple[Layer, ...]:
+    def resolved(place: int, variation: Variation, end: int) -> tuple[Layer, ...]:
         try:
-            return slices(course, low, high)
-        except CourseError as error:
+            return slices(variation, low, high)
+        except VariationError as error:
             raise ScenarioError(rows[place].key, str(error)) from None
 
     found = _laid_out(rows, resolved)
@@ -74,15 +74,15 @@ def lay_out_like(rows: Sequence[SheetRow], elements: Sequence[Element]) -> LaidO
     """
     starts = [0, *itertools.accumulate(row.slices for row in rows)]
 
-    def resolved(place: int, course: Course, end: int) -> tuple[Layer, ...]:
+    def resolved(place: int, variation: Variation, end: int) -> tuple[Layer, ...]:
         before = [e for e in elements[starts[place]:starts[place + 1]] if isinstance(e, Layer)]
         if place == len(rows) - 1:
-            return like(course, before[::-1])
+            return like(variation, before[::-1])
         if end:
             along = itertools.accumulate(layer.thickness for layer in before[::-end])
-            size = sum(reached < course.thickness * (1 + 1e-9) for reached in along)
+            size = sum(reached < variation.thickness * (1 + 1e-9) for reached in along)
             before = before[:size] if end < 0 else before[-size:]
-        return like(course, before)
+        return like(variation, before)
 
     return _laid_out(rows, resolved)
 
@@ -107,7 +107,7 @@ def _laid_out(rows: Sequence[SheetRow], resolved: Slicer) -> LaidOut:
 
 def _range(rows: Sequence[SheetRow], tops: Sequence[float]) -> tuple[float, float]:
     edges = [edge for row in rows if row.strength is None
-             for edge in (row.course.reach() if row.course else (row.band_edge or 0.0,))]
+             for edge in (row.variation.reach() if row.variation else (row.band_edge or 0.0,))]
     low = min(edges)
     return low, low + max(3 * (max(*edges, *tops) - low), _LEAST_RANGE)
 
@@ -126,16 +126,16 @@ def _elements(
     assert row.thickness is not None
     faces = _face(row, left, side=0), _face(row, right, side=1)
     _require_room(row, left, right, faces)
-    if row.course is None and faces == (None, None):
+    if row.variation is None and faces == (None, None):
         return (_plain(row),)
-    if row.course is not None:
-        return resolved(place, replace(row.course, left=faces[0], right=faces[1]), 0)
+    if row.variation is not None:
+        return resolved(place, replace(row.variation, left=faces[0], right=faces[1]), 0)
     left_half, right_half = (face.length / 2 if face else 0.0 for face in faces)
     rest = row.thickness - left_half - right_half
     return (
-        *(resolved(place, replace(_course(row, left_half), left=faces[0]), -1) if faces[0] else ()),
+        *(resolved(place, replace(_variation(row, left_half), left=faces[0]), -1) if faces[0] else ()),
         *((_plain(replace(row, thickness=rest)),) if rest > 1e-9 * row.thickness else ()),
-        *(resolved(place, replace(_course(row, right_half), right=faces[1]), 1) if faces[1] else ()),
+        *(resolved(place, replace(_variation(row, right_half), right=faces[1]), 1) if faces[1] else ()),
     )
 
 
@@ -145,7 +145,7 @@ def _lead_half(pair: Sequence[SheetRow], place: int, resolved: Slicer) -> tuple[
     face = _face(lead, layer, side=0 if place else 1)
     if face is None:
         return ()
-    return resolved(place, replace(_course(lead, face.length / 2), right=face), 0)
+    return resolved(place, replace(_variation(lead, face.length / 2), right=face), 0)
 
 
 def _plain(row: SheetRow) -> Layer:
@@ -153,10 +153,10 @@ def _plain(row: SheetRow) -> Layer:
     return Layer(row.thickness, row.band_edge, row.mass, row.nonparabolicity or 0.0)
 
 
-def _course(row: SheetRow, thickness: float) -> Course:
-    if row.course is not None:
-        return row.course
-    return Course(thickness, flat(row.band_edge or 0.0), flat(row.mass or 0.0), flat(row.nonparabolicity or 0.0))
+def _variation(row: SheetRow, thickness: float) -> Variation:
+    if row.variation is not None:
+        return row.variation
+    return Variation(thickness, flat(row.band_edge or 0.0), flat(row.mass or 0.0), flat(row.nonparabolicity or 0.0))
 
 
 def _face(row: SheetRow, beyond: SheetRow, side: int) -> Face | None:
@@ -169,7 +169,7 @@ def _face(row: SheetRow, beyond: SheetRow, side: int) -> Face | None:
 
 
 def _at_face(row: SheetRow, side: int) -> tuple[float, float, float]:
-    return _course(row, 1.0).at_face(side)
+    return _variation(row, 1.0).at_face(side)
 
 
 def _require_room(
@@ -203,9 +203,9 @@ def _require_equal_cells(lines: dict[str, list[SheetRow]]) -> None:
             f"all cells are the same; let {remedy}, or cut the cell within a layer, half of it at either end")
 
 
-def require_reach(key: str, course: Course) -> None:
+def require_reach(key: str, variation: Variation) -> None:
     """Raise ScenarioError where a profile leaves the limits of a band edge."""
     limit = PARAMETERS["band_edge_eV"]
-    for edge in course.reach():
+    for edge in variation.reach():
         refuse_unless(limit.admits(edge / (1 + 1e-9)), key,
                       f"reaches {edge:.6g} eV, but a band edge {limit.requirement}; give it smaller numbers")

@@ -99,7 +99,7 @@ def fit_peaks(
     measured = _known(scenario, peaks)
     _check_figures(figures, measured)
     if tuple(figures) != ("shift",):
-        _refuse_courses(scenario)
+        _refuse_variations(scenario)
     before = compare_peaks(scenario, measured)
     model = _Model(scenario.stack.lossless(), measured, tuple(figures))
     steps = 0
@@ -138,7 +138,7 @@ def _check_figures(figures: Sequence[str], measured: MeasuredPeaks) -> None:
         raise ScenarioError("fit", f"asks for {len(figures)} figures of {measured.energy.size} peaks; ask for fewer")
 
 
-def _refuse_courses(scenario: Scenario) -> None:
+def _refuse_variations(scenario: Scenario) -> None:
     """Profiles and graded interfaces are neither barrier nor well: their thicknesses and edges are not fitted."""
     for row in scenario.sheet:
         if row.slices > 1:

@@ -34,9 +34,9 @@ from transport.structure import Layer
 Floats = NDArray[np.float64]
 
 TOLERANCE = 1e-10
-"""Relative error of a course's matrix, against one of twice as many steps."""
+"""Relative error of a variation's matrix, against one of twice as many steps."""
 THINNEST = 1e-9
-"""The thinnest course, nm."""
+"""The thinnest variation, nm."""
 MOST_SLICES = int(PARAMETERS["file_slices"].high)
 PER_STEP = 3
 """Constant layers of one step."""
@@ -150,7 +150,7 @@ class Face:
 
 
 @dataclass(frozen=True, slots=True)
-class Course:
+class Variation:
     """Band edge (eV), mass (m0) and nonparabolicity (1/eV) through one layer of `thickness` nm.
 
     At a graded face the values go over into those beyond it as (1 - erf(4 s / length) / erf(2)) / 2 of the distance s
@@ -175,11 +175,11 @@ class Course:
                 alpha = alpha + share * (face.nonparabolicity - alpha)
         return edge, mass, alpha
 
-    def scaled(self, thickness: float, edge: float, mass: float) -> Course:
+    def scaled(self, thickness: float, edge: float, mass: float) -> Variation:
         """Another thickness (widths in nm stay), and band edge and mass times a factor each."""
         return replace(self, thickness=thickness, band_edge=self.band_edge.times(edge), mass=self.mass.times(mass))
 
-    def moved(self, edge: float) -> Course:
+    def moved(self, edge: float) -> Variation:
         """The band edge shifted as a whole (eV)."""
         return replace(self, band_edge=replace(self.band_edge, shift=self.band_edge.shift + edge))
 
@@ -238,48 +238,48 @@ def _beyond(distance: Floats, length: float) -> Floats:
     return np.asarray((1 - error / math.erf(_REACH)) / 2)
 
 
-class CourseError(ValueError):
-    """A course that cannot be resolved; the message says what to do about it."""
+class VariationError(ValueError):
+    """A variation that cannot be resolved; the message says what to do about it."""
 
 
 @functools.lru_cache(maxsize=512)
-def slices(course: Course, low: float, high: float) -> tuple[Layer, ...]:
-    """The constant layers, left to right, whose matrix is the course's to 1e-10 at energies from low to high (eV).
+def slices(variation: Variation, low: float, high: float) -> tuple[Layer, ...]:
+    """The constant layers, left to right, whose matrix is the variation's to 1e-10 at energies from low to high (eV).
 
     Steps are as long as lets all err alike, and as many as it takes for twice as many to change the matrix by no more
-    than TOLERANCE of its largest entry (b and c measured by the wave number of that range). Raises CourseError if those
-    are too many, and for a course thinner than THINNEST.
+    than TOLERANCE of its largest entry (b and c measured by the wave number of that range). Raises VariationError if
+    those are too many, and for a variation thinner than THINNEST.
     """
-    if course.thickness < THINNEST:
-        raise CourseError(f"is {course.thickness:g} nm thick, but a layer that runs needs {THINNEST:g} nm; make it "
-                          "thicker")
+    if variation.thickness < THINNEST:
+        raise VariationError(f"is {variation.thickness:g} nm thick, but a layer that runs needs {THINNEST:g} nm; "
+                             "make it thicker")
     energy = np.linspace(low, high, _ENERGIES)
-    net, best = _refined(course, energy), None
+    net, best = _refined(variation, energy), None
     allowed, wanted = TOLERANCE, TOLERANCE / 2  # a half for energies between those looked at
     trials = 0
     while best is None or trials < _TRIALS:
         trials += 1
-        net = _spread(net, _wanted_steps(course, net, energy, allowed), course.corners())
-        finer = _halved(net, ~_is_flat(course, net))
-        coarse, fine = (_product(_matrices(_constants(course, ends), energy)) for ends in (net, finer))
-        error = float(_difference(coarse, fine, _unit(course, energy)).max())
-        if error <= wanted and _sound(_constants(course, net)).all() and (best is None or net.size < best.size):
+        net = _spread(net, _wanted_steps(variation, net, energy, allowed), variation.corners())
+        finer = _halved(net, ~_is_flat(variation, net))
+        coarse, fine = (_product(_matrices(_constants(variation, ends), energy)) for ends in (net, finer))
+        error = float(_difference(coarse, fine, _unit(variation, energy)).max())
+        if error <= wanted and _sound(_constants(variation, net)).all() and (best is None or net.size < best.size):
             best = net
-        if best is not None and (wanted / 10 <= error <= wanted or net.size == course.corners().size):
+        if best is not None and (wanted / 10 <= error <= wanted or net.size == variation.corners().size):
             break
         change = (wanted / max(error, wanted * 1e-3)) ** ((_ORDER + 1) / _ORDER)
         allowed *= min(max(0.9 * change, 0.05), 20.0)
-    return on_steps(course, best)
+    return on_steps(variation, best)
 
 
-def _wanted_steps(course: Course, ends: Floats, energy: Floats, allowed: float) -> Floats:
+def _wanted_steps(variation: Variation, ends: Floats, energy: Floats, allowed: float) -> Floats:
     """Into how many steps each step would have to go to err by no more than is allowed; neighbours not too unlike."""
-    steps = (np.maximum(_errors(course, ends, energy), _ROUNDING) / allowed) ** (1 / (_ORDER + 1))
+    steps = (np.maximum(_errors(variation, ends, energy), _ROUNDING) / allowed) ** (1 / (_ORDER + 1))
     width = np.diff(ends)
     wider = np.clip(width[1:] / width[:-1], 0.25, 4)
     steps[1:], steps[:-1] = np.maximum(steps[1:], steps[:-1] * wider / 2), np.maximum(steps[:-1], steps[1:] / wider / 2)
-    least = 1e-6 * width / course.thickness  # where nothing runs, one step will do
-    return np.asarray(np.where(_is_flat(course, ends), least, np.maximum(steps, least)))
+    least = 1e-6 * width / variation.thickness  # where nothing runs, one step will do
+    return np.asarray(np.where(_is_flat(variation, ends), least, np.maximum(steps, least)))
 
 
 def _spread(net: Floats, steps: Floats, corners: Floats) -> Floats:
@@ -296,23 +296,23 @@ def _spread(net: Floats, steps: Floats, corners: Floats) -> Floats:
 
 def _require_few(steps: float) -> None:
     if PER_STEP * steps > MOST_SLICES:
-        raise CourseError(f"takes more than {MOST_SLICES:,} constant layers to be right to {TOLERANCE:g}; make it "
+        raise VariationError(f"takes more than {MOST_SLICES:,} constant layers to be right to {TOLERANCE:g}; make it "
                           "thinner, lower or smoother")
 
 
-def on_steps(course: Course, ends: Floats) -> tuple[Layer, ...]:
-    """The constant layers of given steps, whose `ends` (nm) ascend from 0 to the course's thickness.
+def on_steps(variation: Variation, ends: Floats) -> tuple[Layer, ...]:
+    """The constant layers of given steps, whose `ends` (nm) ascend from 0 to the variation's thickness.
 
     Raises ValueError where a layer would come to a mass that is not above 0: its step is too long.
     """
-    rows = _constants(course, ends).reshape(4, -1).T.tolist()
+    rows = _constants(variation, ends).reshape(4, -1).T.tolist()
     return tuple(Layer(*row) for row in rows)
 
 
-def like(course: Course, layers: Sequence[Layer]) -> tuple[Layer, ...]:
-    """The constant layers of a course on the steps of one that it hardly differs from, stretched to its thickness."""
+def like(variation: Variation, layers: Sequence[Layer]) -> tuple[Layer, ...]:
+    """The constant layers of a variation on the steps of one that hardly differs, stretched to its thickness."""
     ends = np.append(0.0, np.cumsum([layer.thickness for layer in layers])[PER_STEP - 1::PER_STEP])
-    return on_steps(course, ends * (course.thickness / ends[-1]))
+    return on_steps(variation, ends * (variation.thickness / ends[-1]))
 
 
 def _halved(ends: Floats, where: NDArray[np.bool_] | None = None) -> Floats:
@@ -320,31 +320,31 @@ def _halved(ends: Floats, where: NDArray[np.bool_] | None = None) -> Floats:
     return _split(ends, np.full(ends.size - 1, 2) if where is None else 1 + where)
 
 
-def _is_flat(course: Course, ends: Floats) -> NDArray[np.bool_]:
+def _is_flat(variation: Variation, ends: Floats) -> NDArray[np.bool_]:
     """Steps through which nothing runs: their layers are exact whatever their length."""
-    whole, half = _constants(course, ends)[1:], _constants(course, _halved(ends))[1:]
+    whole, half = _constants(variation, ends)[1:], _constants(variation, _halved(ends))[1:]
     both = np.concatenate([whole, half.reshape(3, -1, 2 * PER_STEP)], axis=2)
     return np.asarray((both == both[:, :, :1]).all(axis=(0, 2)))
 
 
-def _refined(course: Course, energy: Floats) -> Floats:
+def _refined(variation: Variation, energy: Floats) -> Floats:
     """Steps so short that each errs by little: the net from which the spacing of the final ones is read."""
-    ends = course.net()
+    ends = variation.net()
     while True:
         _require_few(ends.size - 1)
-        error = _errors(course, ends, energy)
+        error = _errors(variation, ends, energy)
         parts = np.ceil(np.clip((error / _RESOLVED) ** (1 / (_ORDER + 1)), 1, 4)).astype(int)
         if (parts == 1).all():
             return ends
         ends = _split(ends, parts)
 
 
-def _errors(course: Course, ends: Floats, energy: Floats) -> Floats:
+def _errors(variation: Variation, ends: Floats, energy: Floats) -> Floats:
     """The error of each step: the most that halving it changes its matrix. Infinite where a mass is not above 0."""
-    whole, half = _constants(course, ends), _constants(course, _halved(ends))
+    whole, half = _constants(variation, ends), _constants(variation, _halved(ends))
     coarse, fine = _along(_matrices(whole, energy), PER_STEP), _along(_matrices(half, energy), 2 * PER_STEP)
-    error: Floats = _difference(coarse, fine, _unit(course, energy)).max(axis=1)
-    error[_is_flat(course, ends)] = 0.0
+    error: Floats = _difference(coarse, fine, _unit(variation, energy)).max(axis=1)
+    error[_is_flat(variation, ends)] = 0.0
     error[~_sound(whole)] = math.inf
     return error
 
@@ -356,14 +356,14 @@ def _split(ends: Floats, parts: NDArray[np.int64]) -> Floats:
     return np.append(left + place * width, ends[-1])
 
 
-def _constants(course: Course, ends: Floats) -> Floats:
+def _constants(variation: Variation, ends: Floats) -> Floats:
     """Thickness, band edge, mass and nonparabolicity of the layers of each step, shape (4, steps, 3).
 
     m(E) = mass (1 + a (E - V)) is the line (mass - mass a V) + mass a E, whose two coefficients are averaged.
     """
     width = np.diff(ends)
     middle = (ends[1:] + ends[:-1]) / 2
-    edge, mass, alpha = course.at(middle[:, None] + width[:, None] * np.array([-_GAUSS, 0.0, _GAUSS]))
+    edge, mass, alpha = variation.at(middle[:, None] + width[:, None] * np.array([-_GAUSS, 0.0, _GAUSS]))
     edges, edge_lean = _averaged(edge)
     slopes, slope_lean = _averaged(mass * alpha)
     grounds, ground_lean = _averaged(mass - mass * alpha * edge)
@@ -421,9 +421,9 @@ def _joined(first: Transfer, second: Transfer) -> Transfer:
     return Transfer(*(np.concatenate([getattr(first, name), getattr(second, name)]) for name in Transfer.__slots__))
 
 
-def _unit(course: Course, energy: Floats) -> float:
+def _unit(variation: Variation, energy: Floats) -> float:
     """m/k (nm m0) of the range: what makes b and c comparable with a and d."""
-    mass = course.mean()[1]
+    mass = variation.mean()[1]
     return mass / math.sqrt(mass * float(np.ptp(energy)) / HBAR2_2M0)
 
 

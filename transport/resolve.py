@@ -7,16 +7,16 @@ from dataclasses import dataclass, replace
 from itertools import pairwise
 
 from transport.checks import written_out
-from transport.courses import courses_of
 from transport.document import Document, LayerRecord, LeadRecord, WindowRecord, default_measure
 from transport.ends import KEY, end_layers
 from transport.graded import lay_out, require_reach
 from transport.materials import OFFSET_WARNING
 from transport.media import Edges, Media, Medium
 from transport.parameters import PARAMETERS
-from transport.profiles import Course
+from transport.profiles import Variation
 from transport.refusal import ScenarioError, refuse_unless, shown
 from transport.structure import Lead, Stack, Target, Window
+from transport.variations import variations_of
 
 HIGHEST_PARABOLIC = 0.2
 """Share of the gap above a band edge up to which one mass will do: Kane's is then a fifth heavier (common practice)."""
@@ -33,7 +33,7 @@ class SheetRow:
     `nonparabolicity` 1/eV, `strength` (of a delta only) eV nm; None where it does not apply. `monolayers` may be
     fractional: growth rounds it.
 
-    A layer whose edge or mass runs has a `course` through it, `profile` names it in words, and band edge, mass and
+    A layer whose edge or mass runs has a `variation` through it, `profile` names it in words, and band edge, mass and
     nonparabolicity are means over the layer; `x_ends`: compositions at the faces of a graded alloy; `grading`:
     length of its graded interfaces (nm). `slices`: how many elements of the stack the row comes to. `faces`: edges of
     a library material at its left and right face.
@@ -53,7 +53,7 @@ class SheetRow:
     x_ends: tuple[float, float] | None = None
     profile: str | None = None
     grading: float | None = None
-    course: Course | None = None
+    variation: Variation | None = None
     slices: int = 1
     faces: tuple[Edges, Edges] | None = None
 
@@ -66,9 +66,9 @@ def monolayer_of(row: SheetRow) -> float:
 def altered(row: SheetRow, thickness: float = 0.0, band_edge: float = 0.0, mass_share: float = 0.0) -> SheetRow:
     """A layer's row, thicker by so many nm, higher by so many eV, heavier by a share."""
     new, heavier = (row.thickness or 0.0) + thickness, 1 + mass_share
-    course = row.course.scaled(new, 1.0, heavier).moved(band_edge) if row.course else None
+    variation = row.variation.scaled(new, 1.0, heavier).moved(band_edge) if row.variation else None
     return replace(row, thickness=new, band_edge=(row.band_edge or 0.0) + band_edge, mass=(row.mass or 0.0) * heavier,
-                   course=course)
+                   variation=variation)
 
 
 @dataclass(frozen=True, slots=True)
@@ -146,7 +146,8 @@ def _refuse_broken_gaps(sheet: Sequence[SheetRow]) -> None:
 
 def _sheet(document: Document, media: Media, zero: float) -> Iterable[SheetRow]:
     stack = document.stack
-    left, right = end_layers(stack.ends, stack.cell, lambda *at: courses_of(media, *at)[0]) if stack.ends else ((), ())
+    left, right = end_layers(
+        stack.ends, stack.cell, lambda *at: variations_of(media, *at)[0]) if stack.ends else ((), ())
     parts = {
         "entry": [*written_out("stack.entry", stack.entry), *((KEY, record) for record in left)],
         "cell": written_out("stack.cell", stack.cell),
@@ -166,18 +167,18 @@ def _row(where: str, key: str, medium: Medium, zero: float) -> SheetRow:
 def _layer_row(part: str, key: str, record: LayerRecord, media: Media, zero: float) -> SheetRow:
     if record.kind == "delta":
         return SheetRow(part, key, thickness=0.0, strength=record.delta_eV_nm)
-    medium, curves = courses_of(media, key, record)
+    medium, curves = variations_of(media, key, record)
     thickness, monolayers = _thickness(key, record, medium)
     row = replace(_row(part, key, medium, zero), thickness=thickness, monolayers=monolayers, grading=record.grading_nm)
     if curves is None:
         return row
-    course = Course(thickness, replace(curves[0], shift=curves[0].shift - zero), *curves[1:])
-    require_reach(key, course)
-    edge, mass, nonparabolicity = course.mean()
+    variation = Variation(thickness, replace(curves[0], shift=curves[0].shift - zero), *curves[1:])
+    require_reach(key, variation)
+    edge, mass, nonparabolicity = variation.mean()
     ends = None if record.x_from is None or record.x_to is None else (record.x_from, record.x_to)
     words = f"x = {ends[0]:g} to {ends[1]:g}" if ends else record.profile
     return replace(row, band_edge=edge, mass=mass, nonparabolicity=nonparabolicity, x_ends=ends, profile=words,
-                   course=course)
+                   variation=variation)
 
 
 def _thickness(key: str, record: LayerRecord, medium: Medium) -> tuple[float, float | None]:
@@ -225,7 +226,7 @@ def _warnings(sheet: tuple[SheetRow, ...], media: Media, target: Target | None) 
 def _too_high(sheet: Sequence[SheetRow], top: float) -> Iterator[str]:
     """A sentence on the material above whose edge `top` (eV) lies by the largest share of its gap, if one is due."""
     reaches = [((top - row.band_edge) / _gap(row.faces[0]), row) for row in sheet
-               if row.faces and row.band_edge is not None and row.course is None]
+               if row.faces and row.band_edge is not None and row.variation is None]
     share, row = max(reaches, key=lambda reach: reach[0], default=(0.0, sheet[0]))
     bent = bool(row.nonparabolicity)
     if row.faces and row.band_edge is not None and share > (HIGHEST_BENT if bent else HIGHEST_PARABOLIC):

@@ -6,10 +6,8 @@ import asyncio
 from collections.abc import Callable
 from dataclasses import asdict
 from functools import partial
-from pathlib import Path
 from typing import Any
 
-import panel as pn
 from bokeh.document import Document
 from panel.io.document import hold
 
@@ -26,19 +24,18 @@ from webapp.files import Entry
 from webapp.handing import Handing
 from webapp.jobs import in_line
 from webapp.latest import Latest, Stop
-from webapp.link import Page, Shown, decode, encode
+from webapp.link import Page, Shown, encode
 from webapp.messages import in_words
 from webapp.pages.periods import verdict_view
 from webapp.peaks import Peaks
 from webapp.ranges import Ranges
 from webapp.remedies import Remedies
 from webapp.results import Band, Span, most_periods, natural_span, question
-from webapp.service import Service, Visit
-from webapp.theme import LIGHT, PALETTES, css_variables
+from webapp.service import Visit
+from webapp.theme import LIGHT, PALETTES
 from webapp.wire import Wire
 from webapp.work import Pictures, Wanted, pictures, verdict
 
-_PAGE = Path(__file__).parent / "page.html"
 _POLL = 0.2
 _SLOW = 0.3
 _PAUSE, _REST = 0.08, 0.25
@@ -118,6 +115,25 @@ class Session:
                 self._tell_verdict()
             case say.Again():
                 self._ask_verdict(question(self._bench.scenario))
+            case say.Save(name=name, agreed=agreed):
+                objections = self._bench.save(name, agreed)
+                if objections:
+                    self.wire.tell(objections={"name": name, "sentences": objections})
+                elif (notice := self._bench.notice) and not notice.is_fault:
+                    log.tell("saved", self._bench.place or "")
+                self._tell_rail()
+            case say.Slide(periods=periods):
+                self._bench.slide(periods)
+                self._follow(rail=False)
+            case say.Settle():
+                self._bench.settle()
+                self.wire.tell(status=self._status(), kept=self._bench.kept())
+            case _:
+                self._act_on_page(message)
+
+    def _act_on_page(self, message: say.AnyMessage) -> None:
+        """What the pages below the bench ask for; anything else is an edit."""
+        match message:
             case say.Propose(what=what, whole=whole):
                 self._remedies.look(self._bench.scenario, what, whole)
             case say.StopProposing():
@@ -142,19 +158,6 @@ class Session:
                 self._peaks.look(figures)
             case say.StopFit():
                 self._peaks.stop()
-            case say.Save(name=name, agreed=agreed):
-                objections = self._bench.save(name, agreed)
-                if objections:
-                    self.wire.tell(objections={"name": name, "sentences": objections})
-                elif (notice := self._bench.notice) and not notice.is_fault:
-                    log.tell("saved", self._bench.place or "")
-                self._tell_rail()
-            case say.Slide(periods=periods):
-                self._bench.slide(periods)
-                self._follow(rail=False)
-            case say.Settle():
-                self._bench.settle()
-                self.wire.tell(status=self._status(), kept=self._bench.kept())
             case _:
                 self._edit(message)
 
@@ -417,38 +420,3 @@ def _extra_curves(scenario: Scenario) -> str:
     beam = [f"dashed: seen at {scenario.resolution * 1e3:g} meV"] if scenario.resolution else []
     lost = ["dotted: absorbed (T + R + A = 1)"] if scenario.stack.dephasing else []
     return ", ".join(beam + lost)
-
-
-def _linked(text: bytes) -> tuple[Shown | None, str]:
-    """What the link of an address shows, or a sentence that says why nothing."""
-    if not text:
-        return None, ""
-    try:
-        return decode(text.decode("ascii", "replace")), ""
-    except ScenarioError as error:
-        return None, f"The link cannot be opened: {error}"
-
-
-def session(service: Service) -> None:
-    """Fill the document of one visitor; called by the server for each."""
-    document = pn.state.curdoc
-    wanted = pn.state.session_args.get("scenario", [b""])[0].decode(errors="replace")
-    drags = "Mobi" not in pn.state.headers.get("User-Agent", "")
-    document.title = "Colonnade"
-    document.template = _PAGE.read_text(encoding="utf-8")
-    document.template_variables.update(
-        variables=css_variables(), has_login=service.has_login, view_only=service.view_only)
-    share = service.enter()
-    document.on_session_destroyed(lambda context: service.leave(share))
-    # One look at all models instead of one for each root halves the time to the page.
-    with document.models.freeze():
-        linked, refused = _linked(pn.state.session_args.get("bench", [b""])[0])
-        bench = Bench(service.folder, wanted or None, linked.document if linked else None)
-        if refused:
-            bench.refuse("open", refused)
-        visit = Session(document, bench, drags, share, linked)
-        for figure in visit.board.figures:
-            document.add_root(figure)
-        document.template_variables["figures"] = [figure.name for figure in visit.board.figures]
-        visit.wire.server_doc(document, location=False)
-    document.on_session_destroyed(lambda context: visit.close())

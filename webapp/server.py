@@ -18,11 +18,11 @@ from tornado.web import RequestHandler
 from tornado.websocket import WebSocketClosedError
 
 from webapp import log
-from webapp.app import session
 from webapp.environment import CHECKOUT
 from webapp.login import LIVENESS, Door
 from webapp.passwords import Users
 from webapp.service import Service
+from webapp.visitor import session
 
 _MOST_ORIGIN = 200
 _ASSETS = Path(__file__).parent / "assets"

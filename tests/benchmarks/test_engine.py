@@ -96,10 +96,10 @@ def test_chosen_energies() -> None:
 @pytest.mark.parametrize("name", ["cosine", "running mass", "graded"])
 def test_periods_of_profiles(name: str) -> None:
     """60 periods of a profile at 2,000 energies: to be at most 60 ms on one core; and resolving it, once."""
-    course, lead = RUNNING[name], Lead(0.0, 0.067)
-    stack = Stack(lead, (), slices(course, 0.0, 0.9), 60, (), lead)
+    variation, lead = RUNNING[name], Lead(0.0, 0.067)
+    stack = Stack(lead, (), slices(variation, 0.0, 0.9), 60, (), lead)
     took = median_ms(lambda i: spectrum(stack, np.linspace(0.01, 0.5, 2000) + i * 1e-7).transmission)
-    resolved = median_ms(lambda i: slices(course, 0.0, 0.9 + i * 1e-6), 5)
+    resolved = median_ms(lambda i: slices(variation, 0.0, 0.9 + i * 1e-6), 5)
     print(f"60 periods, 2000 energies, {name}, {len(stack.cell)} slices: {took:.1f} ms; resolved in {resolved:.0f} ms")
 
 

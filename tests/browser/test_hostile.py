@@ -70,4 +70,4 @@ def test_uploads_are_bounded(page: Page, tmp_path: Path) -> None:
     large.write_text("<html>" + "x" * 9_000_000)
     page.locator("#open").click()
     page.locator("#own-file").set_input_files(large)
-    expect(page.locator("#notice")).to_contain_text("cannot be opened")
+    expect(page.locator("#notice")).to_contain_text("cannot be opened: report: is larger than 8,000,000 bytes")

@@ -16,21 +16,21 @@ from tests.reference import C
 from transport import Lead, Scenario, Stack, lattice_bands, parse_scenario, spectrum
 from transport.constants import HBAR2_2M0
 from transport.materials import material
-from transport.profiles import Course, Curve, flat, on_steps, slices
+from transport.profiles import Curve, Variation, flat, on_steps, slices
 from transport.propagation import transfer
 
 MASS = 0.067
-COSINE = Course(10.0, Curve("cosine", (0.15, 0.15)), flat(MASS), flat(0.0))
+COSINE = Variation(10.0, Curve("cosine", (0.15, 0.15)), flat(MASS), flat(0.0))
 
 
-def stack(course: Course, left: Lead, right: Lead, top: float = 1.0) -> Stack:
+def stack(variation: Variation, left: Lead, right: Lead, top: float = 1.0) -> Stack:
     """One profile between leads, right to 1e-10 from the lowest lead edge up to `top` (eV)."""
     low = min(left.band_edge, right.band_edge)
-    return Stack(left, (), slices(course, low, low + top), 1, (), right)
+    return Stack(left, (), slices(variation, low, low + top), 1, (), right)
 
 
-def profile(shape: str, numbers: tuple[float, ...], thickness: float, shift: float = 0.0) -> Course:
-    return Course(thickness, Curve(shape, numbers, shift=shift), flat(MASS), flat(0.0))
+def profile(shape: str, numbers: tuple[float, ...], thickness: float, shift: float = 0.0) -> Variation:
+    return Variation(thickness, Curve(shape, numbers, shift=shift), flat(MASS), flat(0.0))
 
 
 def test_edges_of_a_cosine_lattice_are_mathieus_characteristic_values() -> None:
@@ -78,8 +78,8 @@ def test_reflection_of_a_fermi_step(width: float) -> None:
     step, energy = 0.1, np.array([0.1001, 0.105, 0.13, 0.2, 0.5])
     k1, k2 = (np.sqrt((energy - edge) * MASS / HBAR2_2M0) for edge in (0.0, step))
     expected = (np.sinh(np.pi * width * (k1 - k2)) / np.sinh(np.pi * width * (k1 + k2))) ** 2
-    course = profile("fermi", (step, width), 80 * width)
-    found = spectrum(stack(course, Lead(0.0, MASS), Lead(step, MASS)), energy)
+    variation = profile("fermi", (step, width), 80 * width)
+    found = spectrum(stack(variation, Lead(0.0, MASS), Lead(step, MASS)), energy)
     assert found.reflection == pytest.approx(expected, rel=1e-8, abs=1e-13)
 
 
@@ -115,9 +115,9 @@ def test_parabolic_barrier_by_webers_functions_and_by_kemble(energy: float) -> N
     """
     height, width, length = 0.3, 3.0, 60.0
     edge = height * (1 - (length / 2 / width) ** 2)
-    course = profile("parabola", (height, width), length, shift=-edge)
+    variation = profile("parabola", (height, width), length, shift=-edge)
     lead = Lead(0.0, MASS)
-    found = float(spectrum(stack(course, lead, lead, top=2 - edge), energy - edge).transmission)
+    found = float(spectrum(stack(variation, lead, lead, top=2 - edge), energy - edge).transmission)
     assert found == pytest.approx(weber_transmission(height, width, length, energy), rel=1e-9)
     quantum = 2 * math.sqrt(height * HBAR2_2M0 / MASS) / width
     assert found == pytest.approx(1 / (1 + math.exp(2 * math.pi * (height - energy) / quantum)), rel=5e-3)
@@ -151,11 +151,11 @@ def test_the_order_of_convergence_is_six_for_a_constant_mass_and_four_for_one_th
     mass: Curve, order: int
 ) -> None:
     """Uniform steps, halved: errors against much finer ones fall by 2^order."""
-    course = Course(10.0, Curve("cosine", (0.15, 0.15)), mass, flat(0.0))
+    variation = Variation(10.0, Curve("cosine", (0.15, 0.15)), mass, flat(0.0))
     energy = np.linspace(0.01, 0.6, 7)
 
     def matrix(steps: int) -> np.ndarray:
-        m = transfer(on_steps(course, np.linspace(0, 10.0, steps + 1)), energy)
+        m = transfer(on_steps(variation, np.linspace(0, 10.0, steps + 1)), energy)
         return np.asarray(np.array([m.a, m.b, m.c, m.d]) * np.exp(m.log_scale))
 
     errors = [np.abs(matrix(steps) - matrix(2048)).max() for steps in (16, 32, 64)]

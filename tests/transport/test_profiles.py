@@ -39,7 +39,7 @@ from transport.checks import BASED_PROFILES, PROFILE_KEYS
 from transport.document import EndsRecord, LayerRecord
 from transport.materials import material
 from transport.parameters import PARAMETERS
-from transport.profiles import MOST_SLICES, TOLERANCE, Course, CourseError, Curve, Face, flat, on_steps, slices
+from transport.profiles import MOST_SLICES, TOLERANCE, Curve, Face, Variation, VariationError, flat, on_steps, slices
 from transport.propagation import transfer
 from transport.report import layers_record, layers_text
 from transport.resolve import monolayer_of
@@ -77,28 +77,28 @@ def refusal(*cell: str, **rest: Any) -> str:
 # Slices.
 
 RUNNING = {
-    "cosine": Course(10.0, Curve("cosine", (0.15, 0.15)), flat(0.067), flat(0.0)),
-    "heavy": Course(10.0, Curve("cosine", (0.15, 0.15)), flat(1.0), flat(0.0)),
-    "narrow": Course(500.0, Curve("gaussian", (0.3, 0.05, 0.0)), flat(0.067), flat(0.0)),
-    "opaque": Course(200.0, Curve("parabola", (5.0, 100.0)), flat(0.2), flat(0.0)),
-    "running mass": Course(10.0, Curve("linear", (0.0, 0.3)), Curve("linear", (0.067, 0.092)), flat(0.0)),
-    "non-parabolic": Course(10.0, Curve("linear", (0.3, 0.0)), Curve("linear", (0.09, 0.067)), flat(0.6)),
-    "graded": Course(3.0, flat(0.3), flat(0.09), flat(0.0), Face(0.6, 0.0, 0.067, 0.0), Face(0.6, 0.0, 0.067, 0.0)),
-    "samples": Course(9.0, Curve("samples", (0.0, 0.3, 0.1, 0.3, 0.0, 0.2)), flat(0.067), flat(0.0)),
+    "cosine": Variation(10.0, Curve("cosine", (0.15, 0.15)), flat(0.067), flat(0.0)),
+    "heavy": Variation(10.0, Curve("cosine", (0.15, 0.15)), flat(1.0), flat(0.0)),
+    "narrow": Variation(500.0, Curve("gaussian", (0.3, 0.05, 0.0)), flat(0.067), flat(0.0)),
+    "opaque": Variation(200.0, Curve("parabola", (5.0, 100.0)), flat(0.2), flat(0.0)),
+    "running mass": Variation(10.0, Curve("linear", (0.0, 0.3)), Curve("linear", (0.067, 0.092)), flat(0.0)),
+    "non-parabolic": Variation(10.0, Curve("linear", (0.3, 0.0)), Curve("linear", (0.09, 0.067)), flat(0.6)),
+    "graded": Variation(3.0, flat(0.3), flat(0.09), flat(0.0), Face(0.6, 0.0, 0.067, 0.0), Face(0.6, 0.0, 0.067, 0.0)),
+    "samples": Variation(9.0, Curve("samples", (0.0, 0.3, 0.1, 0.3, 0.0, 0.2)), flat(0.067), flat(0.0)),
 }
 
 
 @pytest.mark.parametrize("name", RUNNING)
 def test_slices_are_right_at_every_energy_of_their_range(name: str) -> None:
     """Against four times as many steps, at energies other than those the steps were chosen by."""
-    course, energy = RUNNING[name], np.random.default_rng(3).uniform(0.0, 0.9, 40)
-    layers = slices(course, 0.0, 0.9)
+    variation, energy = RUNNING[name], np.random.default_rng(3).uniform(0.0, 0.9, 40)
+    layers = slices(variation, 0.0, 0.9)
     ends = np.append(0.0, np.cumsum([layer.thickness for layer in layers])[2::3])
-    ends[-1] = course.thickness
+    ends[-1] = variation.thickness
     fine = np.append((ends[:-1, None] + np.diff(ends)[:, None] * np.arange(4) / 4).ravel(), ends[-1])
-    found, true = (transfer(part, energy).rescaled() for part in (layers, on_steps(course, fine)))
+    found, true = (transfer(part, energy).rescaled() for part in (layers, on_steps(variation, fine)))
     scale = np.exp(found.log_scale - true.log_scale)
-    unit = np.sqrt(0.9 / 0.0381 / course.mean()[1])
+    unit = np.sqrt(0.9 / 0.0381 / variation.mean()[1])
     for entry, weight in (("a", 1.0), ("b", unit), ("c", 1 / unit), ("d", 1.0)):
         largest = np.max([abs(true.a), abs(true.b) * unit, abs(true.c) / unit, abs(true.d)], axis=0)
         assert (abs(getattr(found, entry) * scale - getattr(true, entry)) * weight / largest).max() < 2 * TOLERANCE
@@ -106,27 +106,27 @@ def test_slices_are_right_at_every_energy_of_their_range(name: str) -> None:
 
 @pytest.mark.parametrize("name", RUNNING)
 def test_slices_are_as_thick_as_the_layer_and_follow_it(name: str) -> None:
-    course = RUNNING[name]
-    layers = slices(course, 0.0, 0.9)
-    assert math.fsum(layer.thickness for layer in layers) == pytest.approx(course.thickness, rel=1e-14)
-    mean = math.fsum(layer.thickness * layer.band_edge for layer in layers) / course.thickness
-    assert mean == pytest.approx(course.mean()[0], rel=1e-6, abs=1e-9)
+    variation = RUNNING[name]
+    layers = slices(variation, 0.0, 0.9)
+    assert math.fsum(layer.thickness for layer in layers) == pytest.approx(variation.thickness, rel=1e-14)
+    mean = math.fsum(layer.thickness * layer.band_edge for layer in layers) / variation.thickness
+    assert mean == pytest.approx(variation.mean()[0], rel=1e-6, abs=1e-9)
 
 
-def test_a_flat_course_is_the_layer_itself() -> None:
+def test_a_flat_variation_is_the_layer_itself() -> None:
     energy = np.linspace(0.01, 0.8, 20)
-    course = Course(3.0, Curve("samples", (0.3, 0.3, 0.3)), flat(0.09), flat(0.4))
-    found, true = (transfer(part, energy) for part in (slices(course, 0.0, 1.0), (Layer(3.0, 0.3, 0.09, 0.4),)))
+    variation = Variation(3.0, Curve("samples", (0.3, 0.3, 0.3)), flat(0.09), flat(0.4))
+    found, true = (transfer(part, energy) for part in (slices(variation, 0.0, 1.0), (Layer(3.0, 0.3, 0.09, 0.4),)))
     for entry in "abcd":
         assert getattr(found, entry) == pytest.approx(getattr(true, entry), rel=1e-13, abs=1e-13)
 
 
-def test_a_course_that_needs_too_many_slices_is_refused() -> None:
-    with pytest.raises(CourseError, match=r"^takes more than 20,000 constant layers to be right to 1e-10; make"):
-        slices(Course(10_000.0, Curve("linear", (-1000.0, 1000.0)), flat(1000.0), flat(0.0)), -1000.0, 3000.0)
+def test_a_variation_that_needs_too_many_slices_is_refused() -> None:
+    with pytest.raises(VariationError, match=r"^takes more than 20,000 constant layers to be right to 1e-10; make"):
+        slices(Variation(10_000.0, Curve("linear", (-1000.0, 1000.0)), flat(1000.0), flat(0.0)), -1000.0, 3000.0)
 
 
-def test_a_course_thinner_than_anything_is_refused() -> None:
+def test_a_variation_thinner_than_anything_is_refused() -> None:
     assert refusal(COSINE.replace("8.0", "5e-324"), WELL) == (
         "stack.cell[0]: is 4.94066e-324 nm thick, but a layer that runs needs 1e-09 nm; make it thicker")
 
@@ -231,11 +231,11 @@ def test_a_graded_alloy_follows_the_library_at_every_composition() -> None:
     one = parse_scenario(format_scenario(scenario(
         'material = "InGaAs", x_from = 0.05, x_to = 0.6, thickness_nm = 4.0')).replace(
             "nonparabolic = false", 'nonparabolic = true\nsubstrate = "GaAs"'))
-    course = one.sheet[1].course
-    assert course is not None
+    variation = one.sheet[1].variation
+    assert variation is not None
     ground = material("GaAs", None, 77.0, "GaAs")
     for share in np.linspace(0, 1, 41):
-        found = course.at(np.array([4.0 * share]))
+        found = variation.at(np.array([4.0 * share]))
         true = material("InGaAs", 0.05 + 0.55 * share, 77.0, "GaAs")
         assert [float(v[0]) for v in found] == pytest.approx(
             [true.band_edge - ground.band_edge, true.mass, 1 / true.gap], rel=1e-12, abs=1e-13)

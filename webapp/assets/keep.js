@@ -13,10 +13,16 @@ let unheard = [] // edits the session has not answered yet
 export function keep(place, kept) {
   if (!kept) return drop(place)
   const entry = JSON.stringify({ ...kept, tab })
-  sessionStorage.setItem(shelf(place), entry)
+  for (const storage of [sessionStorage, localStorage]) put(storage, shelf(place), entry)
+}
+
+// A browser's store is bounded; what does not fit is on screen and with the session all the same.
+function put(storage, key, text) {
   try {
-    localStorage.setItem(shelf(place), entry)
-  } catch { /* Full: this tab still has its own copy. */ }
+    storage.setItem(key, text)
+  } catch {
+    storage.removeItem(key)
+  }
 }
 
 function drop(place) {
@@ -62,7 +68,7 @@ export function takeUnheard() {
 }
 
 function shelve() {
-  if (unheard.length) sessionStorage.setItem(QUEUE, JSON.stringify(unheard))
+  if (unheard.length) put(sessionStorage, QUEUE, JSON.stringify(unheard))
   else sessionStorage.removeItem(QUEUE)
 }
 

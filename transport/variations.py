@@ -11,7 +11,7 @@ from numpy.polynomial import chebyshev
 from transport.checks import BASED_PROFILES, PROFILE_KEYS
 from transport.document import LayerRecord
 from transport.media import Media, Medium
-from transport.profiles import Course, Curve, flat
+from transport.profiles import Curve, Variation, flat
 from transport.refusal import refuse_unless
 
 Curves = tuple[Curve, Curve, Curve]
@@ -19,14 +19,14 @@ Curves = tuple[Curve, Curve, Curve]
 _DEGREE = 31  # of the series in x for a graded alloy; the library's laws are polynomials and quotients of them
 
 
-def courses_of(media: Media, key: str, record: LayerRecord) -> tuple[Medium, Curves | None]:
+def variations_of(media: Media, key: str, record: LayerRecord) -> tuple[Medium, Curves | None]:
     """The medium of a layer (that in its middle, or its mean), and the three curves where anything runs.
 
     Band edges are on the document's scale. Raises ScenarioError.
     """
     if record.profile is not None:
         curves = (_profile_curve(record), flat(record.mass or 0.0), flat(record.nonparabolicity_per_eV or 0.0))
-        edge, mass, nonparabolicity = Course(record.thickness_nm or 0.0, *curves).mean()
+        edge, mass, nonparabolicity = Variation(record.thickness_nm or 0.0, *curves).mean()
         return Medium(None, None, edge, mass, nonparabolicity), curves
     if record.x_from is None or record.x_to is None:
         return media.medium(key, record), None
